@@ -25,6 +25,19 @@ type (
 	CurrentTime2 float64 // ampere squared seconds, the Joule integral of a fuse
 )
 
+// One of each coherent unit, so that a value is written as 565*Volt.
+const (
+	Volt   Voltage     = 1
+	Ampere Current     = 1
+	Ohm    Resistance  = 1
+	Farad  Capacitance = 1
+	Henry  Inductance  = 1
+	Watt   Power       = 1
+	Joule  Energy      = 1
+	Second Seconds     = 1
+	Hertz  Frequency   = 1
+)
+
 // Scalar is any of the quantities of this package.
 type Scalar interface{ ~float64 }
 
