@@ -209,6 +209,13 @@ type Hastened struct {
 type Resumed struct {
 	Program string `json:"program"`
 	Torn    *Torn  `json:"torn"`
+	Moved   *Moved `json:"moved,omitempty"`
+}
+
+// Moved says that the log goes on in another place: everything before this line is a copy, byte for byte.
+type Moved struct {
+	From string `json:"from"` // the file's name in the place it left
+	Why  string `json:"why"`
 }
 
 // Torn is a last line that was not whole, set aside beside the log.

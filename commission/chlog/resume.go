@@ -1,0 +1,204 @@
+package chlog
+
+import (
+	"bytes"
+	"crypto/sha256"
+	"encoding/hex"
+	"errors"
+	"fmt"
+	"io"
+	"io/fs"
+	"os"
+	"path/filepath"
+
+	"chargehand/commission/record"
+)
+
+// Resume goes on with a log that ended without a seal, for whatever reason. It reads every line strictly; sets a last line
+// that is not whole aside in NAME.chlog.torn-N, where nothing of it is lost; refuses a log that is broken anywhere else; and
+// appends a record "resumed". It returns every line of the log, that one too.
+func Resume(fsys FS, path string, o Options) (*Writer, []Line, error) {
+	w := newWriter(fsys, path, o)
+	if err := w.takeLock(); err != nil {
+		return nil, nil, err
+	}
+	lines, err := w.resume()
+	if err != nil {
+		if w.file != nil {
+			err = errors.Join(err, w.file.Close())
+		}
+		return nil, nil, errors.Join(err, w.lock.Close())
+	}
+	return w, lines, nil
+}
+
+func (w *Writer) resume() ([]Line, error) {
+	text, err := readAll(w.fsys, w.path)
+	if err != nil {
+		return nil, err
+	}
+	lines, err := w.replay(text)
+	if err != nil {
+		return nil, fmt.Errorf("%s: %w", filepath.Base(w.path), err)
+	}
+	if w.sealed {
+		return nil, fmt.Errorf("%s: %w", filepath.Base(w.path), ErrSealed)
+	}
+	torn, err := w.setAside(text[w.size:], lines)
+	if err != nil {
+		return nil, err
+	}
+	w.file, err = w.fsys.OpenFile(w.path, os.O_WRONLY|os.O_APPEND, 0)
+	if err != nil {
+		return nil, err
+	}
+	// A crash may have left lines that were written but never synced: what "resumed" is chained to must be on disk before it.
+	if err := w.file.Sync(); err != nil {
+		return nil, fmt.Errorf("sync %s: %w", filepath.Base(w.path), err)
+	}
+	l, err := w.Append(record.Resumed{Program: w.options.Program, Torn: torn})
+	if err != nil {
+		return nil, err
+	}
+	return append(lines, l), nil
+}
+
+// replay takes every whole line of a log's text. What is left after w.size is a torn last line.
+func (w *Writer) replay(text []byte) ([]Line, error) {
+	r := NewReader(bytes.NewReader(text))
+	var lines []Line
+	for {
+		l, err := r.Next()
+		if damage, ok := errors.AsType[*DamageError](err); ok && damage.Torn && damage.Record > 0 {
+			return lines, nil
+		}
+		if err == io.EOF {
+			return lines, nil
+		}
+		if err != nil {
+			return nil, err
+		}
+		body, err := l.Decode()
+		if err != nil {
+			return nil, err
+		}
+		lines = append(lines, l)
+		w.take(body, text[r.Offset():r.End()])
+	}
+}
+
+// setAside keeps the torn last line in a file of its own and cuts it off the log. The copy is on disk before the cut, so that
+// a crash in between leaves both; the next resume then writes the same copy again. A crash after the cut leaves a copy that
+// no record names; the next resume names it.
+func (w *Writer) setAside(tail []byte, lines []Line) (*record.Torn, error) {
+	name := fmt.Sprintf("%s.torn-%d", w.path, tornCount(lines)+1)
+	there, err := readAll(w.fsys, name)
+	if err != nil && !errors.Is(err, fs.ErrNotExist) {
+		return nil, err
+	}
+	if len(tail) == 0 {
+		if err != nil {
+			return nil, nil
+		}
+		return tornRecord(name, there), nil
+	}
+	if err == nil && !bytes.HasPrefix(tail, there) {
+		return nil, fmt.Errorf("%s is in the way of the torn line to be set aside; move it elsewhere", filepath.Base(name))
+	}
+	if err := w.writeWhole(name, tail); err != nil {
+		return nil, fmt.Errorf("set the torn last line aside: %w", err)
+	}
+	return tornRecord(name, tail), w.cut()
+}
+
+func tornCount(lines []Line) int {
+	n := 0
+	for _, l := range lines {
+		if body, err := l.Decode(); err == nil {
+			if r, ok := body.(record.Resumed); ok && r.Torn != nil {
+				n++
+			}
+		}
+	}
+	return n
+}
+
+func tornRecord(name string, text []byte) *record.Torn {
+	sum := sha256.Sum256(text)
+	return &record.Torn{Bytes: int64(len(text)), SHA256: hex.EncodeToString(sum[:]), KeptIn: filepath.Base(name)}
+}
+
+// writeWhole writes a file and has it and its name on disk before it returns.
+func (w *Writer) writeWhole(name string, text []byte) error {
+	f, err := w.fsys.OpenFile(name, os.O_WRONLY|os.O_CREATE|os.O_TRUNC, 0o644)
+	if err != nil {
+		return err
+	}
+	_, err = f.Write(text)
+	if err == nil {
+		err = f.Sync()
+	}
+	return errors.Join(err, f.Close(), w.fsys.SyncDir(filepath.Dir(name)))
+}
+
+// cut shortens the log to its whole lines. It opens the file anew: on Windows one opened for appending cannot be cut.
+func (w *Writer) cut() error {
+	f, err := w.fsys.OpenFile(w.path, os.O_RDWR, 0)
+	if err != nil {
+		return err
+	}
+	err = f.Truncate(w.size)
+	if err == nil {
+		err = f.Sync()
+	}
+	if err = errors.Join(err, f.Close()); err != nil {
+		return fmt.Errorf("cut the torn last line off %s: %w", filepath.Base(w.path), err)
+	}
+	return nil
+}
+
+// MoveTo goes on with this log in another file when its place can take nothing more. The copy holds every acknowledged line,
+// byte for byte and with the same log id, then a record "resumed" that names the file it left; the record that failed is for
+// the caller to append again. The old file is not touched: its last line may be torn, or whole but never acknowledged. Going
+// on with both would make a fork, which verify finds; so the old one is to be kept and never resumed.
+func (w *Writer) MoveTo(path string) (*Writer, error) {
+	w.mu.Lock()
+	defer w.mu.Unlock()
+	if w.sealed {
+		return nil, ErrSealed
+	}
+	why := "moved by hand"
+	if w.failed != nil {
+		why = fmt.Sprintf("%s: %v", w.failed.Do, w.failed.Err)
+	}
+	moved := newWriter(w.fsys, path, w.options)
+	moved.wall, moved.monotonic, moved.began = w.wall, w.monotonic, w.began
+	if err := moved.takeLock(); err != nil {
+		return nil, err
+	}
+	if err := moved.copyOf(w, why); err != nil {
+		if moved.file != nil {
+			err = errors.Join(err, moved.file.Close())
+		}
+		return nil, errors.Join(err, moved.lock.Close())
+	}
+	if !w.closed {
+		w.closed = true
+		w.file.Close() // its place is gone or full: what it says no longer matters
+		w.lock.Close()
+	}
+	return moved, nil
+}
+
+func (w *Writer) copyOf(old *Writer, why string) error {
+	if err := w.create(); err != nil {
+		return err
+	}
+	if err := w.write(bytes.Join(old.kept, nil)); err != nil {
+		return err
+	}
+	w.opened, w.files, w.kept = old.opened, old.files, old.kept
+	w.persons, w.size, w.seq, w.head = old.persons, old.size, old.seq, old.head
+	_, err := w.Append(record.Resumed{Program: w.options.Program, Moved: &record.Moved{From: filepath.Base(old.path), Why: printable(why)}})
+	return err
+}
