@@ -1,7 +1,3 @@
-// Package document reads strict TOML: every problem of a file in one go, each with its place, what was read, what is wanted
-// and an example.
-//
-// Start at [Problem]. Packages site and registermap read their files through it.
 package document
 
 import (
