@@ -79,6 +79,9 @@ func parseAllowedLine(line string, zone *time.Location) (AllowedEntry, error) {
 		e.Key, e.Comment = key, comment
 		return e, checkListedKey(key)
 	}
+	if first, _, _ := cutWord(rest); usable(first) {
+		return e, fmt.Errorf("no public key of the type %s follows", first)
+	}
 	options, rest, err := cutOptions(rest)
 	if err != nil {
 		return e, err

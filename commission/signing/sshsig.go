@@ -27,10 +27,10 @@ type MalformedError struct{ Why string }
 func (e *MalformedError) Error() string { return "malformed signature: " + e.Why }
 
 // NamespaceError says that a signature was made for something else.
-type NamespaceError struct{ Got string }
+type NamespaceError struct{ Got, Want string }
 
 func (e *NamespaceError) Error() string {
-	return fmt.Sprintf("the signature is for namespace %q, not %q", e.Got, Namespace)
+	return fmt.Sprintf("the signature is for namespace %q, not %q", e.Got, e.Want)
 }
 
 // ErrMismatch says that a well-formed signature is not of this message.
@@ -41,7 +41,9 @@ type Signature struct{ inner *sshsig.Signature }
 
 // Parse reads an armoured signature strictly: one block, nothing before or after it, even lines of base64. The namespace is
 // checked too.
-func Parse(armoured []byte) (*Signature, error) {
+func Parse(armoured []byte) (*Signature, error) { return parse(armoured, Namespace) }
+
+func parse(armoured []byte, namespace string) (*Signature, error) {
 	blob, err := dearmour(armoured)
 	if err != nil {
 		return nil, err
@@ -56,8 +58,8 @@ func Parse(armoured []byte) (*Signature, error) {
 	if len(inner.Signature.Rest) > 0 && !strings.HasPrefix(inner.PublicKey.Type(), "sk-") {
 		return nil, &MalformedError{"bytes after the signature itself"}
 	}
-	if inner.Namespace != Namespace {
-		return nil, &NamespaceError{inner.Namespace}
+	if inner.Namespace != namespace {
+		return nil, &NamespaceError{Got: inner.Namespace, Want: namespace}
 	}
 	return &Signature{inner}, nil
 }
@@ -73,7 +75,7 @@ func (s *Signature) Key() PublicKey { return PublicKey{s.inner.PublicKey} }
 
 // VerifyDigest checks the signature against the message's hash. It returns [ErrMismatch] or nil.
 func (s *Signature) VerifyDigest(digest []byte) error {
-	err := s.inner.PublicKey.Verify(signedData(s.inner.HashAlgorithm.String(), digest), s.inner.Signature)
+	err := s.inner.PublicKey.Verify(signedData(s.inner.Namespace, s.inner.HashAlgorithm.String(), digest), s.inner.Signature)
 	if err != nil {
 		return ErrMismatch
 	}
@@ -95,9 +97,9 @@ func Verify(message []byte, armoured string) (PublicKey, error) {
 }
 
 // signedData is what the key signs. The reserved string is empty, whatever the blob holds: OpenSSH ignores it too.
-func signedData(hashAlgorithm string, digest []byte) []byte {
+func signedData(namespace, hashAlgorithm string, digest []byte) []byte {
 	return append([]byte("SSHSIG"), ssh.Marshal(struct{ Namespace, Reserved, HashAlgorithm, Hash string }{
-		Namespace, "", hashAlgorithm, string(digest)})...)
+		namespace, "", hashAlgorithm, string(digest)})...)
 }
 
 // sign makes an armoured signature of everything that r gives.
