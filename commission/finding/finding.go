@@ -110,6 +110,7 @@ type Finding struct {
 	Because []string // why the verdict fell so, or which keys would decide it
 	Basis   string   // the formula's name and source
 	Remedy  string   // what would make it pass
+	Changes []Change // the same as values of keys; not part of the JSON form
 
 	// Guards tells that it guards life or equipment: one corner outside its limit fails it.
 	Guards bool

@@ -1,0 +1,201 @@
+package droop
+
+import (
+	"fmt"
+	"math"
+
+	"chargehand/commission/finding"
+	"chargehand/commission/quantity"
+	"chargehand/commission/remedy"
+	"chargehand/commission/site"
+	"chargehand/commission/window"
+)
+
+// wish is the site's wish, or the keys that are missing for it. Fractions of load and regeneration are 1: the window must
+// hold up to rated current both ways.
+func wish(s site.Site, p planned) (Wish, finding.Missing) {
+	missing := append(finding.Missing(nil), p.missing...)
+	source, more := window.SourceHigh(s)
+	missing.Add(more...)
+	upper, _, more := upperLimit(s)
+	missing.Add(more...)
+	missing.Need("bus.wanted_margin", s.Bus.WantedMargin.IsGiven())
+	missing.Need("bus.under_voltage_trip", s.Bus.UnderVoltageTrip.IsGiven())
+	missing.Need("bus.measurement_error", s.Bus.MeasurementError.IsGiven())
+	missing.Need("bus.ripple", s.Bus.Ripple.IsGiven())
+	missing.Need("load.share_tolerance", loadOf(s).ShareTolerance.Nominal > 0)
+	w := Wish{
+		SourceHigh: source.High, LowerMargin: s.Bus.WantedMargin.Nominal,
+		LowestBus:  s.Bus.UnderVoltageTrip.Nominal + s.Bus.Error(),
+		UpperLimit: quantity.Voltage(upper), UpperMargin: s.Bus.Error(),
+		ShareTolerance: loadOf(s).ShareTolerance.Nominal, Ripple: s.Bus.Ripple.Nominal, LoadFraction: 1, RegenerationShare: 1,
+	}
+	for k, source := range p.sources {
+		w.Rated = append(w.Rated, source.Rated)
+		w.SetpointError = max(w.SetpointError, p.errors[k])
+	}
+	return w, missing
+}
+
+// AdviceFinding gives the least droop voltage at rated current that meets all limits, with the setpoint interval and the
+// droop of each infeed, and judges whether the settings of the site lie inside.
+func AdviceFinding(s site.Site) finding.Finding { return adviceFinding(s, plan(s)) }
+
+func adviceFinding(s site.Site, p planned) finding.Finding {
+	f := finding.Finding{ID: "droop.advice", Title: "least droop voltage at rated current that meets all limits", Unit: "V",
+		Basis: "ΔV_min = 2e·(1 − w_min)⁄share_tolerance; V_lo + ΔV ≤ V_set ≤ V_hi − ΔV; " + ownDerivation}
+	w, missing := wish(s, p)
+	if len(missing) > 0 {
+		return f.Lacking(missing...)
+	}
+	a := Advise(w)
+	f = f.Judged(finding.Exactly(float64(a.Least)), finding.AtMost(float64(a.Greatest)), 0)
+	f.Parts = adviceParts(s, p, a)
+	f.Explanation = adviceWorking(s, p, w, a)
+	if !a.Feasible {
+		f.Verdict = finding.Fail
+		f.Because = append(f.Because, fmt.Sprintf("load.share_tolerance %s and the window exclude each other: sharing needs %.5g V of droop, the window leaves %.5g V, %.5g V too little",
+			remedy.Figure(float64(w.ShareTolerance), "1"), float64(a.Least), float64(a.Greatest), float64(a.Least-a.Greatest)))
+		f.Remedy, f.Changes = relax(s, w, a)
+		return f
+	}
+	outside := outsiders(s, p, a)
+	if len(outside) > 0 {
+		f.Verdict = finding.Fail
+		f.Because = append(f.Because, outside...)
+		f.Remedy, f.Changes = settle(s)
+	}
+	return f
+}
+
+func adviceParts(s site.Site, p planned, a Advice) []finding.Part {
+	if !a.Feasible {
+		return nil
+	}
+	parts := []finding.Part{{Name: "setpoint interval", Unit: "V", Value: finding.Value{Low: float64(a.SetpointLow),
+		Nominal: float64(a.SetpointLow+a.SetpointHigh) / 2, High: float64(a.SetpointHigh)}}}
+	for k, d := range a.Droop {
+		parts = append(parts, finding.Part{Name: "droop " + s.Infeeds[k].Name, Unit: "V/A",
+			Value: finding.Exactly(float64(d) - float64(p.sources[k].Cable))})
+	}
+	return parts
+}
+
+// outsiders says which infeed's own pair of setpoint and droop lies outside, and by how much. Rounding of a part in 10⁹ is
+// no reason.
+func outsiders(s site.Site, p planned, a Advice) []string {
+	var because []string
+	for k, source := range p.sources {
+		name, dV := s.Infeeds[k].Name, quantity.Voltage(source.slope()*float64(source.Rated))
+		slack := 1e-9 * source.NoLoad
+		if dV < a.Least-slack {
+			because = append(because, fmt.Sprintf("%s: droop of %.5g V at rated current, %.5g V needed for sharing", name, float64(dV), float64(a.Least)))
+		}
+		if low := a.Lowest + dV; source.NoLoad < low-slack {
+			because = append(because, fmt.Sprintf("%s: setpoint %.5g V is %.4g V too low for its droop", name, float64(source.NoLoad), float64(low-source.NoLoad)))
+		}
+		if high := a.Highest - dV; source.NoLoad > high+slack {
+			because = append(because, fmt.Sprintf("%s: setpoint %.5g V is %.4g V too high for its droop", name, float64(source.NoLoad), float64(source.NoLoad-high)))
+		}
+	}
+	return because
+}
+
+func adviceWorking(s site.Site, p planned, w Wish, a Advice) *finding.Explanation {
+	e := finding.Explain("ΔV_min = 2e·(1 − w_min)⁄x", ownDerivation, "constant load current, equal droop voltage at rated current, no infeed at a limit")
+	smallest, sum := math.Inf(1), "0"
+	total := 0.0
+	for k, i := range w.Rated {
+		name := fmt.Sprintf("I_%d", k+1)
+		e.Given(name, "rated current of "+s.Infeeds[k].Name, "A", float64(i))
+		sum += " + " + name
+		smallest, total = math.Min(smallest, float64(i)), total+float64(i)
+	}
+	e.Given("I_least", "the least of them", "A", smallest)
+	e.Given("e", "largest setpoint error", "V", float64(w.SetpointError))
+	e.Given("x", "load.share_tolerance", "1", float64(w.ShareTolerance))
+	e.Given("V_source_high", "highest source voltage over tolerances", "V", float64(w.SourceHigh))
+	e.Given("m", "bus.wanted_margin", "V", float64(w.LowerMargin))
+	e.Given("V_least", "under-voltage trip and measurement error", "V", float64(w.LowestBus))
+	e.Given("V_upper", "chopper, else over-voltage trip", "V", float64(w.UpperLimit))
+	e.Given("e_bus", "measurement error of the bus voltage", "V", float64(w.UpperMargin))
+	e.Given("V_pp", "ripple, peak to peak", "V", float64(w.Ripple))
+	e.Step("w_min", "I_least / ("+sum+")", "1", smallest/total)
+	e.Step("V_lo", "max(V_source_high + m, V_least) + e + V_pp / 2", "V", float64(a.Lowest))
+	e.Step("V_hi", "V_upper - e_bus - e - V_pp / 2", "V", float64(a.Highest))
+	e.Step("dV_max", "(V_hi - V_lo) / 2", "V", float64(a.Greatest))
+	e.Step("dV_min", "2 * e * (1 - w_min) / x", "V", float64(a.Least))
+	e.Spread("the largest setpoint error and the smallest infeed govern", nil, nil)
+	return e.Done()
+}
+
+// settle is the advice as a remedy: a common setpoint in the middle of its interval and the droop of each infeed. A
+// setpoint error in per cent grows with the setpoint, so the advice is taken again until it stands.
+func settle(s site.Site) (string, []finding.Change) {
+	changes := settled(s)
+	if changes == nil {
+		return "", nil
+	}
+	return "set " + remedy.Phrase(changes), changes
+}
+
+func settled(s site.Site) []finding.Change {
+	var changes []finding.Change
+	original, _, _ := Sources(s)
+	for range 30 {
+		changed, err := remedy.Apply(s, changes...)
+		if err != nil {
+			return nil
+		}
+		p := plan(changed)
+		w, missing := wish(changed, p)
+		if len(missing) > 0 {
+			return nil
+		}
+		a := Advise(w)
+		if len(changes) > 0 && a.Feasible && len(outsiders(changed, p, a)) == 0 {
+			return changes
+		}
+		changes = changes[:0]
+		setpoint := math.Round(float64(a.SetpointLow+a.SetpointHigh)/2*10) / 10
+		for k, infeed := range s.Infeeds {
+			droop := math.Ceil((float64(a.Droop[k])-float64(p.sources[k].Cable))*1e6) / 1e6
+			if droop < 0 {
+				return nil // the cable alone drops more than the advice
+			}
+			changes = append(changes,
+				finding.Change{Key: "infeed.setpoint", Subject: infeed.Name, Unit: "V", Was: float64(infeed.Setpoint.Nominal), Value: setpoint},
+				finding.Change{Key: "infeed.droop", Subject: infeed.Name, Unit: "V/A", Was: float64(original[k].Droop), Value: droop})
+		}
+	}
+	return nil
+}
+
+// relax is the remedy where no droop shares well enough inside the window: the least share tolerance that leaves room,
+// with the settings for it, or the setpoint error that would.
+func relax(s site.Site, w Wish, a Advice) (string, []finding.Change) {
+	if a.Greatest <= 0 {
+		return fmt.Sprintf("no droop fits: the source with its margin (%.5g V) and the upper limit (%.5g V) leave no room for errors and ripple, %.4g V short",
+			float64(a.Lowest), float64(a.Highest), float64(a.Lowest-a.Highest)), nil
+	}
+	tolerance := finding.Change{Key: "load.share_tolerance", Unit: "1", Was: float64(w.ShareTolerance)}
+	value, ok := remedy.Least(tolerance.Was, 1, func(x float64) bool {
+		tolerance.Value = x
+		changed, err := remedy.Apply(s, tolerance)
+		return err == nil && settled(changed) != nil
+	})
+	text := ""
+	if e := w.GreatestError(); e > 0 {
+		text = fmt.Sprintf("; or a setpoint error of at most %.4g V (now %.4g V)", float64(e), float64(w.SetpointError))
+	}
+	if !ok {
+		return "accept less exact sharing or a wider window" + text, nil
+	}
+	tolerance.Value = value
+	changed, err := remedy.Apply(s, tolerance)
+	if err != nil {
+		return "", nil
+	}
+	changes := append([]finding.Change{tolerance}, settled(changed)...)
+	return "accept less exact sharing: set " + remedy.Phrase(changes) + text, changes
+}

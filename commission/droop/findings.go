@@ -1,0 +1,127 @@
+package droop
+
+import (
+	"fmt"
+	"math"
+
+	"chargehand/commission/finding"
+	"chargehand/commission/quantity"
+	"chargehand/commission/signal"
+	"chargehand/commission/site"
+)
+
+// Registers tells how a register map writes a value: the raw number to key in. It is false for a signal the map lacks.
+type Registers interface {
+	Raw(name signal.Name, value float64) (raw int64, ok bool)
+}
+
+const (
+	circuitTheory = "circuit theory, piecewise quadratic balance; constant-power loads by their incremental resistance"
+	ownDerivation = "own derivation, checked against all corners"
+)
+
+// Findings are the findings of the droop and of the cables, in the order of the catalogue. Without registers (nil) the
+// register numbers stay undecided.
+func Findings(s site.Site, r Registers) []finding.Finding {
+	p := plan(s)
+	all := []finding.Finding{adviceFinding(s, p), BusRange(s), SharingFinding(s)}
+	all = append(all, lostInfeeds(s)...)
+	all = append(all, Regeneration(s), Stability(s))
+	all = append(all, Instruments(s)...)
+	all = append(all, registers(s, r))
+	return append(all, cables(s)...)
+}
+
+// planned is what the findings of one site share: its sources, the errors of their setpoints, its loads.
+type planned struct {
+	sources []Source
+	errors  []quantity.Voltage
+	missing finding.Missing
+}
+
+func plan(s site.Site) planned {
+	sources, errors, missing := Sources(s)
+	return planned{sources, errors, missing}
+}
+
+func loadOf(s site.Site) site.Load {
+	if s.Load == nil {
+		return site.Load{}
+	}
+	return *s.Load
+}
+
+// upperLimit is where the chopper acts, or the over-voltage trip where there is no chopper.
+func upperLimit(s site.Site) (limit float64, name string, missing finding.Missing) {
+	if c := s.Bus.Chopper; c != nil {
+		missing.Need("bus.chopper.on", c.On.IsGiven())
+		return float64(c.On.Nominal), "bus.chopper.on", missing
+	}
+	missing.Need("bus.over_voltage_trip", s.Bus.OverVoltageTrip.IsGiven())
+	return float64(s.Bus.OverVoltageTrip.Nominal), "bus.over_voltage_trip", missing
+}
+
+// thresholds are the limits that the bus must stay within.
+func thresholds(s site.Site) (finding.Limit, finding.Missing) {
+	upper, _, missing := upperLimit(s)
+	missing.Need("bus.under_voltage_trip", s.Bus.UnderVoltageTrip.IsGiven())
+	return finding.Between(float64(s.Bus.UnderVoltageTrip.Nominal), upper), missing
+}
+
+// why puts the two ways of having no operating point into words.
+func (s Status) why(what string) string {
+	if s == Runaway {
+		return what + ": nobody takes what is fed in, the bus runs upwards"
+	}
+	return what + ": the infeeds cannot carry the load, the bus collapses"
+}
+
+// workings writes the balance of the nominal operating point of some sources as steps that can be redone: the voltage from
+// the sums over the free infeeds and those at a limit.
+func workings(w *finding.Working, sources []Source, names []string, l Load, unit string) float64 {
+	p := Solve(sources, l)
+	if p.Status != Found {
+		return math.NaN()
+	}
+	conductance, amperes := "0", "0"
+	g, a := 0.0, 0.0
+	for k, s := range sources {
+		if s.Offline {
+			continue
+		}
+		n := k + 1
+		if p.Limit[k] != Free {
+			name := fmt.Sprintf("I_%d", n)
+			w.Given(name, "current of "+names[k]+", at its limit", "A", float64(p.Current[k]))
+			amperes += " + " + name
+			a += float64(p.Current[k])
+			continue
+		}
+		v0, r := fmt.Sprintf("V0_%d", n), fmt.Sprintf("r_%d", n)
+		w.Given(v0, "no-load setpoint of "+names[k], "V", float64(s.NoLoad))
+		w.Given(r, "droop and cable of "+names[k], "V/A", s.slope())
+		conductance += " + 1 / " + r
+		amperes += " + " + v0 + " / " + r
+		g += 1 / s.slope()
+		a += float64(s.NoLoad) / s.slope()
+	}
+	w.Given("P", "constant power of the load, negative for regeneration", unit, float64(l.Power))
+	w.Step("G", conductance, "A/V", g)
+	w.Step("A", amperes, "A", a)
+	if g == 0 {
+		w.Step("V", "P / A", "V", float64(p.Bus))
+	} else {
+		w.Step("V", "(A + sqrt(A^2 - 4 * G * P)) / (2 * G)", "V", float64(p.Bus))
+	}
+	return float64(p.Bus)
+}
+
+func names(s site.Site) []string {
+	all := make([]string, len(s.Infeeds))
+	for k, i := range s.Infeeds {
+		all[k] = i.Name
+	}
+	return all
+}
+
+const errorsGovern = "least with every setpoint at its error below, greatest with every one above; between two infeeds the extremes lie with one against all others"
