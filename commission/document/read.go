@@ -273,3 +273,9 @@ func typed[E any](t *Table, key string, into *E, parse func(string) (E, *quantit
 		t.file.problem(e.value.at, read, "a value with its unit, in quotes", key+" = "+quote(r.Example))
 	}
 }
+
+// IsText tells whether the key has a text for its value.
+func (t *Table) IsText(key string) bool {
+	e := t.find(key)
+	return e != nil && e.value.kind == text
+}

@@ -2,6 +2,7 @@ package document
 
 import (
 	"fmt"
+	"slices"
 	"strconv"
 	"strings"
 	"unicode/utf8"
@@ -250,7 +251,9 @@ func (t *Table) ask(key string) *entry {
 	if t == nil {
 		return nil
 	}
-	t.asked = append(t.asked, key)
+	if !slices.Contains(t.asked, key) {
+		t.asked = append(t.asked, key)
+	}
 	e := t.find(key)
 	if e != nil {
 		e.asked = true

@@ -79,7 +79,7 @@ func format(s fmt.State, verb rune, value float64, d *dimension) {
 		fmt.Fprintf(s, "%%!%c(%s %s)", verb, d.inShown(value, 'g', -1), d.shown)
 		return
 	}
-	if s.Flag('+') && !strings.HasPrefix(number, "-") {
+	if verb != 'v' && s.Flag('+') && !strings.HasPrefix(number, "-") {
 		number = "+" + number
 	}
 	text := number + " " + d.shown

@@ -54,7 +54,7 @@ func bareNumber(text string, rule Rule) (float64, *Refusal) {
 	if !ok || v != 0 && (math.Abs(v) < smallest || math.Abs(v) > largest) {
 		return 0, s.refuseAt(0, "a size between 1e-15 and 1e15", "")
 	}
-	return v, s.signed(v)
+	return v, s.signed(v, v)
 }
 
 // ParseErrorBound reads the greatest error of a measurement or setting, in volts or per cent. 0 is allowed, a tolerance or
@@ -160,12 +160,12 @@ func (s *scanner) bounded(r reading) *Refusal {
 	if r.high > largest || r.low < -largest {
 		return s.refuseAt(0, "a size between 1e-15 and 1e15 with its tolerance", "")
 	}
-	return s.signed(r.low)
+	return s.signed(r.low, r.nominal)
 }
 
-func (s *scanner) signed(low float64) *Refusal {
+func (s *scanner) signed(low, nominal float64) *Refusal {
 	with := ""
-	if s.rule.Tolerance {
+	if low != nominal {
 		with = " at the lowest corner of its tolerance too"
 	}
 	switch {
