@@ -159,3 +159,12 @@ func Hex(words []uint16) string {
 	}
 	return strings.Join(s, " ")
 }
+
+// Number gives the raw number of a point's words, before scale and sign; 0 where not all words are there.
+func (p Point) Number(words []uint16) float64 {
+	if len(words) != p.Words() {
+		return 0
+	}
+	raw, _ := p.number(words)
+	return raw
+}

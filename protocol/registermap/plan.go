@@ -58,7 +58,7 @@ type Plan struct {
 // Limits are what a device's requests must keep to beside its map.
 type Limits struct {
 	UnitID   uint8         // the device's own, for points that name none
-	MaxBlock int           // learned; 0 for the map's
+	MaxBlock int           // registers, learned from refusals; 0 for the map's
 	Refused  []Span        // no request may cover one of these
 	Only     []signal.Name // all signals where empty
 }
@@ -168,7 +168,7 @@ func (m Map) limits(t Table, l Limits) (most, gap int) {
 	} else {
 		gap = m.MaxGap
 	}
-	if l.MaxBlock > 0 {
+	if l.MaxBlock > 0 && !t.HasBits() {
 		most = min(most, l.MaxBlock)
 	}
 	return most, gap
