@@ -189,3 +189,18 @@ func TestRunsTellsWaveFromNoise(t *testing.T) {
 		t.Errorf("Runs(one sign) = %g, want 0: nothing to say", z)
 	}
 }
+
+// Norris once more, as a plane with a column of ones: another road to the certified line.
+func TestLinearMeetsCertifiedLine(t *testing.T) {
+	ones := make([]float64, len(norrisX))
+	for i := range ones {
+		ones[i] = 1
+	}
+	x, se, ok := Linear([][]float64{ones, norrisX}, norrisY)
+	if !ok || !agree(x[0], -0.262323073774029, 9) || !agree(x[1], 1.00211681802045, 12) || !agree(se[1], 0.429796848199937e-03, 9) {
+		t.Errorf("Linear(Norris) = %.12g, %.12g, want -0.262323073774029, 1.00211681802045 (NIST StRD Norris)", x, se)
+	}
+	if _, _, ok := Linear([][]float64{norrisX, norrisX}, norrisY); ok {
+		t.Error("Linear(one column twice) is ok, want not")
+	}
+}
