@@ -107,6 +107,8 @@ func (r *Reader) read() (rawLine, error) {
 		}
 	}
 	switch {
+	case err == io.EOF && r.seq == 0:
+		return rawLine{}, r.damage(int64(len(line)), true, "the first line was never finished: there is nothing in it; begin a new log")
 	case err == io.EOF: // without its line feed even a line of good form is not whole
 		return rawLine{}, r.damage(r.offset+int64(len(line)), true, "the last line is not whole: the file ends inside it")
 	case fault != nil:

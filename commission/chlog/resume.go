@@ -16,7 +16,8 @@ import (
 
 // Resume goes on with a log that ended without a seal, for whatever reason. It reads every line strictly; sets a last line
 // that is not whole aside in NAME.chlog.torn-N, where nothing of it is lost; refuses a log that is broken anywhere else; and
-// appends a record "resumed". It returns every line of the log, that one too.
+// appends a record "resumed", one more for each earlier torn line that a crash kept from being recorded. It returns every line
+// of the log, those too.
 func Resume(fsys FS, path string, o Options) (*Writer, []Line, error) {
 	w := newWriter(fsys, path, o)
 	if err := w.takeLock(); err != nil {
@@ -44,7 +45,7 @@ func (w *Writer) resume() ([]Line, error) {
 	if w.sealed {
 		return nil, fmt.Errorf("%s: %w", filepath.Base(w.path), ErrSealed)
 	}
-	torn, err := w.setAside(text[w.size:], lines)
+	aside, err := w.setAside(text[w.size:], tornCount(lines))
 	if err != nil {
 		return nil, err
 	}
@@ -56,11 +57,14 @@ func (w *Writer) resume() ([]Line, error) {
 	if err := w.file.Sync(); err != nil {
 		return nil, fmt.Errorf("sync %s: %w", filepath.Base(w.path), err)
 	}
-	l, err := w.Append(record.Resumed{Program: w.options.Program, Torn: torn})
-	if err != nil {
-		return nil, err
+	for _, torn := range aside {
+		l, err := w.Append(record.Resumed{Program: w.options.Program, Torn: torn})
+		if err != nil {
+			return nil, err
+		}
+		lines = append(lines, l)
 	}
-	return append(lines, l), nil
+	return lines, nil
 }
 
 // replay takes every whole line of a log's text. What is left after w.size is a torn last line.
@@ -87,29 +91,45 @@ func (w *Writer) replay(text []byte) ([]Line, error) {
 	}
 }
 
-// setAside keeps the torn last line in a file of its own and cuts it off the log. The copy is on disk before the cut, so that
-// a crash in between leaves both; the next resume then writes the same copy again. A crash after the cut leaves a copy that
-// no record names; the next resume names it.
-func (w *Writer) setAside(tail []byte, lines []Line) (*record.Torn, error) {
-	name := fmt.Sprintf("%s.torn-%d", w.path, tornCount(lines)+1)
-	there, err := readAll(w.fsys, name)
-	if err != nil && !errors.Is(err, fs.ErrNotExist) {
-		return nil, err
-	}
-	if len(tail) == 0 {
-		if err != nil {
-			return nil, nil
+// setAside keeps the torn last line in a file of its own and cuts it off the log, and gives what the "resumed" records are to
+// say: one for each such file that no record names yet, or one that names none. The copy is on disk before the cut, so that a
+// crash in between leaves both, and the next resume writes the same copy again; a crash after the cut leaves a copy that no
+// record names, and the next resume names it.
+func (w *Writer) setAside(tail []byte, named int) ([]*record.Torn, error) {
+	var aside []*record.Torn
+	n := named + 1
+	var last []byte
+	for ; ; n++ {
+		text, err := readAll(w.fsys, w.tornName(n))
+		if errors.Is(err, fs.ErrNotExist) {
+			break
 		}
-		return tornRecord(name, there), nil
+		if err != nil {
+			return nil, err
+		}
+		last = text
+		aside = append(aside, tornRecord(w.tornName(n), text))
 	}
-	if err == nil && !bytes.HasPrefix(tail, there) {
-		return nil, fmt.Errorf("%s is in the way of the torn line to be set aside; move it elsewhere", filepath.Base(name))
+	if len(tail) > 0 {
+		if len(aside) > 0 && bytes.HasPrefix(tail, last) { // the crash came between copy and cut
+			n--
+			aside = aside[:len(aside)-1]
+		}
+		if err := w.writeWhole(w.tornName(n), tail); err != nil {
+			return nil, fmt.Errorf("set the torn last line aside: %w", err)
+		}
+		aside = append(aside, tornRecord(w.tornName(n), tail))
+		if err := w.cut(); err != nil {
+			return nil, err
+		}
 	}
-	if err := w.writeWhole(name, tail); err != nil {
-		return nil, fmt.Errorf("set the torn last line aside: %w", err)
+	if len(aside) == 0 {
+		aside = append(aside, nil)
 	}
-	return tornRecord(name, tail), w.cut()
+	return aside, nil
 }
+
+func (w *Writer) tornName(n int) string { return fmt.Sprintf("%s.torn-%d", w.path, n) }
 
 func tornCount(lines []Line) int {
 	n := 0

@@ -59,8 +59,7 @@ func (v Verifier) File(path string) Report {
 }
 
 func (v Verifier) one(ctx context.Context, path string, m *meter) Report {
-	c := &check{v: v, path: path, persons: map[string]record.Person{}, report: Report{Format: ReportFormat, File: path,
-		Notes: []string{}, Statements: []StatementCheck{}, Signatures: []SignatureCheck{}, Torn: []string{}}}
+	c := newCheck(v, path)
 	if err := c.run(ctx, m); err != nil {
 		c.report.err = err
 		c.conclude(Unreadable, "cannot be read: "+err.Error())
@@ -88,6 +87,11 @@ type besideSignature struct {
 	hash      hash.Hash
 }
 
+func newCheck(v Verifier, path string) *check {
+	return &check{v: v, path: path, persons: map[string]record.Person{}, report: Report{Format: ReportFormat, File: path,
+		Notes: []string{}, Statements: []StatementCheck{}, Signatures: []SignatureCheck{}, Torn: []string{}}}
+}
+
 func (c *check) conclude(o Outcome, sentence string) {
 	c.report.Outcome, c.report.Sentence = o, sentence
 }
@@ -104,8 +108,13 @@ func (c *check) run(ctx context.Context, m *meter) error {
 	if err := c.readSignatures(); err != nil {
 		return err
 	}
-	r := NewReader(m.of(ctx, io.TeeReader(f, c.hashes())))
-	err = c.lines(r)
+	return c.read(m.of(ctx, f))
+}
+
+// read takes the log itself; its detached signatures are there already.
+func (c *check) read(in io.Reader) error {
+	r := NewReader(io.TeeReader(in, c.hashes()))
+	err := c.lines(r)
 	c.report.Records, c.report.Bytes, c.report.Sealed, c.report.Head = r.seq, r.offset, r.sealed, r.head
 	o := r.Opened()
 	c.report.Log, c.report.Mode, c.report.Program, c.report.Continues = o.Log, o.Mode, o.Program, o.Continues
@@ -138,20 +147,25 @@ func (c *check) readSignatures() error {
 		return err
 	}
 	for _, f := range files {
-		b := besideSignature{check: SignatureCheck{File: filepath.Base(f.path), Role: RoleNotStated}}
 		text, err := readUpTo(f.path, 1<<20)
-		if err == nil {
-			b.signature, err = signing.Parse(text)
-		}
 		if err != nil {
-			b.check.State, b.check.Why = Malformed, err.Error()
-		} else {
-			b.check.Key = b.signature.Key().Fingerprint()
-			b.hash = c.hashFor(b.signature)
+			return err
 		}
-		c.beside = append(c.beside, b)
+		c.addSignature(filepath.Base(f.path), text)
 	}
 	return nil
+}
+
+func (c *check) addSignature(name string, text []byte) {
+	b := besideSignature{check: SignatureCheck{File: name, Role: RoleNotStated}}
+	signature, err := signing.Parse(text)
+	if err != nil {
+		b.check.State, b.check.Why = Malformed, err.Error()
+	} else {
+		b.signature, b.hash = signature, c.hashFor(signature)
+		b.check.Key = signature.Key().Fingerprint()
+	}
+	c.beside = append(c.beside, b)
 }
 
 func readUpTo(path string, most int64) ([]byte, error) {

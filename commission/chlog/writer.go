@@ -107,8 +107,8 @@ func NewID() string {
 	return hex.EncodeToString(b[:])
 }
 
-// Create begins a log in a file that does not exist yet, with opened as its first record. Its format is filled in, and its
-// log id where it is empty.
+// Create begins a log with opened as its first record, in a file that does not exist yet or is empty, as an earlier Create
+// leaves it that died at once. The format is filled in, and the log id where it has none.
 func Create(fsys FS, path string, opened record.Opened, o Options) (*Writer, error) {
 	opened.Format = record.Format
 	if opened.Log == "" {
@@ -155,6 +155,9 @@ func (w *Writer) takeLock() error {
 // create makes the empty file, and its name in the folder lasting.
 func (w *Writer) create() error {
 	f, err := w.fsys.OpenFile(w.path, os.O_WRONLY|os.O_APPEND|os.O_CREATE|os.O_EXCL, 0o644)
+	if errors.Is(err, fs.ErrExist) && w.isEmpty() {
+		f, err = w.fsys.OpenFile(w.path, os.O_WRONLY|os.O_APPEND, 0o644)
+	}
 	if errors.Is(err, fs.ErrExist) {
 		return fmt.Errorf("%s exists already; resume it, or choose another name: %w", filepath.Base(w.path), err)
 	}
@@ -166,6 +169,11 @@ func (w *Writer) create() error {
 	}
 	w.file = f
 	return nil
+}
+
+func (w *Writer) isEmpty() bool {
+	text, err := readAll(w.fsys, w.path)
+	return err == nil && len(text) == 0
 }
 
 // Append writes one record, syncs, and only then returns its line.
