@@ -23,7 +23,7 @@ func wish(s site.Site, p planned) (Wish, finding.Missing) {
 	missing.Need("bus.under_voltage_trip", s.Bus.UnderVoltageTrip.IsGiven())
 	missing.Need("bus.measurement_error", s.Bus.MeasurementError.IsGiven())
 	missing.Need("bus.ripple", s.Bus.Ripple.IsGiven())
-	missing.Need("load.share_tolerance", loadOf(s).ShareTolerance.Nominal > 0)
+	missing.Need("load.share_tolerance", loadOf(s).ShareTolerance.IsGiven())
 	w := Wish{
 		SourceHigh: source.High, LowerMargin: s.Bus.WantedMargin.Nominal,
 		LowestBus:  s.Bus.UnderVoltageTrip.Nominal + s.Bus.Error(),
@@ -42,13 +42,16 @@ func wish(s site.Site, p planned) (Wish, finding.Missing) {
 func AdviceFinding(s site.Site) finding.Finding { return adviceFinding(s, plan(s)) }
 
 func adviceFinding(s site.Site, p planned) finding.Finding {
-	f := finding.Finding{ID: "droop.advice", Title: "least droop voltage at rated current that meets all limits", Unit: "V",
+	f := finding.Finding{ID: "droop.advice", Title: "Least droop voltage at rated current that meets all limits", Unit: "V",
 		Basis: "ΔV_min = 2e·(1 − w_min)⁄share_tolerance; V_lo + ΔV ≤ V_set ≤ V_hi − ΔV; " + ownDerivation}
 	w, missing := wish(s, p)
 	if len(missing) > 0 {
 		return f.Lacking(missing...)
 	}
 	a := Advise(w)
+	if w.ShareTolerance == 0 && len(w.Rated) > 1 {
+		return f.Without(finding.Fail, "load.share_tolerance 0 % asks for a droop without bounds")
+	}
 	f = f.Judged(finding.Exactly(float64(a.Least)), finding.AtMost(float64(a.Greatest)), 0)
 	f.Parts = adviceParts(s, p, a)
 	f.Explanation = adviceWorking(s, p, w, a)
@@ -171,25 +174,22 @@ func settled(s site.Site) []finding.Change {
 	return nil
 }
 
-// relax is the remedy where no droop shares well enough inside the window: the least share tolerance that leaves room,
-// with the settings for it, or the setpoint error that would.
+// relax is the remedy where no droop shares well enough inside the window: the least share tolerance that leaves room, with
+// the settings for it, or the setpoint error that would.
 func relax(s site.Site, w Wish, a Advice) (string, []finding.Change) {
 	if a.Greatest <= 0 {
 		return fmt.Sprintf("no droop fits: the source with its margin (%.5g V) and the upper limit (%.5g V) leave no room for errors and ripple, %.4g V short",
 			float64(a.Lowest), float64(a.Highest), float64(a.Lowest-a.Highest)), nil
 	}
 	tolerance := finding.Change{Key: "load.share_tolerance", Unit: "1", Was: float64(w.ShareTolerance)}
+	exact, exactChanges := exacter(s, w)
 	value, ok := remedy.Least(tolerance.Was, 1, func(x float64) bool {
 		tolerance.Value = x
 		changed, err := remedy.Apply(s, tolerance)
 		return err == nil && settled(changed) != nil
 	})
-	text := ""
-	if e := w.GreatestError(); e > 0 {
-		text = fmt.Sprintf("; or a setpoint error of at most %.4g V (now %.4g V)", float64(e), float64(w.SetpointError))
-	}
 	if !ok {
-		return "accept less exact sharing or a wider window" + text, nil
+		return exact, exactChanges
 	}
 	tolerance.Value = value
 	changed, err := remedy.Apply(s, tolerance)
@@ -197,5 +197,36 @@ func relax(s site.Site, w Wish, a Advice) (string, []finding.Change) {
 		return "", nil
 	}
 	changes := append([]finding.Change{tolerance}, settled(changed)...)
-	return "accept less exact sharing: set " + remedy.Phrase(changes) + text, changes
+	text := "accept less exact sharing: set " + remedy.Phrase(changes)
+	if exact != "" {
+		text += "; or " + exact
+	}
+	return text, changes
+}
+
+// exacter is the remedy of setpoints that are more exact: the greatest error, the same in volts for all, for which the
+// advice has room, with the settings for it.
+func exacter(s site.Site, w Wish) (string, []finding.Change) {
+	errors := func(e float64) []finding.Change {
+		var changes []finding.Change
+		for _, k := range s.Infeeds {
+			was := float64(k.SetpointError.Of(k.Setpoint.Nominal))
+			changes = append(changes, finding.Change{Key: "infeed.setpoint_error", Subject: k.Name, Unit: "V", Was: was, Value: math.Min(was, e)})
+		}
+		return changes
+	}
+	e, ok := remedy.Least(float64(w.SetpointError), 0, func(e float64) bool {
+		changed, err := remedy.Apply(s, errors(e)...)
+		return err == nil && settled(changed) != nil
+	})
+	if !ok {
+		return "", nil
+	}
+	changes := errors(e)
+	changed, err := remedy.Apply(s, changes...)
+	if err != nil {
+		return "", nil
+	}
+	changes = append(changes, settled(changed)...)
+	return "make the setpoints more exact: set " + remedy.Phrase(changes), changes
 }

@@ -42,7 +42,9 @@ func Advise(w Wish) Advice {
 		smallest = math.Min(smallest, float64(i))
 	}
 	a := Advice{SmallestShareWeight: smallest / sum}
-	a.Least = quantity.Voltage(2 * float64(w.SetpointError) * (1 - a.SmallestShareWeight) / float64(w.ShareTolerance))
+	if len(w.Rated) > 1 { // a single infeed shares with nobody
+		a.Least = quantity.Voltage(2 * float64(w.SetpointError) * (1 - a.SmallestShareWeight) / float64(w.ShareTolerance))
+	}
 	a.Lowest = max(w.SourceHigh+w.LowerMargin, w.LowestBus) + w.SetpointError + w.Ripple/2
 	a.Highest = w.UpperLimit - w.UpperMargin - w.SetpointError - w.Ripple/2
 	a.Greatest = (a.Highest - a.Lowest) / quantity.Voltage(w.LoadFraction+w.RegenerationShare)

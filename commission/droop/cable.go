@@ -7,7 +7,7 @@ import (
 
 // cables state the drop of each infeed's cable at rated current.
 func cables(s site.Site) []finding.Finding {
-	f := finding.Finding{ID: "cable.drop", Title: "drop in the cable at rated current", Unit: "V",
+	f := finding.Finding{ID: "cable.drop", Title: "Drop in the cable at rated current", Unit: "V",
 		Basis: "I_rated·2·length·R′·(1 + 0.00393·(T − 20 °C)), both conductors; IEC 60228:2004 tables 2 and 3, plain copper"}
 	if len(s.Infeeds) == 0 {
 		return []finding.Finding{f.Lacking("infeed")}

@@ -3,6 +3,7 @@ package droop
 import (
 	"fmt"
 	"math"
+	"strings"
 
 	"chargehand/commission/finding"
 	"chargehand/commission/quantity"
@@ -83,7 +84,7 @@ func workings(w *finding.Working, sources []Source, names []string, l Load, unit
 	if p.Status != Found {
 		return math.NaN()
 	}
-	conductance, amperes := "0", "0"
+	var conductance, amperes []string
 	g, a := 0.0, 0.0
 	for k, s := range sources {
 		if s.Offline {
@@ -93,27 +94,59 @@ func workings(w *finding.Working, sources []Source, names []string, l Load, unit
 		if p.Limit[k] != Free {
 			name := fmt.Sprintf("I_%d", n)
 			w.Given(name, "current of "+names[k]+", at its limit", "A", float64(p.Current[k]))
-			amperes += " + " + name
+			amperes = append(amperes, name)
 			a += float64(p.Current[k])
 			continue
 		}
 		v0, r := fmt.Sprintf("V0_%d", n), fmt.Sprintf("r_%d", n)
 		w.Given(v0, "no-load setpoint of "+names[k], "V", float64(s.NoLoad))
 		w.Given(r, "droop and cable of "+names[k], "V/A", s.slope())
-		conductance += " + 1 / " + r
-		amperes += " + " + v0 + " / " + r
+		conductance, amperes = append(conductance, "1 / "+r), append(amperes, v0+" / "+r)
 		g += 1 / s.slope()
 		a += float64(s.NoLoad) / s.slope()
 	}
 	w.Given("P", "constant power of the load, negative for regeneration", unit, float64(l.Power))
-	w.Step("G", conductance, "A/V", g)
-	w.Step("A", amperes, "A", a)
+	w.Step("G", sumOf(conductance), "A/V", g)
+	w.Step("A", sumOf(amperes), "A", a)
 	if g == 0 {
 		w.Step("V", "P / A", "V", float64(p.Bus))
 	} else {
 		w.Step("V", "(A + sqrt(A^2 - 4 * G * P)) / (2 * G)", "V", float64(p.Bus))
 	}
 	return float64(p.Bus)
+}
+
+func sumOf(terms []string) string {
+	if len(terms) == 0 {
+		return "0"
+	}
+	return strings.Join(terms, " + ")
+}
+
+// spread notes the corner that governs and what each infeed's setpoint error moves by itself, the others exact.
+func (p planned) spread(w *finding.Working, s site.Site, governs string, f func(sources []Source) float64) {
+	keys, moves := make([]string, len(p.sources)), make([]float64, len(p.sources))
+	work := append([]Source(nil), p.sources...)
+	for k := range work {
+		work[k].NoLoad = p.sources[k].NoLoad - p.errors[k]
+		low := f(work)
+		work[k].NoLoad = p.sources[k].NoLoad + p.errors[k]
+		keys[k], moves[k] = "infeed.setpoint_error of "+s.Infeeds[k].Name, math.Abs(f(work)-low)
+		work[k].NoLoad = p.sources[k].NoLoad
+	}
+	w.Spread(governs, keys, moves)
+}
+
+// busAt is the bus voltage of sources at a load, for [planned.spread].
+func busAt(l Load, lost int) func(sources []Source) float64 {
+	return func(sources []Source) float64 {
+		if lost >= 0 {
+			sources = append([]Source(nil), sources...)
+			sources[lost].Offline = true
+		}
+		v, _ := balance(sources, l)
+		return v
+	}
 }
 
 func names(s site.Site) []string {

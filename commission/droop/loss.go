@@ -34,7 +34,7 @@ func LostInfeed(s site.Site, lost int) finding.Finding {
 }
 
 func lostInfeed(s site.Site, p planned, lost int) finding.Finding {
-	f := finding.Finding{ID: "droop.lost-infeed", Title: "bus after losing an infeed", Unit: "V", Guards: true,
+	f := finding.Finding{ID: "droop.lost-infeed", Title: "Bus after losing an infeed", Unit: "V", Guards: true,
 		Basis: "highest root of ΣI_k(V) = P⁄V without it, setpoints ± error; nobody at a limit; " + circuitTheory}
 	if lost >= 0 {
 		f.Subject = s.Infeeds[lost].Name
@@ -53,7 +53,7 @@ func lostInfeed(s site.Site, p planned, lost int) finding.Finding {
 		f = f.Without(finding.Fail, b.status.why("at load.power without "+f.Subject))
 		f.Limit = limit
 		most, _ := GreatestPower(sources, Load{})
-		f.Because = append(f.Because, "the others carry at most "+remedy.Figure(float64(most), "W"))
+		f.Because = append(f.Because, "the others carry at most "+quantity.Engineering(float64(most), "W", 4))
 		return f
 	}
 	b.value.Nominal = bandOf(sources, p.errors, Load{Power: loadOf(s).Power.Nominal}).value.Nominal
@@ -61,25 +61,34 @@ func lostInfeed(s site.Site, p planned, lost int) finding.Finding {
 	f = withLoading(s, p, f, sources)
 	w := finding.Explain(f.Basis, circuitTheory, "steady state after the loss; the step itself is not judged")
 	workings(w, sources, names(s), Load{Power: loadOf(s).Power.Nominal}, "W")
-	w.Spread(errorsGovern, []string{"infeed.setpoint_error, load.power"}, []float64{f.Value.High - f.Value.Low})
+	p.spread(w, s, errorsGovern, busAt(Load{Power: loadOf(s).Power.Nominal}, lost))
 	f.Explanation = w.Done()
 	return f
 }
 
 // withLoading adds the highest loading of those that remain, and fails the finding where one stands at its limit in any
-// corner.
+// corner. An infeed carries most with its own setpoint high against all others low, and least the other way round.
 func withLoading(s site.Site, p planned, f finding.Finding, sources []Source) finding.Finding {
-	share := Share(sources, p.errors, Load{Power: loadOf(s).Power.High})
 	var loading finding.Value
-	for k, i := range share.Current {
+	work := make([]Source, 0, len(sources))
+	l := Load{Power: loadOf(s).Power.High}
+	for k := range sources {
 		if sources[k].Offline {
 			continue
 		}
-		rated := sources[k].Rated
-		loading.Low = math.Max(loading.Low, float64(i.Low/rated))
-		loading.Nominal = math.Max(loading.Nominal, float64(i.Nominal/rated))
-		loading.High = math.Max(loading.High, float64(i.High/rated))
-		if i.High >= sources[k].Most {
+		carried := func(own quantity.Voltage) float64 {
+			work = shifted(work, sources, p.errors, -own)
+			work[k].NoLoad = sources[k].NoLoad + own*p.errors[k]
+			bus, status := balance(work, l)
+			if status != Found {
+				return math.Inf(1)
+			}
+			return work[k].current(bus) / float64(sources[k].Rated)
+		}
+		high := carried(+1)
+		loading.Low, loading.Nominal = math.Max(loading.Low, carried(-1)), math.Max(loading.Nominal, carried(0))
+		loading.High = math.Max(loading.High, high)
+		if high >= 1 {
 			f.Verdict = finding.Fail
 			f.Because = append(f.Because, s.Infeeds[k].Name+" stands at its limit")
 		}
@@ -103,7 +112,7 @@ func afterLoss(s site.Site, sources []Source, limit finding.Limit, passes func(s
 	if limit.Low != nil && *limit.Low > 0 {
 		need := quantity.Current(float64(loadOf(s).Power.High) / *limit.Low)
 		if short := need - ratedSum(sources); short > 0 {
-			text += fmt.Sprintf("; the others lack up to %s of rated current", remedy.Figure(float64(short), "A"))
+			text += fmt.Sprintf("; the others lack up to %s of rated current", quantity.Engineering(float64(short), "A", 4))
 		}
 	}
 	return text, changes
@@ -124,7 +133,7 @@ func Regeneration(s site.Site) finding.Finding {
 }
 
 func regeneration(s site.Site) finding.Finding {
-	f := finding.Finding{ID: "droop.regeneration", Title: "bus at full regeneration", Unit: "V", Guards: true,
+	f := finding.Finding{ID: "droop.regeneration", Title: "Bus at full regeneration", Unit: "V", Guards: true,
 		Basis: "highest root of ΣI_k(V) = −P_regen⁄V, setpoints ± error; " + circuitTheory}
 	p := plan(s)
 	upper, _, more := upperLimit(s)
@@ -149,7 +158,7 @@ func regeneration(s site.Site) finding.Finding {
 	f.Because = append(f.Because, why)
 	w := finding.Explain(f.Basis, circuitTheory, "steady state; nobody switches off")
 	workings(w, p.sources, names(s), Load{Power: -loadOf(s).Regeneration.Nominal}, "W")
-	w.Spread(errorsGovern, []string{"infeed.setpoint_error, load.regeneration"}, []float64{f.Value.High - f.Value.Low})
+	p.spread(w, s, errorsGovern, busAt(Load{Power: -loadOf(s).Regeneration.Nominal}, -1))
 	f.Explanation = w.Done()
 	return f
 }

@@ -24,7 +24,7 @@ func BusRange(s site.Site) finding.Finding {
 }
 
 func busRange(s site.Site) finding.Finding {
-	f := finding.Finding{ID: "droop.bus-range", Title: "operating voltage of the bus", Unit: "V", Guards: true,
+	f := finding.Finding{ID: "droop.bus-range", Title: "Operating voltage of the bus", Unit: "V", Guards: true,
 		Basis: "highest root of ΣI_k(V) = P⁄V at load.power, no load and −load.regeneration, setpoints ± error; " + circuitTheory}
 	p := plan(s)
 	limit, more := thresholds(s)
@@ -52,7 +52,7 @@ func busRange(s site.Site) finding.Finding {
 	f = f.Judged(value, limit, 0)
 	w := finding.Explain(f.Basis, circuitTheory, "steady state; bleeders and auxiliary supply neglected; cables at their temperature")
 	workings(w, p.sources, names(s), nominal, "W")
-	w.Spread(errorsGovern, []string{"infeed.setpoint_error, load.power, load.regeneration"}, []float64{value.High - value.Low})
+	p.spread(w, s, errorsGovern, busAt(nominal, -1))
 	f.Explanation = w.Done()
 	return f
 }
@@ -102,8 +102,8 @@ func excluded(f finding.Finding) string {
 	if over <= 0 {
 		return "no common shift of the setpoints passes: less load or another droop is needed"
 	}
-	return "the lower and the upper limit exclude each other: the bus moves over " + remedy.Figure(f.Value.High-f.Value.Low, "V") +
-		", " + remedy.Figure(over, "V") + " more than lies between them; less droop is needed"
+	return "the lower and the upper limit exclude each other: the bus moves over " + quantity.Engineering(f.Value.High-f.Value.Low, "V", 4) +
+		", " + quantity.Engineering(over, "V", 4) + " more than lies between them; less droop is needed"
 }
 
 // easeLoad is the remedy of less load, or of less regeneration: the greatest power with which the finding passes.

@@ -9,6 +9,8 @@ import (
 	"chargehand/commission/site"
 )
 
+const sharingBasis = "|I_k − w_k·ΣI|⁄I_rated,k over setpoints ± error, own error against all others; " + circuitTheory
+
 // SharingFinding judges the worst deviation of any infeed from its share by rating: at load.power among all, at full
 // regeneration among those that regenerate.
 func SharingFinding(s site.Site) finding.Finding {
@@ -24,8 +26,8 @@ func SharingFinding(s site.Site) finding.Finding {
 }
 
 func sharing(s site.Site) finding.Finding {
-	f := finding.Finding{ID: "droop.share", Title: "worst deviation from the share by rating", Unit: "1",
-		Basis: "|I_k − w_k·ΣI|⁄I_rated,k over setpoints ± error, own error against all others; " + circuitTheory}
+	f := finding.Finding{ID: "droop.share", Title: "Worst deviation from the share by rating", Unit: "1",
+		Basis: sharingBasis}
 	p := plan(s)
 	missing := p.missing
 	missing.Need("load.power", loadOf(s).Power.IsGiven())
@@ -49,7 +51,7 @@ func sharing(s site.Site) finding.Finding {
 	f = f.Judged(finding.Value{Low: math.Max(there.Low, here.Low), Nominal: math.Max(there.Nominal, here.Nominal),
 		High: math.Max(there.High, here.High)}, limit, 0)
 	f.Parts = deviationParts(s, forward)
-	f.Explanation = sharingWorking(f, s, p, forward, back)
+	f.Explanation = sharingWorking(s, p, forward, back)
 	return f
 }
 
@@ -77,10 +79,9 @@ func deviationParts(s site.Site, sharing Sharing) []finding.Part {
 	return parts
 }
 
-// sharingWorking shows the nominal deviation of the infeed that is worst with exact setpoints, and the usual estimate of
-// what errors add.
-func sharingWorking(f finding.Finding, s site.Site, p planned, forward, back Sharing) *finding.Explanation {
-	w := finding.Explain(f.Basis, circuitTheory, "steady state; equal errors of the setpoint in the adverse sense; cables included")
+// sharingWorking shows the nominal deviation of the infeed that is worst with exact setpoints.
+func sharingWorking(s site.Site, p planned, forward, back Sharing) *finding.Explanation {
+	w := finding.Explain(sharingBasis, circuitTheory, "steady state; equal errors of the setpoint in the adverse sense; cables included")
 	worst, sources, l := 0, p.sources, Load{Power: loadOf(s).Power.Nominal}
 	one := forward
 	if back.WorstDeviation().Nominal > forward.WorstDeviation().Nominal {
@@ -108,8 +109,27 @@ func sharingWorking(f finding.Finding, s site.Site, p planned, forward, back Sha
 	}
 	w.Step("I_all", "P / V", "A", float64(l.Power)/v)
 	w.Step("deviation", "abs(I - I_rated / I_rated_all * I_all) / I_rated", "1", math.Abs(current-rated/float64(ratedSum(sources))*float64(l.Power)/v)/rated)
-	w.Spread("greatest with one setpoint at its error against all others", []string{"infeed.setpoint_error"}, []float64{f.Value.High - f.Value.Low})
+	p.spread(w, s, "greatest with one setpoint at its error against all others", func(changed []Source) float64 {
+		moved := append([]Source(nil), changed...)
+		for k := range moved {
+			moved[k].Offline = sources[k].Offline
+		}
+		bus, _ := balance(moved, l)
+		return deviationOf(moved, worst, bus)
+	})
 	return w.Done()
+}
+
+// deviationOf is how far an infeed stands from its share by rating at a bus voltage, in terms of its own rating.
+func deviationOf(sources []Source, k int, bus float64) float64 {
+	sum := 0.0
+	for _, s := range sources {
+		if !s.Offline {
+			sum += s.current(bus)
+		}
+	}
+	rated := float64(sources[k].Rated)
+	return (sources[k].current(bus) - rated/float64(ratedSum(sources))*sum) / rated
 }
 
 // moreDroop is the remedy of more droop on every infeed alike: the least factor with which the sharing passes.

@@ -22,7 +22,7 @@ func Stability(s site.Site) finding.Finding {
 }
 
 func stability(s site.Site) finding.Finding {
-	f := finding.Finding{ID: "droop.stability", Title: "load's negative conductance against the infeeds'", Unit: "1", Guards: true,
+	f := finding.Finding{ID: "droop.stability", Title: "Load's negative conductance against the infeeds'", Unit: "1", Guards: true,
 		Basis: "(P⁄V²)⁄(G + 1⁄R_L) ≤ 1, G of the infeeds that are at no limit; incremental resistance of constant-power loads, from memory"}
 	p := plan(s)
 	missing := p.missing
@@ -48,7 +48,9 @@ func stability(s site.Site) finding.Finding {
 	} else {
 		w.Step("ratio", "0 * P", "1", 0)
 	}
-	w.Spread(errorsGovern, []string{"infeed.setpoint_error"}, []float64{value.High - value.Low})
+	p.spread(w, s, errorsGovern, func(sources []Source) float64 {
+		return Solve(sources, l).StabilityRatio
+	})
 	f.Explanation = w.Done()
 	return f
 }
@@ -89,7 +91,7 @@ func stabilityOver(p planned, l Load) (finding.Value, Status) {
 // setpoint error that the share tolerance leaves, share_tolerance·ΔV ⁄ (2(1 − w_min)), with the least droop voltage of the
 // infeeds.
 func Instruments(s site.Site) []finding.Finding {
-	f := finding.Finding{ID: "droop.instrument", Title: "error of the instrument at bus.nominal", Unit: "V",
+	f := finding.Finding{ID: "droop.instrument", Title: "Error of the instrument at bus.nominal", Unit: "V",
 		Basis: "e ≤ share_tolerance·ΔV⁄(2(1 − w_min)); " + ownDerivation}
 	p := plan(s)
 	missing := p.missing
@@ -159,7 +161,7 @@ func mendInstrument(s site.Site, f finding.Finding, i site.Instrument, limit flo
 
 // registers give setpoint and droop of the commissioned converter as the raw numbers to key in.
 func registers(s site.Site, r Registers) finding.Finding {
-	f := finding.Finding{ID: "droop.registers", Title: "setpoint and droop as raw register numbers", Unit: "1",
+	f := finding.Finding{ID: "droop.registers", Title: "Setpoint and droop as raw register numbers", Unit: "1",
 		Basis: "raw = (value − offset)⁄scale of the map's voltage-setpoint and droop-setting"}
 	p := plan(s)
 	missing := p.missing

@@ -77,7 +77,7 @@ func Apply(s site.Site, changes ...finding.Change) (site.Site, error) {
 	return s, nil
 }
 
-// Phrase writes changes as a person would key them in: `infeed.setpoint of "aft string" 945.4 V (now 870 V)`.
+// Phrase writes changes as a person would key them in: `infeed.setpoint of "aft string" to 945.4 V (now 870 V)`.
 func Phrase(changes []finding.Change) string {
 	phrases := make([]string, len(changes))
 	for i, c := range changes {
@@ -85,7 +85,7 @@ func Phrase(changes []finding.Change) string {
 		if c.Subject != "" {
 			phrases[i] += fmt.Sprintf(" of %q", c.Subject)
 		}
-		phrases[i] += " " + Figure(c.Value, c.Unit)
+		phrases[i] += " to " + Figure(c.Value, c.Unit)
 		if !math.IsNaN(c.Was) {
 			phrases[i] += " (now " + Figure(c.Was, c.Unit) + ")"
 		}
@@ -174,6 +174,11 @@ var setters = map[string]func(s *site.Site, c finding.Change) bool{
 	},
 	"infeed.setpoint": func(s *site.Site, c finding.Change) bool {
 		return changeInfeed(s, c.Subject, func(v *site.Infeed) { v.Setpoint = moved(v.Setpoint, c) })
+	},
+	"infeed.setpoint_error": func(s *site.Site, c finding.Change) bool {
+		return changeInfeed(s, c.Subject, func(v *site.Infeed) {
+			v.SetpointError = quantity.ErrorBound{Absolute: quantity.Voltage(c.Value), Text: text(c)}
+		})
 	},
 	"infeed.droop": func(s *site.Site, c finding.Change) bool {
 		return changeInfeed(s, c.Subject, func(v *site.Infeed) {

@@ -81,7 +81,7 @@ func (in inputs) worstDuty(of int) float64 {
 
 // Phase states the ripple of one choke, peak to peak, worst over the window.
 func Phase(s site.Site) finding.Finding {
-	f := finding.Finding{ID: "ripple.phase", Title: "ripple of one choke, peak to peak", Unit: "A",
+	f := finding.Finding{ID: "ripple.phase", Title: "Ripple of one choke, peak to peak", Unit: "A",
 		Basis: "ΔI = V_bus·D·(1 − D)⁄(L·f_sw), worst over the window; " + powerElectronics}
 	in, missing := read(s)
 	if len(missing) > 0 {
@@ -100,7 +100,7 @@ func Phase(s site.Site) finding.Finding {
 
 // Sum states the ripple of all phases together, peak to peak, worst over the window.
 func Sum(s site.Site) finding.Finding {
-	f := finding.Finding{ID: "ripple.sum", Title: "ripple of all phases together, peak to peak", Unit: "A",
+	f := finding.Finding{ID: "ripple.sum", Title: "Ripple of all phases together, peak to peak", Unit: "A",
 		Basis: "ΔI = V_bus·x·(1 − x)⁄(N·L·f_sw), x = N·D less its whole number, zero at D = k⁄N, worst over the window; " + powerElectronics}
 	in, missing := read(s)
 	if len(missing) > 0 {
@@ -161,7 +161,7 @@ func branches(s site.Site) (Branches, finding.Missing) {
 // choke at its greatest, high with the worst mixture of least and greatest: unequal chokes leave the switching frequency
 // itself in the sum, where the filter does least.
 func Source(s site.Site) finding.Finding {
-	f := finding.Finding{ID: "ripple.source", Title: "ripple current that reaches the source, rms", Unit: "A",
+	f := finding.Finding{ID: "ripple.source", Title: "Ripple current that reaches the source, rms", Unit: "A",
 		Basis: "rms of harmonics 1…5 of f_sw, |Σ V_bus·sin(πhD)⁄(π²h²·f_sw·L_k)·e^(−j2πhk⁄N)|·|Z_c⁄(Z_c + Z_s)|, worst over the window; " + powerElectronics}
 	in, missing := read(s)
 	b, more := branches(s)
@@ -249,7 +249,7 @@ const (
 // Resonance judges the resonance of filter and source loop: no harmonic k = 1…6 of the switching frequency within 20 % of
 // it. The limit stated is the free range around it, or the nearest one.
 func Resonance(s site.Site) finding.Finding {
-	f := finding.Finding{ID: "ripple.resonance", Title: "resonance of filter and source loop", Unit: "Hz", Guards: true,
+	f := finding.Finding{ID: "ripple.resonance", Title: "Resonance of filter and source loop", Unit: "Hz", Guards: true,
 		Basis: "f_r = 1⁄(2π√(C_f·(L_s + ESL))); |k·f_sw⁄f_r − 1| > 0.2 for k = 1…6; circuit theory, the distance by convention"}
 	filter := converter(s).Filter
 	if filter == nil {

@@ -81,7 +81,7 @@ func ChokePeak(s site.Site) finding.Finding {
 
 func chokePeak(s site.Site) finding.Finding {
 	f := finding.Finding{
-		ID: "window.choke-peak", Title: "worst peak current of a choke", Unit: "A", Guards: true,
+		ID: "window.choke-peak", Title: "Worst peak current of a choke", Unit: "A", Guards: true,
 		Basis: "|I|⁄N·(1 + σ) + ΔI⁄2, ΔI = V_bus·D·(1 − D)⁄(L·f_sw), at bus-high, both directions, worst rest voltage; " + powerElectronics,
 	}
 	d, axes, missing := chokeAxes(s)

@@ -52,7 +52,7 @@ func Current(s site.Site) finding.Finding {
 
 func current(s site.Site) finding.Finding {
 	f := finding.Finding{
-		ID: "window.current", Title: "source current at the bottom of the window", Unit: "A", Guards: true,
+		ID: "window.current", Title: "Source current at the bottom of the window", Unit: "A", Guards: true,
 		Basis: "I = 2P⁄(E_low + √(E_low² − 4·R_i·P)), P = rated_power⁄efficiency; " + circuitTheory,
 	}
 	axes, missing := powerAxes(s)

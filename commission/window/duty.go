@@ -32,7 +32,7 @@ func DutyWithDrops(source, bus quantity.Voltage, current quantity.Current, d Dro
 // source and the highest bus, against what the hardware can make.
 func DutyRange(s site.Site) finding.Finding {
 	f := finding.Finding{
-		ID: "window.duty", Title: "duty of the lower switch", Unit: "1", Guards: true,
+		ID: "window.duty", Title: "Duty of the lower switch", Unit: "1", Guards: true,
 		Basis: "D = 1 − V_source⁄V_bus within [D_hw, 1 − D_hw], D_hw = f_sw·(t_min + t_dead); " + powerElectronics,
 	}
 	high, missing := sourceHigh(s)

@@ -34,7 +34,7 @@ func Findings(s site.Site) []finding.Finding {
 func sourceHighFinding(s site.Site) finding.Finding {
 	e, missing := sourceHigh(s)
 	f := finding.Finding{
-		ID: "window.source-high", Title: "source terminal voltage at the top, charging", Unit: "V",
+		ID: "window.source-high", Title: "Source terminal voltage at the top, charging", Unit: "V",
 		Basis: "V = E_high + I_chg·R_i + e; " + circuitTheory,
 	}
 	return e.explained(s, f, missing, "E_high", "I_chg", "+")
@@ -43,7 +43,7 @@ func sourceHighFinding(s site.Site) finding.Finding {
 func sourceLowFinding(s site.Site) finding.Finding {
 	e, missing := sourceLow(s)
 	f := finding.Finding{
-		ID: "window.source-low", Title: "source terminal voltage at the bottom, discharging", Unit: "V",
+		ID: "window.source-low", Title: "Source terminal voltage at the bottom, discharging", Unit: "V",
 		Basis: "V = E_low − I_dis·R_i − e; " + circuitTheory,
 	}
 	return e.explained(s, f, missing, "E_low", "I_dis", "-")
@@ -85,12 +85,12 @@ func governs(axes []corner.Axis, s corner.Spread) string {
 
 func busFinding(s site.Site, high bool) finding.Finding {
 	f := finding.Finding{
-		ID: "window.bus-low", Title: "lowest steady bus voltage", Unit: "V",
+		ID: "window.bus-low", Title: "Lowest steady bus voltage", Unit: "V",
 		Basis: "V = V_set − d·I_rated − e_reg − e_bus − V_pp⁄2, least of all infeeds; " + circuitTheory,
 	}
 	sign := "-"
 	if high {
-		f.ID, f.Title, sign = "window.bus-high", "highest steady bus voltage", "+"
+		f.ID, f.Title, sign = "window.bus-high", "Highest steady bus voltage", "+"
 		f.Basis = "V = V_set + d·I_rated + e_reg + e_bus + V_pp⁄2, greatest of all infeeds, droop where it regenerates; " + circuitTheory
 	}
 	e, missing := busEnd(s, high)

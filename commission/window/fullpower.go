@@ -20,7 +20,7 @@ func FullPower(s site.Site) finding.Finding {
 
 func fullPower(s site.Site) finding.Finding {
 	f := finding.Finding{
-		ID: "window.full-power", Title: "least rest voltage with full power", Unit: "V",
+		ID: "window.full-power", Title: "Least rest voltage with full power", Unit: "V",
 		Basis: "E = P⁄(η·I) + R_i·I with I the least of the ratings, raised until no choke saturates at bus-high; " + circuitTheory,
 	}
 	d, axes, missing := chokeAxes(s)

@@ -46,7 +46,7 @@ func converter(s site.Site) site.Converter {
 // what the least duty needs, and against the wanted margin.
 func Margin(s site.Site) finding.Finding {
 	f := finding.Finding{
-		ID: "window.margin", Title: "lowest bus above highest source", Unit: "V", Guards: true,
+		ID: "window.margin", Title: "Lowest bus above highest source", Unit: "V", Guards: true,
 		Basis: "bus-low − source-high ≥ max(margin_fail, source-high·D_hw⁄(1 − D_hw)), wanted_margin; above the bus the freewheel diodes conduct; " + circuitTheory,
 	}
 	source, missing := sourceHigh(s)

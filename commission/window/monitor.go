@@ -12,7 +12,7 @@ import (
 // from memory). Elsewhere the count is only stated.
 func InsulationMonitor(s site.Site) finding.Finding {
 	f := finding.Finding{
-		ID: "bus.insulation-monitor", Title: "active insulation monitors in the coupled system", Unit: "1", Guards: true,
+		ID: "bus.insulation-monitor", Title: "Active insulation monitors in the coupled system", Unit: "1", Guards: true,
 		Basis: "one active monitor per galvanically connected insulated system; IEC 61557-8, IEC 60364-5-53, clauses from memory",
 	}
 	active, where := 0, ""

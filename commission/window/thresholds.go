@@ -20,7 +20,7 @@ type rung struct {
 // away.
 func Thresholds(s site.Site) finding.Finding {
 	f := finding.Finding{
-		ID: "window.thresholds", Title: "smallest gap in the ladder of limits", Unit: "V", Guards: true,
+		ID: "window.thresholds", Title: "Smallest gap in the ladder of limits", Unit: "V", Guards: true,
 		Basis: "source-high < under-voltage trip < bus-low; bus-high < chopper < over-voltage trip < capacitor rating, each by the bus measurement error; " + circuitTheory,
 	}
 	lower, upper, missing := ladder(s)

@@ -79,7 +79,7 @@ func joule(x float64) float64 {
 // contactor do.
 func Uncontrolled(s site.Site) finding.Finding {
 	f := finding.Finding{
-		ID: "window.uncontrolled", Title: "diode current into a collapsed bus", Unit: "A",
+		ID: "window.uncontrolled", Title: "Diode current into a collapsed bus", Unit: "A",
 		Basis: "I = E_high⁄(R_i + R_choke⁄N), bus at 0 V, diode drop 0; slope E_high⁄(L_choke⁄N + L_source); " + circuitTheory,
 	}
 	c := converter(s)
@@ -148,7 +148,7 @@ func uncontrolledParts(s site.Site, f finding.Finding, axes []corner.Axis, loop 
 // Backfeed states the current from the bus into the empty source through a shorted upper switch and one choke.
 func Backfeed(s site.Site) finding.Finding {
 	f := finding.Finding{
-		ID: "window.backfeed", Title: "bus into the empty source through a shorted upper switch", Unit: "A",
+		ID: "window.backfeed", Title: "Bus into the empty source through a shorted upper switch", Unit: "A",
 		Basis: "I = (bus-high − E_low)⁄(R_i + R_choke), one choke, 0 behind a blocking diode; " + circuitTheory,
 	}
 	bus, missing := busEnd(s, true)

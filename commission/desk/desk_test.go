@@ -1,0 +1,61 @@
+package desk
+
+import (
+	"os"
+	"testing"
+
+	"chargehand/commission/finding/findingtest"
+	"chargehand/commission/signal"
+	"chargehand/commission/site"
+)
+
+const sites = "../../testdata/sites/"
+
+var names = []string{"wagtail", "nightjar", "ouzel"}
+
+func text(t testing.TB, name string) []byte {
+	t.Helper()
+	b, err := os.ReadFile(sites + name + ".site.toml")
+	if err != nil {
+		t.Fatal(err)
+	}
+	return b
+}
+
+func load(t testing.TB, name string) site.Site {
+	t.Helper()
+	s, _, err := site.Read(name, text(t, name))
+	if err != nil {
+		t.Fatal(err)
+	}
+	return s
+}
+
+// tenths writes volts in tenths and droop in tenths of a millivolt per ampere.
+type tenths struct{}
+
+func (tenths) Raw(name signal.Name, value float64) (int64, bool) {
+	switch name {
+	case signal.VoltageSetpoint:
+		return int64(value*10 + 0.5), true
+	case signal.DroopSetting:
+		return int64(value*1e4 + 0.5), true
+	}
+	return 0, false
+}
+
+// Source: the expected findings beside the sites, see their README.
+func TestWholeSites(t *testing.T) {
+	for _, name := range names {
+		t.Run(name, func(t *testing.T) {
+			sheet := Check(load(t, name), tenths{})
+			path := sites + name + ".expect.json"
+			if n := findingtest.Compare(t, path, sheet.Findings, ""); n < 40 {
+				t.Errorf("Compare = %d entries, want at least 40", n)
+			}
+			if want := findingtest.SiteVerdict(t, path); sheet.Verdict != want {
+				t.Errorf("Check(%s).Verdict = %s, want %s", name, sheet.Verdict, want)
+			}
+		})
+	}
+}
