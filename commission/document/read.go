@@ -191,6 +191,7 @@ func (t *Table) Keys() []string {
 	}
 	var all []string
 	for _, e := range t.entries {
+		e.asked = true
 		all = append(all, e.key)
 	}
 	return all

@@ -202,15 +202,20 @@ func control(s string) (rune, bool) {
 	return 0, false
 }
 
-var newEscapes = regexp.MustCompile(`^"(?:[^\\]|\\[^ex])*(\\[ex])`)
-
 // newEscape finds an escape in a string's source that only TOML 1.1 knows.
 func newEscape(raw []byte) (string, bool) {
-	m := newEscapes.FindSubmatch(raw)
-	if m == nil {
+	if raw[0] != '"' {
 		return "", false
 	}
-	return string(m[1]), true
+	for i := 0; i+1 < len(raw); i++ {
+		if raw[i] != '\\' {
+			continue
+		}
+		if i++; raw[i] == 'e' || raw[i] == 'x' {
+			return string(raw[i-1 : i+1]), true
+		}
+	}
+	return "", false
 }
 
 var beginsExpression = regexp.MustCompile(`^[ \t]*(\[|[A-Za-z0-9_"'.-]+[ \t]*=)`)
