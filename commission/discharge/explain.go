@@ -1,0 +1,70 @@
+package discharge
+
+import (
+	"math"
+
+	"chargehand/commission/corner"
+	"chargehand/commission/finding"
+)
+
+const (
+	validEnergy = "all banks, isolated ones included, at the highest steady bus voltage"
+	validTime   = "no load, every bleeder whole, converter stopped and every infeed off; a calculated time never stands for absence of voltage"
+)
+
+func (a *assessment) explain(formula, source, validity string) *finding.Working {
+	w := finding.Explain(formula, source, validity)
+	w.Given("V_1", "highest steady bus voltage", "V", float64(a.from))
+	w.Given("C_l", "all banks", "F", a.axes[axisLink].Nominal)
+	w.Given("C_f", "filter at the star point", "F", a.axes[axisFilter].Nominal)
+	w.Given("E", "rest voltage of the source, highest, where the filter stands", "V", float64(a.site.Source.HighestRest()))
+	return w
+}
+
+func (a *assessment) over(w *finding.Working, s corner.Spread) *finding.Explanation {
+	var names []string
+	var moves []float64
+	for i, axis := range a.axes {
+		width := axis.High - axis.Low
+		if i == axisBleeder && width > 0 {
+			width = 1/axis.Low - 1/axis.High
+		}
+		if len(a.members[i]) < 2 || width == 0 {
+			names, moves = append(names, axis.Name), append(moves, s.Moves[i])
+			continue
+		}
+		for _, m := range a.members[i] {
+			names, moves = append(names, m.Name), append(moves, s.Moves[i]*(m.High-m.Low)/width)
+		}
+	}
+	w.Spread("greatest with "+corner.Describe(a.axes, s.AtHigh), names, moves)
+	return w.Done()
+}
+
+func (a *assessment) explainEnergy() *finding.Explanation {
+	w := a.explain("W = C_l*V_1^2/2 + C_f*E^2/2", basisEnergy, validEnergy)
+	w.Step("W", "C_l*V_1^2/2 + C_f*E^2/2", "J", a.spreads[ofEnergy].Nominal)
+	return a.over(w, a.spreads[ofEnergy])
+}
+
+func (a *assessment) explainTime() *finding.Explanation {
+	w := a.explain("t = R_b*(C_l*ln(V_1/E) + (C_l + C_f)*ln(E/V_2))", basisTime, validTime)
+	w.Given("V_2", "touch-safe voltage", "V", float64(a.touch()))
+	conductance := 0.0
+	if r := a.axes[axisBleeder].Nominal; r > 0 {
+		conductance = 1 / r
+	}
+	w.Given("G_b", "conductance of all bleeders in parallel", "1/Ω", conductance)
+	joint := "min(V_1, max(E, V_2))"
+	if a.axes[axisFilter].Nominal == 0 {
+		joint = "V_1"
+	}
+	from, filter := float64(a.from), a.axes[axisFilter].Nominal
+	level := from
+	if filter > 0 {
+		level = math.Min(from, math.Max(float64(a.site.Source.HighestRest()), float64(a.touch())))
+	}
+	w.Step("V_j", joint, "V", level)
+	w.Step("t", "(C_l*ln(V_1/V_j) + (C_l + C_f)*ln(V_j/V_2))/G_b", "s", a.spreads[ofTime].Nominal)
+	return a.over(w, a.spreads[ofTime])
+}

@@ -1,0 +1,181 @@
+package precharge
+
+import (
+	"encoding/json"
+	"math"
+	"testing"
+
+	"chargehand/commission/quantity"
+)
+
+func (c publicCase) rating(t *testing.T) Rating {
+	t.Helper()
+	r := Rating{Power: quantity.Power(c.in(t, "p_rated_W")), FullTo: quantity.Temperature(c.in(t, "t1_C")),
+		ZeroAt: quantity.Temperature(c.in(t, "t2_C")), Multiple: c.in(t, "sto_k"), OverloadTime: quantity.Seconds(c.in(t, "sto_t_s"))}
+	if single := c.in(t, "e_single_J"); single > 0 {
+		// An energy that is permitted however short the pulse is the limit of a curve with one very short point.
+		r.Pulses = []Pulse{{Duration: 1e-9, Energy: quantity.Energy(single)}}
+	}
+	if raw, ok := c.Inputs["curve"]; ok {
+		var points [][2]float64
+		if err := json.Unmarshal(raw, &points); err != nil {
+			t.Fatal(err)
+		}
+		for _, p := range points {
+			r.Pulses = append(r.Pulses, Pulse{quantity.Seconds(p[0]), quantity.Energy(p[1])})
+		}
+	}
+	return r
+}
+
+func (c publicCase) heat(t *testing.T) Heat {
+	t.Helper()
+	on := quantity.Seconds(c.in(t, "t_on_s"))
+	if on == 0 {
+		on = quantity.Seconds(40 * c.in(t, "tau_s"))
+	}
+	steady := quantity.Current(c.in(t, "i_inf_A"))
+	return Heat{quantity.Resistance(c.in(t, "r_pre_ohm")), steady, quantity.Current(c.in(t, "i0_A")) - steady,
+		quantity.Seconds(c.in(t, "tau_s")), on, 1}
+}
+
+func TestRatingOnPublicPulseCases(t *testing.T) {
+	for _, c := range publicCases(t, "resistor_pulse") {
+		rating, heat := c.rating(t), c.heat(t)
+		peak := quantity.Power(c.in(t, "r_pre_ohm") * math.Pow(c.in(t, "i0_A"), 2))
+		from := quantity.Temperature(c.in(t, "t_amb_C"))
+		duration := PulseTime(heat.TimeConstant, heat.Energy(), peak)
+		permitted := rating.Permissible(duration, from)
+		c.compare(t, map[string]float64{
+			"temp_factor": float64(rating.Factor(from)), "p_peak_W": float64(peak), "e_pulse_J": float64(heat.Energy()),
+			"pulse_t_s": float64(duration), "p_perm_W": float64(permitted),
+			"e_perm_J": float64(permitted) * float64(duration), "utilisation": float64(peak / permitted),
+		}, "ok")
+	}
+}
+
+func TestBodyOnPublicSeries(t *testing.T) {
+	for _, c := range publicCases(t, "resistor_attempts") {
+		heat, period := c.heat(t), quantity.Seconds(c.in(t, "period_s"))
+		body := Body{quantity.Thermal(c.in(t, "r_th_K_W")), quantity.Seconds(c.in(t, "tau_th_s"))}
+		ambient := c.in(t, "t_amb_C")
+		steady := body.SteadyStart(heat, period)
+		factor := c.rating(t).Factor(quantity.Temperature(ambient))
+		thermal := float64(body.LeastPeriod(heat, quantity.Difference(c.in(t, "t_max_C")-ambient)))
+		mean := float64(heat.Energy()) / float64(factor) / c.in(t, "p_rated_W")
+		c.compare(t, map[string]float64{
+			"e_pulse_J": float64(heat.Energy()), "t_ss_start_C": ambient + float64(steady),
+			"t_ss_peak_C": ambient + float64(body.Peak(heat, steady)), "p_avg_W": float64(heat.Energy()) / float64(period),
+			"period_min_thermal_s": thermal, "period_min_avg_s": mean, "period_min_s": math.Max(thermal, mean),
+		}, "t_peak_C", "t_end_C", "avg_ok", "n_attempts_ok")
+		var peaks, ends []float64
+		if json.Unmarshal(c.Expected["t_peak_C"], &peaks) != nil || json.Unmarshal(c.Expected["t_end_C"], &ends) != nil {
+			t.Fatalf("%s: no series of temperatures", c.ID)
+		}
+		for i := range peaks {
+			start := body.Before(heat, i+1, period)
+			peak := ambient + float64(body.Peak(heat, start))
+			end := ambient + float64(body.After(heat, start, period))
+			if math.Abs(peak-peaks[i]) > 1e-4*peaks[i] || math.Abs(end-ends[i]) > 1e-4*ends[i] {
+				t.Errorf("%s: attempt %d peak, end = %v, %v °C, want %v, %v", c.ID, i+1, peak, end, peaks[i], ends[i])
+			}
+		}
+	}
+}
+
+func TestWithstandOnPublicFaults(t *testing.T) {
+	for _, c := range publicCases(t, "resistor_fault") {
+		rating := c.rating(t)
+		current := c.in(t, "emf_V") / (c.in(t, "r_pre_ohm") + c.in(t, "r_series_ohm"))
+		power := quantity.Power(c.in(t, "r_pre_ohm") * current * current)
+		start := quantity.Temperature(c.in(t, "t_start_C"))
+		pulse := float64(rating.Withstand(power, start))
+		got := map[string]float64{"i_fault_A": current, "p_fault_W": float64(power), "t_withstand_pulse_s": pulse, "t_withstand_s": pulse}
+		if thermal := c.in(t, "r_th_K_W"); thermal > 0 {
+			body := Body{quantity.Thermal(thermal), quantity.Seconds(c.in(t, "tau_th_s"))}
+			ambient := c.in(t, "t_amb_C")
+			rise := quantity.Difference(float64(start) - ambient)
+			byHeat := float64(body.Withstand(power, rise, quantity.Difference(c.in(t, "t_max_C")-ambient)))
+			got["t_withstand_thermal_s"] = byHeat
+			got["t_withstand_s"] = math.Min(pulse, byHeat)
+			steady := Heat{Resistor: quantity.Resistance(c.in(t, "r_pre_ohm")), Steady: quantity.Current(current), TimeConstant: 1, On: 1e9, Scale: 1}
+			got["t_at_timeout_C"] = ambient + float64(body.Rise(steady, rise, quantity.Seconds(c.in(t, "t_timeout_s"))))
+		}
+		got["window_lo_s"] = aboveSlowestCharge * c.in(t, "t_charge_max_s")
+		got["window_hi_s"] = got["t_withstand_s"] / belowLeastWithstand
+		exists := got["window_lo_s"] < got["window_hi_s"]
+		if want := string(c.Expected["window_exists"]) == "true"; exists != want {
+			t.Errorf("%s: window exists = %v, want %v", c.ID, exists, want)
+		}
+		if exists {
+			got["timeout_rec_s"] = math.Sqrt(got["window_lo_s"] * got["window_hi_s"])
+		}
+		if out := c.in(t, "t_timeout_s"); out > 0 {
+			got["fault_utilisation"] = out / got["t_withstand_s"]
+		}
+		c.compare(t, got, "window_exists", "timeout_ok", "timeout_rec_s")
+	}
+}
+
+// A curve and an overload together: what is proved where. Figures by hand from 12 kJ in 0.1 s … 200 kJ in 100 s, 10 kW for 5 s.
+func TestPermissiblePulseInEachRange(t *testing.T) {
+	r := Rating{Power: 1000, FullTo: 40, ZeroAt: 275, Multiple: 10, OverloadTime: 5,
+		Pulses: []Pulse{{0.1, 12e3}, {1, 30e3}, {10, 90e3}, {100, 200e3}}}
+	for _, c := range []struct {
+		name     string
+		duration quantity.Seconds
+		from     quantity.Temperature
+		want     quantity.Power
+		source   string
+	}{
+		{"shorter than the curve", 0.01, 25, 120e3, "P of the first point, 12 kJ ⁄ 0.1 s"},
+		{"on a point", 1, 40, 30e3, "30 kJ ⁄ 1 s"},
+		{"between points", quantity.Seconds(math.Sqrt(10)), 40, quantity.Power(math.Sqrt(30e3 * 9e3)), "middle of both logarithms"},
+		{"longer than the curve", 200, 40, 1000, "200 kJ ⁄ 200 s is the continuous rating"},
+		{"half the headroom gone", 1, 157.5, 15e3, "factor (275 − 157.5) ⁄ 235 = ½"},
+		{"no headroom", 1, 275, 0, "factor 0"},
+	} {
+		if got := r.Permissible(c.duration, c.from); math.Abs(float64(got-c.want)) > 1e-9*float64(c.want) {
+			t.Errorf("%s: Permissible(%v s, %v °C) = %v W, want %v W (%s)", c.name, c.duration, c.from, got, c.want, c.source)
+		}
+	}
+}
+
+// Withstand is the inverse of Permissible: the power is permitted up to it and no longer.
+func TestWithstandInvertsPermissible(t *testing.T) {
+	for _, r := range []Rating{
+		{Power: 1000, FullTo: 40, ZeroAt: 275, Pulses: []Pulse{{0.1, 12e3}, {1, 30e3}, {10, 90e3}, {100, 200e3}}},
+		{Power: 1000, FullTo: 40, ZeroAt: 275, Multiple: 10, OverloadTime: 5},
+		{Power: 200, FullTo: 40, ZeroAt: 275, Multiple: 5, OverloadTime: 5, Pulses: []Pulse{{0.01, 100}, {0.5, 900}}},
+	} {
+		for p := quantity.Power(1100); p < 110e3; p *= 1.37 {
+			at := r.Withstand(p, 60)
+			if at == 0 {
+				if r.Permissible(1e-12, 60) >= p {
+					t.Errorf("Withstand(%v W) = 0, but a short pulse of it is permitted", p)
+				}
+				continue
+			}
+			if got := r.Permissible(at*(1-1e-9), 60); got < p*(1-1e-6) {
+				t.Errorf("Permissible(%v s) = %v W just before Withstand, want at least %v", at, got, p)
+			}
+			for longer := at * (1 + 1e-9); longer < 1e5; longer *= 1.5 {
+				if got := r.Permissible(longer, 60); got >= p {
+					t.Errorf("Permissible(%v s) = %v W beyond Withstand(%v W) = %v s", longer, got, p, at)
+				}
+			}
+		}
+	}
+}
+
+// Two rates that meet must not divide nothing by nothing: limits by hand, t·e^(−k·t).
+func TestResponseWhereTheRatesMeet(t *testing.T) {
+	for _, k := range []float64{1e-3, 1, 50} {
+		want := 0.7 * math.Exp(-0.7*k)
+		for _, r := range []float64{k, k * (1 + 1e-12), k * (1 - 1e-9)} {
+			if got := response(r, k, 0.7); math.Abs(got-want) > 1e-6*want {
+				t.Errorf("response(%v, %v, 0.7) = %v, want %v", r, k, got, want)
+			}
+		}
+	}
+}
