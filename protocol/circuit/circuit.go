@@ -72,6 +72,7 @@ type Circuit struct {
 	returned, shorted          bool
 	joined, joinedHard         bool
 	infeedOn                   []bool
+	report                     *bool // what the bypass's auxiliary contact says whatever its main contact does
 
 	energy Energies
 	step   stepper
@@ -171,6 +172,27 @@ func (c *Circuit) Bypass(close bool) { c.bypass.command(c.p.Bypass, close, c.tim
 
 // DropBypass opens the bypass contactor's coil without a command having been taken back.
 func (c *Circuit) DropBypass() { c.Bypass(false) }
+
+// ForceReport makes the bypass's auxiliary contact say one thing whatever its main contact does; nil ends that.
+func (c *Circuit) ForceReport(closed *bool) {
+	c.report = closed
+	c.checkReport()
+}
+
+// bypassReport is what the bypass's auxiliary contact says.
+func (c *Circuit) bypassReport() bool {
+	if c.report != nil {
+		return *c.report
+	}
+	return c.bypass.auxiliary
+}
+
+// checkReport blocks the pulses when the bypass is not reported closed.
+func (c *Circuit) checkReport() {
+	if c.released && !c.bypassReport() {
+		c.block(BypassLost)
+	}
+}
 
 // DisconnectSource opens or closes the battery's own contactor.
 func (c *Circuit) DisconnectSource(open bool) { c.sourceOpen = open; c.changed() }
@@ -274,3 +296,6 @@ type NotConverged struct{ Time float64 }
 func (e *NotConverged) Error() string {
 	return fmt.Sprintf("integrate circuit at %.6f s: no solution with the smallest step", e.Time)
 }
+
+// InfeedOn tells whether another infeed is switched on.
+func (c *Circuit) InfeedOn(k int) bool { return c.infeedOn[k] }

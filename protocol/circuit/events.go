@@ -32,9 +32,7 @@ func (c *Circuit) arrive() {
 	if c.bypass.arrive(c.p.Bypass, c.time) {
 		moved = true
 	}
-	if c.released && !c.bypass.auxiliary {
-		c.block(BypassLost)
-	}
+	c.checkReport()
 	if moved {
 		c.changed()
 	}

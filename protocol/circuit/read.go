@@ -51,7 +51,7 @@ func (c *Circuit) Read() Reading {
 		InfeedCurrents: append([]float64(nil), y[firstPhase+len(c.p.Chokes):]...),
 		LoadPower:      c.loadConductance * y[vBus] * y[vBus],
 		IsolatorClosed: c.isolator.main, PrechargeMain: c.precharge.main, PrechargeReported: c.precharge.auxiliary,
-		BypassMain: c.bypass.main, BypassReported: c.bypass.auxiliary, BypassCommanded: c.bypass.commanded,
+		BypassMain: c.bypass.main, BypassReported: c.bypassReport(), BypassCommanded: c.bypass.commanded,
 		PrechargeCommand: c.precharge.commanded, Released: c.released, Mode: c.mode, ChopperOn: c.chopperOn,
 		AuxiliaryOn: c.auxiliaryOn, LoadOn: c.loadOn, FuseOpen: c.fuseOpen, Shorted: c.shorted,
 	}
