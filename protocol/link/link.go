@@ -37,7 +37,8 @@ type Link struct {
 	buffer    [2 * maxFrame]byte
 	patience  patience
 	used      bool // the connection has given an answer
-	failures  int  // in a row, without a good answer between
+	peek      func() (bytes, ended bool)
+	failures  int // in a row, without a good answer between
 	owed      []owed
 	recent    [16]uint16 // transaction identifiers not to be used again soon
 	recentAt  int
@@ -193,7 +194,7 @@ func (l *Link) connected(ctx context.Context) error {
 		}
 		return l.connect(ctx)
 	}
-	bytes, ended := pending(conn)
+	bytes, ended := l.peek()
 	if ended || bytes && len(l.owed) == 0 {
 		l.drop()
 		return l.connect(ctx)
@@ -237,6 +238,7 @@ func (l *Link) connect(ctx context.Context) error {
 		return err
 	}
 	l.used = false
+	l.peek = peeker(conn)
 	l.owed = nil
 	l.patience.silences = 0
 	l.mu.Lock()

@@ -4,5 +4,7 @@ package link
 
 import "net"
 
-// pending cannot look on this system: what came unasked is found by its transaction identifier instead.
-func pending(net.Conn) (bytes, ended bool) { return false, false }
+// peeker cannot look on this system: what came unasked is found by its transaction identifier instead.
+func peeker(net.Conn) func() (bytes, ended bool) {
+	return func() (bytes, ended bool) { return false, false }
+}

@@ -7,28 +7,32 @@ import (
 	"syscall"
 )
 
-// pending looks for bytes that came unasked, without taking them and without waiting. ended tells that the peer closed the
-// connection. Control is used rather than Read, which would fail on the deadline of the request before.
-func pending(conn net.Conn) (bytes, ended bool) {
+// peeker gives a function that looks for bytes that came unasked, without taking them and without waiting; ended tells that
+// the peer closed the connection. Control is used rather than Read, which would fail on the deadline of the request before.
+// A connection without a socket cannot be looked at.
+func peeker(conn net.Conn) func() (bytes, ended bool) {
 	sc, ok := conn.(syscall.Conn)
 	if !ok {
-		return false, false
+		return blind
 	}
 	raw, err := sc.SyscallConn()
 	if err != nil {
-		return false, false
+		return blind
 	}
 	var one [1]byte
-	err = raw.Control(func(fd uintptr) {
-		n, _, e := syscall.Recvfrom(int(fd), one[:], syscall.MSG_PEEK|syscall.MSG_DONTWAIT)
-		switch {
-		case n > 0:
-			bytes = true
-		case e == nil:
-			ended = true // zero bytes and no error: the peer's end
-		case e != syscall.EAGAIN && e != syscall.EWOULDBLOCK && e != syscall.EINTR:
-			ended = true
+	var bytes, ended bool
+	look := func(fd uintptr) {
+		n, _, err := syscall.Recvfrom(int(fd), one[:], syscall.MSG_PEEK|syscall.MSG_DONTWAIT)
+		bytes = n > 0
+		ended = n == 0 && err == nil || err != nil && err != syscall.EAGAIN && err != syscall.EWOULDBLOCK && err != syscall.EINTR
+	}
+	return func() (bool, bool) {
+		bytes, ended = false, false
+		if err := raw.Control(look); err != nil {
+			return false, true
 		}
-	})
-	return bytes, ended || err != nil
+		return bytes, ended
+	}
 }
+
+func blind() (bytes, ended bool) { return false, false }

@@ -91,7 +91,7 @@ func (l *Link) transact(c *call, conn net.Conn, adu []byte) (reply []byte, got i
 		}
 		if frame != nil {
 			c.received = l.options.Now()
-			return frame, got, l.nothingAfter(conn, adu, rest)
+			return frame, got, l.nothingAfter(adu, rest)
 		}
 		got = rest
 		n, err := conn.Read(l.buffer[got:])
@@ -152,8 +152,10 @@ func (l *Link) throwAway(i int) {
 	l.count(func(s *Status) { s.LateAnswers++ })
 }
 
-// nothingAfter refuses an answer that is followed by anything but owed answers: its own bytes may have slipped.
-func (l *Link) nothingAfter(conn net.Conn, adu []byte, rest int) error {
+// nothingAfter refuses an answer that is followed by anything but owed answers: its own bytes may have slipped. The buffer
+// has room for more than a frame, so that whatever has come by now was read; what comes later is found before the next
+// request.
+func (l *Link) nothingAfter(adu []byte, rest int) error {
 	for rest >= headerSize {
 		late := l.owes(binary.BigEndian.Uint16(l.buffer[:]))
 		end := headerSize - 1 + int(binary.BigEndian.Uint16(l.buffer[4:]))
@@ -165,9 +167,6 @@ func (l *Link) nothingAfter(conn net.Conn, adu []byte, rest int) error {
 		rest -= end
 	}
 	if rest > 0 {
-		return l.malformed(adu, "bytes behind the answer")
-	}
-	if bytes, _ := pending(conn); bytes && len(l.owed) == 0 {
 		return l.malformed(adu, "bytes behind the answer")
 	}
 	return nil

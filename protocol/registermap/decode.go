@@ -12,7 +12,9 @@ import (
 )
 
 // Words is how many registers, or bits of a bit table, the point takes.
-func (p Point) Words() int {
+func (p Point) Words() int { return p.width() }
+
+func (p *Point) width() int {
 	if p.Table.HasBits() {
 		return 1
 	}
@@ -20,11 +22,15 @@ func (p Point) Words() int {
 }
 
 // Decode turns the words of a point, in wire order, into a reading; a bit of a coil or discrete table is a word of 0 or 1.
-// All words of the point must be there. A reading without a value says why; its time is left to the caller. The code for
-// 'no value' is compared first, before sign and scale; then value = raw · scale + offset, with the sign reversed after both.
-func (p Point) Decode(words []uint16) signal.Reading {
-	r := signal.Reading{Name: p.Name, Quality: signal.Bad, Raw: slices.Clone(words)}
-	if len(words) != p.Words() {
+// All words of the point must be there, and stay as they are: the reading keeps them as Raw. A reading without a value says
+// why; its time is left to the caller. The code for 'no value' is compared first, before sign and scale; then value =
+// raw · scale + offset, with the sign reversed after both.
+func (p Point) Decode(words []uint16) signal.Reading { return p.decode(words) }
+
+// decode and what it calls take the point by reference: it is large, and decoding is the most frequent thing done here.
+func (p *Point) decode(words []uint16) (r signal.Reading) {
+	r.Name, r.Quality, r.Raw = p.Name, signal.Bad, words
+	if len(words) != p.width() {
 		r.Why = fmt.Sprintf("%d of %d words came", len(words), p.Words())
 		return r
 	}
@@ -61,12 +67,17 @@ func (p Point) Decode(words []uint16) signal.Reading {
 	return r
 }
 
-func (p Point) isMissing(words []uint16) bool {
-	return slices.ContainsFunc(p.Missing, func(m []uint16) bool { return slices.Equal(m, words) })
+func (p *Point) isMissing(words []uint16) bool {
+	for _, m := range p.Missing {
+		if slices.Equal(m, words) {
+			return true
+		}
+	}
+	return false
 }
 
 // scaled gives the value in the stated unit.
-func (p Point) scaled(raw float64) float64 {
+func (p *Point) scaled(raw float64) float64 {
 	v := raw*orOne(p.Scale) + p.Offset
 	if p.SignReversed {
 		return 0 - v // no negative zero
@@ -74,7 +85,7 @@ func (p Point) scaled(raw float64) float64 {
 	return v
 }
 
-func (p Point) stated(v float64) string {
+func (p *Point) stated(v float64) string {
 	s := strconv.FormatFloat(v, 'g', 10, 64)
 	if p.Unit != "" {
 		s += " " + p.Unit
@@ -92,7 +103,7 @@ func orOne(f float64) float64 {
 
 // number gives the raw number, and as an integer where the type is one. A 64 bit integer beyond 2^53 loses its last digits
 // as a float64; as an integer u64 wraps above 2^63.
-func (p Point) number(words []uint16) (raw float64, whole int64) {
+func (p *Point) number(words []uint16) (raw float64, whole int64) {
 	if p.Table.HasBits() {
 		whole = int64(words[0] & 1)
 		return float64(whole), whole
@@ -120,7 +131,7 @@ func (p Point) number(words []uint16) (raw float64, whole int64) {
 }
 
 // assemble joins words in wire order to one number, most significant first.
-func (p Point) assemble(words []uint16) uint64 {
+func (p *Point) assemble(words []uint16) uint64 {
 	var u uint64
 	for i := range words {
 		w := words[i]
@@ -136,7 +147,7 @@ func (p Point) assemble(words []uint16) uint64 {
 }
 
 // split is the inverse of assemble.
-func (p Point) split(u uint64, n int) []uint16 {
+func (p *Point) split(u uint64, n int) []uint16 {
 	words := make([]uint16, n)
 	for i := range words {
 		w := uint16(u >> (16 * (n - 1 - i)))

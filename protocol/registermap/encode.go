@@ -70,7 +70,7 @@ func (t Type) limits() (low, high float64) {
 }
 
 // raw turns a value in the coherent unit into the raw number, not rounded.
-func (p Point) raw(value float64) (float64, error) {
+func (p *Point) raw(value float64) (float64, error) {
 	if p.Values != nil {
 		least, found := int64(math.MaxInt64), false
 		for raw, v := range p.Values {
@@ -79,7 +79,7 @@ func (p Point) raw(value float64) (float64, error) {
 			}
 		}
 		if !found {
-			return 0, &EncodeError{p, value, "none of the values the map lists"}
+			return 0, &EncodeError{*p, value, "none of the values the map lists"}
 		}
 		return float64(least), nil
 	}
