@@ -72,7 +72,7 @@ func (h *hunt) everywhere(do func(i int)) {
 	workers.Wait()
 }
 
-// Every change of a byte to any other, every deletion, insertion, swap of neighbours, doubling and truncation of a small
+// Every change of a byte, every deletion, insertion, swap of neighbours, doubling and truncation of a small
 // sealed log with its signature is found.
 func TestEverySingleByteIsVouchedFor(t *testing.T) {
 	whole, signature, key := smallest(t)
@@ -82,8 +82,8 @@ func TestEverySingleByteIsVouchedFor(t *testing.T) {
 	}
 	h.everywhere(func(i int) {
 		changed := bytes.Clone(whole)
-		for c := range 256 {
-			changed[i] = byte(c)
+		for _, c := range values(whole[i]) {
+			changed[i] = c
 			h.try(fmt.Sprintf("change to %#02x", c), i, changed)
 		}
 		changed[i] = whole[i]
@@ -92,7 +92,7 @@ func TestEverySingleByteIsVouchedFor(t *testing.T) {
 			h.try("swap", i-1, changed)
 		}
 		longer := append(append(bytes.Clone(whole[:i]), 0), whole[i:]...)
-		for _, c := range insertions(whole, i) {
+		for _, c := range values(whole[i]) {
 			longer[i] = c
 			h.try(fmt.Sprintf("insertion of %#02x", c), i, longer)
 		}
@@ -105,18 +105,21 @@ func TestEverySingleByteIsVouchedFor(t *testing.T) {
 	t.Logf("%d altered logs of %d bytes, all found", h.tried.Load(), len(whole))
 }
 
-// insertions are the bytes to put in before byte i: every one at each place in the head of a line, where the form allows
-// some, and inside a body those that mean something in JSON, the neighbour's own and a few that mean nothing.
-func insertions(whole []byte, i int) []byte {
-	start := bytes.LastIndexByte(whole[:i], '\n') + 1
-	if i-start > 150 {
-		return []byte{0, '\t', '\n', '\r', ' ', '"', ',', '0', '9', '.', ':', '[', ']', '\\', '{', '}', 'a', 'Z', '-', 0x7f, 0x80, 0xff, whole[i]}
+// values are the bytes to put in the place of c and before it: each that differs in one bit, and some that mean something to
+// JSON; with the tag "peer", which CI sets, every byte there is (about 1.1 million altered logs).
+func values(c byte) []byte {
+	if everyValue {
+		all := make([]byte, 256)
+		for i := range all {
+			all[i] = byte(i)
+		}
+		return all
 	}
-	all := make([]byte, 256)
-	for c := range all {
-		all[c] = byte(c)
+	some := []byte("\n\"0 ")
+	for bit := range 8 {
+		some = append(some, c^1<<bit)
 	}
-	return all
+	return some
 }
 
 // Lines swapped, deleted, doubled, put in, or spliced from another log of the same signer are found.

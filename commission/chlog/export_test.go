@@ -5,6 +5,9 @@ import "io"
 // HashOf is the SHA-256 that chains lines.
 var HashOf = hashOf
 
+// Encode is a line's exact bytes.
+var Encode = encode
+
 // VerifyReader verifies a log that is nowhere on a disk, with its first detached signature.
 func (v Verifier) VerifyReader(log io.Reader, signature []byte) Report {
 	c := newCheck(v, "wagtail.chlog")

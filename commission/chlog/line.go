@@ -177,11 +177,12 @@ func (s *scanner) time(l *rawLine) *formError {
 		return s.fail("no time in the form %s", timeForm)
 	}
 	text := string(s.b[start : start+end])
-	at, err := time.Parse(timeForm, text)
-	if err != nil && strings.HasSuffix(text, "Z") {
-		at, err = time.Parse("2006-01-02T15:04:05.000Z", text)
+	form := timeForm
+	if strings.HasSuffix(text, "Z") {
+		form = "2006-01-02T15:04:05.000Z"
 	}
-	if err != nil || strings.Contains(text, ",") || at.Year() < 1 {
+	at, err := time.Parse(form, text)
+	if err != nil || at.Format(form) != text { // Parse is generous: a comma, an offset of -00:00
 		return s.fail("%q is no time in the form %s", text, timeForm)
 	}
 	l.at, l.time = s.b[start:start+end], at

@@ -55,7 +55,7 @@ type Reader struct {
 
 // NewReader reads the log that r gives.
 func NewReader(r io.Reader) *Reader {
-	return &Reader{in: bufio.NewReaderSize(r, 128<<10), head: NoPrev}
+	return &Reader{in: bufio.NewReaderSize(r, 32<<10), head: NoPrev}
 }
 
 // Next gives the next line, io.EOF after the last, or what is wrong: a [*DamageError], [*NotALogError] or [*VersionError].

@@ -108,6 +108,9 @@ func checkObject(d *json.Decoder, t reflect.Type) error {
 }
 
 func checkValue(d *json.Decoder, t reflect.Type) error {
+	if t == raw { // kept as it stands; the line's own reader has looked at its keys
+		return d.Decode(&json.RawMessage{})
+	}
 	token, err := d.Token()
 	if err != nil {
 		return err
@@ -150,10 +153,13 @@ func fieldsOf(t reflect.Type) map[string]field {
 	return fields
 }
 
-var unmarshaler = reflect.TypeFor[json.Unmarshaler]()
+var (
+	unmarshaler = reflect.TypeFor[json.Unmarshaler]()
+	raw         = reflect.TypeFor[json.RawMessage]()
+)
 
 func elementOf(t reflect.Type) reflect.Type {
-	if t != nil && t.Kind() == reflect.Slice && t != reflect.TypeFor[json.RawMessage]() {
+	if t != nil && t.Kind() == reflect.Slice && t != raw {
 		return t.Elem()
 	}
 	return nil
@@ -162,5 +168,7 @@ func elementOf(t reflect.Type) reflect.Type {
 // fold makes keys that package json would take for one another equal: it folds case and, as that package does, the two
 // letters outside ASCII that fold into it.
 func fold(key string) string {
-	return strings.NewReplacer("\u017f", "s", "\u212a", "k").Replace(strings.ToLower(key))
+	return foldBeyondASCII.Replace(strings.ToLower(key))
 }
+
+var foldBeyondASCII = strings.NewReplacer("\u017f", "s", "\u212a", "k")

@@ -1,0 +1,5 @@
+//go:build !peer
+
+package chlog_test
+
+const everyValue = false
