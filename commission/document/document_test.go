@@ -129,7 +129,9 @@ func TestProblems(t *testing.T) {
 		{"text with space", head + "name = \" x\"\n", "2:8: \" x\" | without space | name ="},
 		{"choice", head + "mode = \"voltgae\"\n", "2:8: \"voltgae\" | one of off, voltage, current | mode = \"voltage\""},
 		{"bool", head + "active = \"yes\"\n", "2:10: \"yes\" | true or false | active = true"},
-		{"whole", head + "phases = 3.0\n", "2:10: 3.0 | a whole number from 1 to 12 | phases = 1"},
+		{"whole", head + "phases = 3.0\n", "2:10: 3.0 | a whole number from 1 to 12 | phases = 3"},
+		{"whole in quotes", head + "phases = \"5\"\n", "2:10: \"5\" | a whole number from 1 to 12 | phases = 5"},
+		{"date by points", head + "due = 01.03.2026\n", "2:7: \"01.03.2026\" | a date as year-month-day | due = 2026-03-01"},
 		{"whole too large", head + "phases = 13\n", "2:10: 13 | from 1 to 12 | phases = 1"},
 		{"whole with underscore", head + "phases = 1_0\n", "2:10: 1_0 | a whole number | phases = 1"},
 		{"whole beyond 64 bits", head + "phases = 99999999999999999999\n", "2:10: 99999999999999999999 | a whole number | phases = 1"},
@@ -172,13 +174,13 @@ func TestProblems(t *testing.T) {
 		{"unquoted text", head + "name = aft\n", "2:8: \"aft\" | in quotes | name = \"aft\""},
 		{"no value", head + "name =\nmode = \"off\"\n", "2:7: the end of the line | in quotes | resistance"},
 		{"no equals", head + "name \"x\"\n", "2:6: \"\\\"x\\\"\" | an equals sign | name = \"text\""},
-		{"open quote", head + "name = \"x\nmode = \"off\"\n", "2:10: the end of the line | a closing quote on the same line | name"},
+		{"open quote", head + "name = \"x\nmode = \"off\"\n", "2:10: the end of the line | a closing quote on the same line | name = \"x\""},
 		{"open list", head + "range = [0, 1\nname = 3\n", "3:1: \"name = 3\" | in the list | range\n3:8: 3 | text in quotes | name"},
 		{"open brace", head + "fuse = { voltage = \"1 V\"\nname = 3\n", "3:1: \"name = 3\" | inline table | {\n3:8: 3 | text in quotes | name"},
 		{"bad header hides its keys only", head + "[fuse\nunheard = 1\n[[bank]]\nnam = 1\n", "2:6: the end of the line | a closing bracket | [bus]\n5:1: the key nam in [bank] | perhaps name | name"},
 		{"many at once", head + "name = 1\nphases = x\nactive = 2\n", "2:8: 1 | text | name\n3:10: \"x\" | in quotes | phases = \"x\"\n4:10: 2 | true or false | active"},
 		{"lone carriage return", head + "name = \"x\"\rmode = \"off\"\n", "2:11: \"\\rmode = \\\"off\\\"\" | line ends of LF or CR LF | "},
-		{"leading zero", head + "phases = 03\n", "2:10: \"03\" | leading zeroes | "},
+		{"leading zero", head + "phases = 03\n", "2:10: \"03\" | without leading zeroes | "},
 	}
 	for _, tt := range tests {
 		t.Run(tt.name, func(t *testing.T) {

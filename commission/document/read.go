@@ -121,10 +121,22 @@ func (t *Table) Whole(key string, into *int, least, most int) {
 	}
 	v, err := strconv.ParseInt(t.number(e, integer), 0, 64)
 	if err != nil || v < int64(least) || v > int64(most) {
-		t.wrongKind(e, fmt.Sprintf("a whole number from %d to %d, without quotes", least, most), strconv.Itoa(least))
+		t.wrongKind(e, fmt.Sprintf("a whole number from %d to %d, without quotes", least, most), t.wholeExample(e, least, most))
 		return
 	}
 	*into = int(v)
+}
+
+// wholeExample is the number that was probably meant, "3" or 3.0, or the least.
+func (t *Table) wholeExample(e *entry, least, most int) string {
+	meant := e.value.text
+	if e.value.kind == float {
+		meant = strings.TrimSuffix(string(t.file.text[e.value.at:e.value.end]), ".0")
+	}
+	if n, err := strconv.Atoi(meant); err == nil && n >= least && n <= most {
+		return strconv.Itoa(n)
+	}
+	return strconv.Itoa(least)
 }
 
 // Number reads a finite number without unit.

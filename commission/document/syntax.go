@@ -24,6 +24,7 @@ var syntax = []struct{ word, wanted, example string }{
 	{"expected key", "a key of letters, digits, - and _", `name = "text"`},
 	{"unterminated", "a closing quote", `name = "text"`},
 	{"not terminated", "a closing quote", `name = "text"`},
+	{"leading zeroes", "a number without leading zeroes, or a date as year-month-day", "due = 2026-03-01"},
 	{"cannot have new lines", "a closing quote on the same line", `name = "text"`},
 	{"escape", `an escape of TOML 1.0, such as \"`, `name = "a \"quoted\" word"`},
 	{"array", "a comma or a closing bracket in the list", "range = [0, 1300]"},
@@ -34,6 +35,9 @@ var syntax = []struct{ word, wanted, example string }{
 
 // unquotedValue is a line whose value lacks its quotes.
 var unquotedValue = regexp.MustCompile(`^[ \t]*([A-Za-z0-9_.-]+)[ \t]*=[ \t]*([^"'\[{#\r\n]*[^"'\[{#\s])[ \t]*(?:#.*)?\r?$`)
+
+// openQuote is a line that lacks only its last quote.
+var openQuote = regexp.MustCompile(`^[A-Za-z0-9_.-]+[ \t]*=[ \t]*"[^"#\\]{1,60}$`)
 
 // explainSyntax turns the parser's error into a problem; at is the place, started the start of the expression's first line.
 func (f *File) explainSyntax(at, started int, err *unstable.ParserError) {
@@ -50,6 +54,9 @@ func (f *File) explainSyntax(at, started int, err *unstable.ParserError) {
 	}
 	if m := unquotedValue.FindSubmatch(f.lineAt(started)); m != nil && strings.Contains(wanted, "in quotes") {
 		example = string(m[1]) + " = " + strconv.Quote(string(m[2]))
+	}
+	if line := strings.TrimSpace(string(f.lineAt(started))); strings.HasPrefix(wanted, "a closing quote") && openQuote.MatchString(line) {
+		example = line + `"`
 	}
 	f.problem(at, f.snippet(at), wanted, example)
 }

@@ -87,6 +87,7 @@ var refusals = []struct {
 	{"–3 V", voltage, Rule{}, 0, "a number and its unit", "750 V"},
 	{"33", resistance, Rule{}, 2, "a unit: µΩ mΩ Ω kΩ MΩ GΩ", "33 Ω"},
 	{"33", resistance, Rule{Example: "62 mΩ ±15 %"}, 2, "a unit", "33 Ω"},
+	{"0.975", ratio, Rule{Example: "97.5 %"}, 5, "a unit: %", "97.5 %"},
 	{"33 ±5 %", resistance, Rule{Tolerance: true}, 3, "a unit", "33 Ω"},
 	{"33  Ω", resistance, Rule{}, 3, "one space", "33 Ω"},
 	{"33\tΩ", resistance, Rule{}, 2, "a unit", "33 Ω"},

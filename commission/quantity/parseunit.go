@@ -19,8 +19,12 @@ func (s *scanner) unit(number string) (unit, *Refusal) {
 	return unit{}, s.refuseUnit(number, word)
 }
 
-// withUnit is the number in the dimension's usual unit, where that is not ambiguous, else the rule's own example.
+// withUnit is the number in the dimension's usual unit. A ratio without unit may be meant as a fraction, so its number is not
+// repeated with "%".
 func (s *scanner) withUnit(number string) string {
+	if s.d == ratio {
+		return s.example()
+	}
 	if s.d == errorBound || s.d == droopUnits {
 		return number + " %"
 	}
