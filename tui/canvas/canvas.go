@@ -1,7 +1,7 @@
 package canvas
 
 import (
-	"strings"
+	"unicode/utf8"
 
 	"github.com/charmbracelet/x/ansi"
 
@@ -19,14 +19,16 @@ type Canvas struct {
 	theme         theme.Theme
 	width, height int
 	cells         []cell
+	clusters      []string // characters made of several code points
 }
 
-// cell is one column of one row. Text "" is a blank; a wide character fills its own cell and marks the next as covered.
+// cell is one column of one row, without pointers so that a sheet costs the collector nothing. A wide character fills its
+// own cell and marks the next as covered.
 type cell struct {
-	text    string
+	char    rune // 0: nothing; below 0: clusters[-1-char]
 	role    theme.Role
 	covered bool
-	wires   Side // conductors that leave this cell, where text is ""
+	wires   Side // conductors that leave this cell, where char is 0
 	heavy   bool
 }
 
@@ -53,11 +55,20 @@ func (c *Canvas) set(x, y, width int, text string, role theme.Role) {
 		return
 	}
 	c.uncover(x, y)
-	c.cells[y*c.width+x] = cell{text: text, role: role}
+	c.cells[y*c.width+x] = cell{char: c.char(text), role: role}
 	if width == 2 {
 		c.uncover(x+1, y)
 		c.cells[y*c.width+x+1] = cell{covered: true, role: role}
 	}
+}
+
+// char is how a cell names a character.
+func (c *Canvas) char(text string) rune {
+	if r, size := utf8.DecodeRuneInString(text); size == len(text) {
+		return r
+	}
+	c.clusters = append(c.clusters, text)
+	return -rune(len(c.clusters))
 }
 
 func (c *Canvas) uncover(x, y int) {
@@ -70,26 +81,34 @@ func (c *Canvas) uncover(x, y int) {
 	}
 }
 
-// Text writes clean text from column x on and gives the first column behind it. What does not fit is dropped.
+// Text writes clean text from column x on and gives the first column behind it. What does not fit is dropped. It counts
+// columns as [theme.Width] does: an ASCII letter by itself, anything else by the character with its marks.
 func (c *Canvas) Text(x, y int, text string, role theme.Role) int {
+	last := -1 // column of the character before
 	for len(text) > 0 {
-		if b := text[0]; b >= ' ' && b <= '~' && (len(text) == 1 || text[1] < 0x80) {
-			c.set(x, y, 1, text[:1], role)
-			x, text = x+1, text[1:]
-			continue
+		cluster, width := text[:1], 1
+		if text[0] < ' ' || text[0] > '~' {
+			cluster, width = ansi.FirstGraphemeCluster(text, ansi.GraphemeWidth)
 		}
-		cluster, width := ansi.FirstGraphemeCluster(text, ansi.GraphemeWidth)
 		text = text[len(cluster):]
-		if width < 1 || cluster[0] < ' ' || cluster[0] == 0x7F {
-			continue
+		switch {
+		case cluster[0] < ' ' || cluster[0] == 0x7F:
+		case width < 1:
+			c.addMark(last, y, cluster)
+		default:
+			c.set(x, y, width, cluster, role)
+			last = x
+			x += width
 		}
-		if width > 2 {
-			cluster, width = "?", 1
-		}
-		c.set(x, y, width, cluster, role)
-		x += width
 	}
 	return x
+}
+
+// addMark joins a combining mark to the character in a cell.
+func (c *Canvas) addMark(x, y int, mark string) {
+	if k := c.at(x, y); k != nil && k.char != 0 {
+		k.char = c.char(string(c.append(nil, k)) + mark)
+	}
 }
 
 // Within writes clean text into at most width columns and marks a cut; it gives the first column behind the text.
@@ -117,7 +136,7 @@ func (c *Canvas) Put(x, y int, unicode, ascii string, role theme.Role) {
 // IsBlank tells whether nothing is drawn in the columns from x on.
 func (c *Canvas) IsBlank(x, y, width int) bool {
 	for i := range width {
-		if k := c.at(x+i, y); k == nil || k.text != "" || k.wires != 0 || k.covered {
+		if k := c.at(x+i, y); k == nil || k.char != 0 || k.wires != 0 || k.covered {
 			return false
 		}
 	}
@@ -126,44 +145,48 @@ func (c *Canvas) IsBlank(x, y, width int) bool {
 
 // String is the sheet: Height lines of exactly Width columns, without a line break at the end.
 func (c *Canvas) String() string {
-	var b strings.Builder
-	b.Grow(len(c.cells)*3 + c.height*16)
+	b := make([]byte, 0, len(c.cells)*3+c.height*64)
 	for y := range c.height {
 		if y > 0 {
-			b.WriteByte('\n')
+			b = append(b, '\n')
 		}
-		c.writeRow(&b, c.cells[y*c.width:(y+1)*c.width])
+		b = c.appendRow(b, c.cells[y*c.width:(y+1)*c.width])
 	}
-	return b.String()
+	return string(b)
 }
 
-// writeRow writes runs of one role between one pair of escape sequences. Blanks belong to whatever stands before them,
-// unless the role has a ground of its own.
-func (c *Canvas) writeRow(b *strings.Builder, row []cell) {
+// appendRow writes runs of one role between one pair of escape sequences.
+func (c *Canvas) appendRow(b []byte, row []cell) []byte {
 	role, after := theme.Text, ""
 	for i := range row {
 		k := &row[i]
 		if k.covered {
 			continue
 		}
-		text := k.text
-		if text == "" {
-			text = c.glyph(k)
-		}
 		next := k.role
-		if text == " " && k.text == "" {
+		if k.char == 0 && k.wires == 0 {
 			next = theme.Text
 		}
 		if next != role {
-			b.WriteString(after)
+			b = append(b, after...)
 			var before string
 			before, after = c.theme.Codes(next)
-			b.WriteString(before)
+			b = append(b, before...)
 			role = next
 		}
-		b.WriteString(text)
+		b = c.append(b, k)
 	}
-	b.WriteString(after)
+	return append(b, after...)
+}
+
+func (c *Canvas) append(b []byte, k *cell) []byte {
+	switch {
+	case k.char > 0:
+		return utf8.AppendRune(b, k.char)
+	case k.char < 0:
+		return append(b, c.clusters[-1-k.char]...)
+	}
+	return append(b, c.glyph(k)...)
 }
 
 // Theme is the theme that the sheet was made with.

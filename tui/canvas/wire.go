@@ -50,7 +50,7 @@ func (c *Canvas) join(x, y int, s Side, role theme.Role, heavy bool) {
 	if k == nil {
 		return
 	}
-	if k.text != "" || k.covered {
+	if k.char != 0 || k.covered {
 		c.uncover(x, y)
 		*k = cell{}
 	}

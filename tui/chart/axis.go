@@ -21,21 +21,22 @@ var mantissas = []struct {
 }{{1, 0}, {2, 0}, {2.5, 1}, {5, 0}}
 
 // NewAxis chooses ticks so that low and high both lie on the axis, as little of it as possible lies beyond them, and two
-// ticks are at least least and at most most cells apart. Low need not be below high. Values that are not finite, or too far
-// apart for any use, give an axis from 0 to 1.
+// ticks are at least least and at most most cells apart, though never so far that there would be only one. Low need not
+// be below high. Values that are not finite, or too far apart for any use, give an axis from 0 to 1.
 func NewAxis(low, high float64, cells, least, most int) Axis {
 	low, high = usable(low, high)
 	cells = max(cells, 1)
-	least = max(least, 1)
+	least = min(max(least, 1), max(cells/2, 1))
+	most = min(max(most, least), max(cells/2, 1))
 	best, bestPitch := Axis{}, math.Inf(1)
 	span := high - low
 	coarsest := int(math.Ceil(math.Log10(span))) + 1
 	for exponent := coarsest; exponent >= coarsest-5; exponent-- {
 		for _, m := range mantissas {
 			step := decimal(m.size, exponent)
-			for perTick := least; perTick <= max(most, least); perTick++ {
+			for perTick := least; perTick <= most; perTick++ {
 				pitch := step / float64(perTick)
-				if pitch >= bestPitch || pitch*float64(cells-1) < span*(1-1e-12) && cells > 1 {
+				if pitch > bestPitch*(1+1e-9) || pitch > bestPitch*(1-1e-9) && perTick >= best.PerTick {
 					continue
 				}
 				first := math.Floor(low/pitch + 1e-9)
@@ -47,7 +48,7 @@ func NewAxis(low, high float64, cells, least, most int) Axis {
 			}
 		}
 	}
-	if best.Cells == 0 { // so few cells that no two ticks find room
+	if best.Cells == 0 { // a single cell takes in no range
 		step := decimal(1, coarsest+1)
 		best = Axis{Cells: cells, Step: step, PerTick: least, places: max(0, -coarsest-1)}
 		best.first = int64(math.Floor(low / step * float64(least)))
@@ -64,15 +65,12 @@ func usable(low, high float64) (float64, float64) {
 	if math.IsNaN(low) || math.IsNaN(high) || low < -greatest || high > greatest {
 		return 0, 1
 	}
-	if least := max(math.Abs(low), math.Abs(high)) * 1e-6; high-low <= least {
-		half := max(math.Abs(low)*0.05, 0.5)
-		if low == 0 && high == 0 {
-			return 0, 1
-		}
-		return low - half, high + half
-	}
-	if high-low < 1e-12 {
+	switch least := max(max(math.Abs(low), math.Abs(high))*1e-6, 1e-12); {
+	case low == 0 && high == 0:
 		return 0, 1
+	case high-low <= least:
+		half := max(math.Abs(low)*0.05, 0.5)
+		return low - half, high + half
 	}
 	return low, high
 }

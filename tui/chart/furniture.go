@@ -135,7 +135,7 @@ func (f *frame) markerLines() {
 		case m.Upright && inside(f.x, m.At, p.perX):
 			x, _ := f.place(m.At, 0)
 			for row := range p.rows {
-				p.mark(x/p.perX, row, f.theme.Pick("┊", "|"), m.role())
+				p.mark(x/p.perX, row, upright, m.role())
 			}
 		case !m.Upright && inside(f.y, m.At, p.perY):
 			_, y := f.place(0, m.At)
@@ -248,7 +248,7 @@ func (f *frame) cursor() {
 	}
 	x, _ := f.place(*c, 0)
 	for row := range f.plot.rows {
-		f.plot.mark(x/f.plot.perX, row, f.theme.Pick("│", "|"), theme.Cursor)
+		f.plot.mark(x/f.plot.perX, row, cursorLine, theme.Cursor)
 	}
 }
 
@@ -264,26 +264,26 @@ func (f *frame) readOff() {
 	if name == "" {
 		name = "at"
 	}
-	parts = append(parts, entry{name, f.value(at, f.x, f.xExp, f.xUnit), theme.Cursor})
+	parts = append(parts, entry{name, f.value(at, f.x, 1, f.xExp, f.xUnit), theme.Cursor})
 	for _, list := range [][]Series{f.chart.Traces, f.chart.Points} {
 		for _, s := range list {
 			text := "no value"
 			if _, y, ok := s.nearest(at, f.x.Pitch()); ok {
-				text = f.value(y, f.y, f.yExp, f.yUnit)
+				text = f.value(y, f.y, 2, f.yExp, f.yUnit)
 			}
 			parts = append(parts, entry{theme.Clean(s.Name), text, theme.Trace})
 		}
 	}
 	for _, b := range f.chart.Bands {
 		if low, high, ok := b.at(at); ok {
-			text := f.number(low, f.y, f.yExp) + f.theme.Pick(" … ", " .. ") + f.value(high, f.y, f.yExp, f.yUnit)
+			text := f.number(low, f.y, 2, f.yExp) + f.theme.Pick(" … ", " .. ") + f.value(high, f.y, 2, f.yExp, f.yUnit)
 			parts = append(parts, entry{theme.Clean(b.Name), text, theme.Text})
 		}
 	}
 	for _, list := range [][]Series{f.chart.Nominal, f.chart.Fitted} {
 		for _, s := range list {
 			if y, ok := s.at(at); ok {
-				parts = append(parts, entry{theme.Clean(s.Name), f.value(y, f.y, f.yExp, f.yUnit), theme.Text})
+				parts = append(parts, entry{theme.Clean(s.Name), f.value(y, f.y, 2, f.yExp, f.yUnit), theme.Text})
 			}
 		}
 	}
@@ -298,15 +298,16 @@ func (f *frame) readOff() {
 	}
 }
 
-// number writes a value in the axis's own prefix, to a tenth of what a row stands for.
-func (f *frame) number(v float64, a Axis, exponent int) string {
-	places := int(max(0, math.Ceil(1-math.Log10(a.Pitch())))) + exponent
+// number writes a value in the axis's own prefix, so many digits finer than what a cell stands for: the cursor's own place
+// needs one, and what is read off there was measured more finely than it can be drawn.
+func (f *frame) number(v float64, a Axis, finer, exponent int) string {
+	places := int(math.Ceil(float64(finer)-math.Log10(a.Pitch()))) + exponent
 	return f.theme.Minus(fmt.Sprintf("%.*f", max(places, 0), v/math.Pow10(exponent)))
 }
 
-func (f *frame) value(v float64, a Axis, exponent int, unit string) string {
+func (f *frame) value(v float64, a Axis, finer, exponent int, unit string) string {
 	if unit == "" {
-		return f.number(v, a, exponent)
+		return f.number(v, a, finer, exponent)
 	}
-	return f.number(v, a, exponent) + " " + unit
+	return f.number(v, a, finer, exponent) + " " + unit
 }

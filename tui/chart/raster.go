@@ -12,10 +12,27 @@ import (
 type raster struct {
 	columns, rows int
 	perX, perY    int // dots to a cell
-	bits          []uint16
+	bits          []uint8
 	roles         []theme.Role
-	marks         []string // a character that stands for itself, instead of dots
+	marks         []mark // a character that stands for itself, instead of dots
 }
+
+// mark is a character among the dots.
+type mark uint8
+
+const (
+	noMark mark = iota
+	above
+	below
+	leftOf
+	rightOf
+	point
+	upright
+	cursorLine
+)
+
+var markSigns = [...][2]string{noMark: {" ", " "}, above: {"▲", "^"}, below: {"▼", "v"}, leftOf: {"◀", "<"}, rightOf: {"▶", ">"},
+	point: {"●", "o"}, upright: {"┊", "|"}, cursorLine: {"│", "|"}}
 
 func newRaster(columns, rows int, form Form) *raster {
 	r := &raster{columns: columns, rows: rows, perX: 1, perY: 1}
@@ -25,9 +42,9 @@ func newRaster(columns, rows int, form Form) *raster {
 	case Block:
 		r.perY = 2
 	}
-	r.bits = make([]uint16, columns*rows)
+	r.bits = make([]uint8, columns*rows)
 	r.roles = make([]theme.Role, columns*rows)
-	r.marks = make([]string, columns*rows)
+	r.marks = make([]mark, columns*rows)
 	return r
 }
 
@@ -49,19 +66,19 @@ func (r *raster) plot(x, y int, role theme.Role) {
 		return
 	}
 	i := (r.rows-1-row)*r.columns + column
-	if r.roles[i] != role || r.marks[i] != "" {
-		r.bits[i], r.marks[i], r.roles[i] = 0, "", role
+	if r.roles[i] != role || r.marks[i] != noMark {
+		r.bits[i], r.marks[i], r.roles[i] = 0, noMark, role
 	}
 	r.bits[i] |= 1 << ((y%r.perY)*r.perX + x%r.perX)
 }
 
 // mark puts a character into the cell of a place.
-func (r *raster) mark(column, row int, text string, role theme.Role) {
+func (r *raster) mark(column, row int, sign mark, role theme.Role) {
 	if column < 0 || row < 0 || column >= r.columns || row >= r.rows {
 		return
 	}
 	i := (r.rows-1-row)*r.columns + column
-	r.bits[i], r.marks[i], r.roles[i] = 0, text, role
+	r.bits[i], r.marks[i], r.roles[i] = 0, sign, role
 }
 
 // line joins two dots; only every dash-th dot is set.
@@ -104,8 +121,8 @@ func (r *raster) onto(c *canvas.Canvas, x, y int, ascii func(theme.Role) string)
 	for i, bits := range r.bits {
 		at, to := x+i%r.columns, y+i/r.columns
 		switch {
-		case r.marks[i] != "":
-			c.Text(at, to, r.marks[i], r.roles[i])
+		case r.marks[i] != noMark:
+			c.Put(at, to, markSigns[r.marks[i]][0], markSigns[r.marks[i]][1], r.roles[i])
 		case bits == 0:
 		case r.perY == 4:
 			var glyph uint8
@@ -114,9 +131,9 @@ func (r *raster) onto(c *canvas.Canvas, x, y int, ascii func(theme.Role) string)
 					glyph |= b
 				}
 			}
-			c.Text(at, to, braille[glyph], r.roles[i])
+			c.Put(at, to, braille[glyph], braille[glyph], r.roles[i])
 		case r.perY == 2 && r.roles[i] != theme.Band:
-			c.Text(at, to, halves[bits&3], r.roles[i])
+			c.Put(at, to, halves[bits&3], halves[bits&3], r.roles[i])
 		case r.perY == 2:
 			c.Text(at, to, "░", theme.Band)
 		default:

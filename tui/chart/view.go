@@ -83,19 +83,19 @@ func (c Chart) frame(t theme.Theme, width, height int) *frame {
 	f.top = 1
 	rows := height - f.top - 2 - f.readOffs
 	ex, ey := c.extent()
-	f.y = axisFor(c.Y, ey, rows, 2, 6)
+	f.y = axisFor(c.Y, ey, rows, max(2, rows/9), max(6, rows/3))
 	var letter string
 	f.yExp, letter = f.y.prefix(c.Y.Unit)
-	f.yUnit = t.Unit(letter + c.Y.Unit)
+	f.yUnit = t.Plain(letter + c.Y.Unit)
 	labels := 0
 	for _, tick := range f.y.Ticks(f.yExp) {
 		labels = max(labels, len(tick.Label))
 	}
 	f.left = min(labels+1, width/2)
 	columns := width - f.left - 1
-	f.x = axisFor(c.X, ex, columns, 8, 20)
+	f.x = axisFor(c.X, ex, columns, max(8, columns/10), max(20, columns/4))
 	f.xExp, letter = f.x.prefix(c.X.Unit)
-	f.xUnit = t.Unit(letter + c.X.Unit)
+	f.xUnit = t.Plain(letter + c.X.Unit)
 	f.plot = newRaster(columns, rows, f.chart.Form)
 	f.gapAt = make([]bool, columns)
 	return f
@@ -106,7 +106,7 @@ func axisFor(s Scale, seen extentOf, cells, least, most int) Axis {
 	if low == high {
 		low, high = seen.low, seen.high
 	}
-	return NewAxis(low, high, cells, min(least, max(cells-1, 1)), min(most, max(cells-1, 1)))
+	return NewAxis(low, high, cells, least, most)
 }
 
 func asciiMark(role theme.Role) string {
@@ -239,13 +239,13 @@ func (f *frame) edge(x, y float64, role theme.Role) {
 	case okX && okY:
 		return
 	case okX && f.y.Cell(y) > 0:
-		f.plot.mark(column, f.plot.rows-1, f.theme.Pick("▲", "^"), theme.Trace)
+		f.plot.mark(column, f.plot.rows-1, above, theme.Trace)
 	case okX:
-		f.plot.mark(column, 0, f.theme.Pick("▼", "v"), theme.Trace)
+		f.plot.mark(column, 0, below, theme.Trace)
 	case f.x.Cell(x) > 0:
-		f.plot.mark(f.plot.columns-1, row, f.theme.Pick("▶", ">"), theme.Trace)
+		f.plot.mark(f.plot.columns-1, row, rightOf, theme.Trace)
 	default:
-		f.plot.mark(0, row, f.theme.Pick("◀", "<"), theme.Trace)
+		f.plot.mark(0, row, leftOf, theme.Trace)
 	}
 	f.clipped++
 }
@@ -255,13 +255,14 @@ func (f *frame) gaps(s Series) {
 	last := math.NaN()
 	open := false
 	for i := range s.len() {
-		if math.IsNaN(s.Y[i]) {
+		if math.IsNaN(s.Y[i]) || math.IsNaN(s.X[i]) {
 			open = true
 			continue
 		}
 		if x := s.X[i]; !math.IsNaN(last) && (open || s.MaxStep > 0 && x-last > s.MaxStep) {
-			from, to := f.x.Cell(last), f.x.Cell(x)
-			for column := int(max(math.Floor(from)+1, 0)); float64(column) < min(to, float64(len(f.gapAt))); column++ {
+			columns := float64(len(f.gapAt))
+			from, to := min(max(math.Floor(f.x.Cell(last))+1, 0), columns), min(f.x.Cell(x), columns)
+			for column := int(from); float64(column) < to; column++ {
 				f.gapAt[column] = true
 			}
 		}
@@ -282,7 +283,7 @@ func (f *frame) points() {
 				continue
 			}
 			px, py := f.place(x, y)
-			f.plot.mark(px/f.plot.perX, py/f.plot.perY, f.theme.Pick("●", "o"), theme.Trace)
+			f.plot.mark(px/f.plot.perX, py/f.plot.perY, point, theme.Trace)
 		}
 	}
 }

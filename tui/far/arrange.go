@@ -84,12 +84,10 @@ func (b block) largest(t theme.Theme, columns, rows int) scale {
 func drawAll(c *canvas.Canvas, blocks []block, top, bottom int) {
 	for large := len(blocks); large > 0; large-- {
 		plain := len(blocks) - large
-		for _, tight := range []bool{false, true} {
+		for tightness := range 3 {
 			some := slices.Clone(blocks[:large])
-			if tight {
-				for i := range some {
-					some[i] = some[i].tightened()
-				}
+			for i := range some {
+				some[i] = some[i].tightened(tightness)
 			}
 			p := arrange(some, c.Theme(), c.Width(), bottom-plain-top)
 			if p.x == 0 || p.y == 0 {
@@ -107,8 +105,15 @@ func drawAll(c *canvas.Canvas, blocks []block, top, bottom int) {
 	}
 }
 
-// tightened says all that the block says in words in one row.
-func (b block) tightened() block {
+// tightened is the block with less around its digits: at 1 all its words stand in one row, at 2 the unit too is among them.
+func (b block) tightened(tightness int) block {
+	if tightness < 1 {
+		return b
+	}
+	if tightness > 1 && b.unit != "" {
+		b.label += " in " + b.unit
+		b.unit = ""
+	}
 	for _, more := range []string{b.note, b.limit} {
 		if more != "" {
 			b.label += ", " + more
@@ -152,7 +157,7 @@ func (b block) drawPlain(c *canvas.Canvas, y int) {
 	}
 	b.note = ""
 	end := c.Text(0, y, text, b.role) + 1
-	c.Within(end, y, c.Width()-end, b.tightened().label, theme.Text)
+	c.Within(end, y, c.Width()-end, b.tightened(1).label, theme.Text)
 }
 
 // rows is how many rows a glyph takes.

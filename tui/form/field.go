@@ -103,9 +103,11 @@ const (
 	leastInput = 12
 	mostInput  = 28
 	mostLabel  = 30
+
+	mostMessage = 3 // lines of what the check says
 )
 
-// lines draws the field in exactly width columns: on one line, or with the message on a second where it finds no room
+// lines draws the field in exactly width columns: on one line, or with the message on further ones where it finds no room
 // beside the field.
 func (f Field) lines(t theme.Theme, focused bool, label, width int) []string {
 	mark, role := "  ", theme.Text
@@ -119,7 +121,7 @@ func (f Field) lines(t theme.Theme, focused bool, label, width int) []string {
 	}
 	line := t.Paint(role, mark+t.Fit(theme.Clean(f.Label), label)) + " " + f.input(t, focused, input)
 	used := 2 + label + 1 + input
-	if unit := t.Unit(theme.Clean(f.Unit)); unit != "" {
+	if unit := t.Plain(theme.Clean(f.Unit)); unit != "" {
 		line += " " + t.Paint(theme.Faint, unit)
 		used += 1 + theme.Width(unit)
 	}
@@ -130,8 +132,15 @@ func (f Field) lines(t theme.Theme, focused bool, label, width int) []string {
 	case used+2+theme.Width(message) <= width:
 		return []string{t.Fit(line+"  "+t.Paint(look, message), width)}
 	}
-	below := strings.Repeat(" ", min(label+3, width))
-	return []string{t.Fit(line, width), t.Fit(below+t.Paint(look, t.Clip(message, width-label-3)), width)}
+	indent := label + 3
+	if indent+theme.Width(message) > width {
+		indent = 4
+	}
+	lines := []string{t.Fit(line, width)}
+	for _, part := range wrap(message, max(width-indent, 1)) {
+		lines = append(lines, t.Fit(strings.Repeat(" ", indent)+t.Paint(look, part), width))
+	}
+	return lines[:min(len(lines), 1+mostMessage)]
 }
 
 // message is what the check says, with a sign before it. As long as nobody has typed, what is missing is said quietly.

@@ -174,7 +174,7 @@ func (f Form) View(t theme.Theme, width, height int) string {
 		}
 	}
 	if len(lines) > height {
-		top := min(max(0, (from+to-height)/2), len(lines)-height)
+		top := min(max(0, (from+to-height)/2), len(lines)-height, from)
 		lines = lines[top : top+height]
 	}
 	return strings.Join(lines, "\n")

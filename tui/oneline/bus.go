@@ -18,7 +18,7 @@ func (d *drawing) bus(x, top, bottom, width int) {
 		d.reading(x+2, y, width, d.show(signal.BusCurrent))
 		y++
 	}
-	list, more := d.plan.within(bottom + 1 - y)
+	list, more := d.plan.within(bottom+1-y, d.chopperWorks())
 	for _, h := range list {
 		d.hanger(x, y, width, h)
 		y++
@@ -28,6 +28,12 @@ func (d *drawing) bus(x, top, bottom, width int) {
 	}
 }
 
+// chopperWorks tells whether the chopper burns power at this moment, which must be seen wherever there is one row left.
+func (d *drawing) chopperWorks() bool {
+	s := d.show(signal.ChopperActive)
+	return s.HasValue() && s.Value != 0
+}
+
 func (d *drawing) hanger(x, y, width int, h hanger) {
 	role := theme.Symbol
 	name := h.name
@@ -35,7 +41,7 @@ func (d *drawing) hanger(x, y, width int, h hanger) {
 		switch s := d.show(signal.ChopperActive); {
 		case !s.HasValue():
 			name, role = "chopper unknown", theme.Unknown
-		case s.Value != 0:
+		case d.chopperWorks():
 			name, role = "chopper ON", theme.Abnormal
 		default:
 			name = "chopper off"

@@ -62,7 +62,7 @@ func (d *drawing) fuse(x, y int) {
 
 func (d *drawing) fuseLabel() string {
 	if !d.plan.hasFuse {
-		return "no fuse stated"
+		return "fuse ?"
 	}
 	return "fuse " + d.theme.Plain(d.plan.fuse)
 }

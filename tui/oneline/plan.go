@@ -2,6 +2,7 @@ package oneline
 
 import (
 	"fmt"
+	"slices"
 	"strings"
 
 	"chargehand/commission/quantity"
@@ -124,9 +125,13 @@ func hangersOf(s site.Site) []hanger {
 }
 
 // within is what hangs on the bus in at most so many rows: where there are more, those of one class share a row, and what
-// still has none is counted in the last.
-func (p Plan) within(rows int) (list []hanger, more int) {
+// still has none is counted in the last. A chopper that works goes first.
+func (p Plan) within(rows int, chopperFirst bool) (list []hanger, more int) {
 	list = p.hangers
+	if chopperFirst {
+		list = slices.Clone(list)
+		slices.SortStableFunc(list, func(a, b hanger) int { return rank(a) - rank(b) })
+	}
 	if len(list) > rows {
 		list = grouped(list)
 	}
@@ -134,6 +139,13 @@ func (p Plan) within(rows int) (list []hanger, more int) {
 		return list, 0
 	}
 	return list[:max(rows-1, 0)], len(list) - max(rows-1, 0)
+}
+
+func rank(h hanger) int {
+	if h.class == choppers {
+		return 0
+	}
+	return 1
 }
 
 func grouped(hangers []hanger) []hanger {
@@ -158,7 +170,7 @@ func rated[Q quantity.Scalar](v quantity.Entered[Q], unit string) string {
 		if v.Nominal == 0 {
 			return ""
 		}
-		return theme.Theme{}.Number(float64(v.Nominal), unit, 0)
+		return quantity.Engineering(float64(v.Nominal), unit, 2)
 	}
 	// A tolerance follows one blank; a minus sign before the number or in an exponent does not.
 	for _, sign := range []string{" ±", " +", " -", " −"} {

@@ -22,7 +22,7 @@ func (d *drawing) roomy() {
 	node := 36 + gap
 	fuse := 23 + gap/2
 
-	d.Wire(4, rail, bridge, rail, theme.Wire)
+	d.Wire(4, rail, split, rail, theme.Wire)
 	d.Wire(4, minus, bar, minus, theme.Wire)
 	d.Text(2, rail, "+", theme.Faint)
 	d.Text(2, minus, d.theme.Pick("−", "-"), theme.Faint)
@@ -52,7 +52,7 @@ func (d *drawing) roomy() {
 			x, y = node-2, 8
 		}
 		d.shunt(x, rail, minus, y, true)
-		d.Text(x+3, 9, d.theme.Plain("filter "+f.capacitance), theme.Faint)
+		d.Text(x+4, 9, d.theme.Plain("filter "+f.capacitance), theme.Faint)
 	}
 	d.bus(bar, 0, minus-1, list)
 	d.Text(bar, minus, d.theme.Pick("╴", "-"), theme.Wire)
@@ -84,7 +84,9 @@ func (d *drawing) roomyBranch(node, star, rail int) {
 
 func (d *drawing) roomyConverter(star, split, bridge, bar, rail, minus int) {
 	d.Within(star+2, rail-2, split-star-3, "star point", theme.Faint)
-	d.reading(star+2, rail-1, split-star-3, d.show(signal.StarPointVoltage))
+	if d.has(signal.StarPointVoltage) {
+		d.reading(star+2, rail-1, split-star-3, d.show(signal.StarPointVoltage))
+	}
 
 	d.phases(split, bridge, rail)
 	d.Box(bridge, rail-3, bridge+11, rail+3, theme.Symbol)
@@ -120,7 +122,7 @@ func (d *drawing) phases(split, bridge, rail int) {
 	}
 	d.Within(split, 0, bridge-split, label, theme.Faint)
 	for i, y := range rows {
-		d.Wire(split, y, bridge-1, y, theme.Wire)
+		d.Wire(split, y, bridge, y, theme.Wire)
 		d.Wire(split, y, split, rail, theme.Wire)
 		d.arcs(split+3, y, 5)
 		d.diode(bridge+5, y)
@@ -128,11 +130,6 @@ func (d *drawing) phases(split, bridge, rail int) {
 		d.Wire(bridge+7, y, bridge+9, y, theme.Wire)
 		if d.has(phaseCurrents[i]) {
 			d.labelled(split+2, y-1, bridge-split-2, fmt.Sprintf("phase %d", i+1), d.show(phaseCurrents[i]))
-		}
-	}
-	if len(rows) == 2 { // nothing runs straight on
-		for x := split + 1; x < bridge; x++ {
-			d.Text(x, rail, " ", theme.Wire)
 		}
 	}
 }

@@ -4,13 +4,15 @@ import (
 	"math"
 	"strconv"
 	"strings"
+
+	"chargehand/commission/quantity"
 )
 
-// Number writes a value in a coherent SI unit with an engineering prefix where one reads better: 1650 W is "1.65 kW",
-// 0.0042 F "4.20 mF", 412.6 V "412.6 V". Digits is how many places follow the point before a prefix is put in.
-// A value that is not finite reads "no value".
-func (t Theme) Number(value float64, unit string, digits int) string {
-	number, prefixed := t.Parts(value, unit, digits)
+// Number writes a live value of a coherent SI unit: volts, amperes and degrees with one fixed place, so that a figure that
+// changes does not jump about, everything else with three digits and the prefix that suits it. A value that is not finite
+// reads "no value".
+func (t Theme) Number(value float64, unit string) string {
+	number, prefixed := t.Parts(value, unit)
 	if prefixed == "" {
 		return number
 	}
@@ -18,33 +20,38 @@ func (t Theme) Number(value float64, unit string, digits int) string {
 }
 
 // Signed is [Theme.Number] with a sign also on what is positive, for values whose direction matters.
-func (t Theme) Signed(value float64, unit string, digits int) string {
-	number := t.Number(value, unit, digits)
+func (t Theme) Signed(value float64, unit string) string {
+	number := t.Number(value, unit)
 	if value > 0 && !isZero(number) {
 		return "+" + number
 	}
 	return number
 }
 
-// Parts gives the number and the unit of [Theme.Number] apart.
-func (t Theme) Parts(value float64, unit string, digits int) (number, prefixed string) {
-	if math.IsNaN(value) || math.IsInf(value, 0) {
+// Parts gives the number and the prefixed unit of [Theme.Number] apart.
+func (t Theme) Parts(value float64, unit string) (number, prefixed string) {
+	switch size := math.Abs(value); {
+	case math.IsNaN(value) || math.IsInf(value, 0):
 		return "no value", ""
-	}
-	exponent := prefixExponent(value, unit)
-	scaled := value / math.Pow10(exponent)
-	switch {
-	case math.Abs(scaled) >= 1e7:
-		number = strconv.FormatFloat(scaled, 'e', 2, 64)
-	case exponent != 0:
-		number = strconv.FormatFloat(scaled, 'f', placesForThreeDigits(scaled), 64)
+	case size >= 1e12: // no plant has such a value: show that it is absurd, but keep it short
+		number, prefixed = strconv.FormatFloat(value, 'e', 2, 64), unit
+	case unit == "":
+		number = strconv.FormatFloat(value, 'f', 0, 64)
+	case (unit == "V" || unit == "A" || unit == "°C") && size < 9999.95:
+		number, prefixed = strconv.FormatFloat(value, 'f', 1, 64), unit
 	default:
-		number = strconv.FormatFloat(scaled, 'f', digits, 64)
+		number, prefixed, _ = strings.Cut(quantity.Engineering(value, unit, 3), " ")
 	}
 	if isZero(number) {
 		number = strings.TrimPrefix(number, "-")
 	}
-	return t.Minus(number), t.Unit(prefixes[exponent] + unit)
+	return t.Minus(number), t.Plain(prefixed)
+}
+
+// isZero tells whether a number's digits are all 0.
+func isZero(number string) bool {
+	digits, _, _ := strings.Cut(number, " ")
+	return strings.Trim(digits, "-−0.") == ""
 }
 
 // Minus writes a number's leading hyphen as a minus sign where the theme may.
@@ -55,53 +62,14 @@ func (t Theme) Minus(number string) string {
 	return number
 }
 
-func isZero(number string) bool {
-	return strings.Trim(strings.SplitN(number, " ", 2)[0], "-−0.") == ""
-}
-
-var prefixes = map[int]string{9: "G", 6: "M", 3: "k", 0: "", -3: "m", -6: "µ", -9: "n", -12: "p"}
-
-// takesPrefix lists the units that are written with a prefix, and from which size on. Volts and amperes of a power
-// circuit read best without one up to 10 000.
-func takesPrefix(unit string) (smallest, greatest float64, ok bool) {
-	switch unit {
-	case "V", "A":
-		return 0, 1e4, true
-	case "W", "Ω", "J", "Hz":
-		return 0, 1e3, true
-	case "V/A", "F", "H":
-		return 1, 1e3, true
-	}
-	return 0, 0, false
-}
-
-func prefixExponent(value float64, unit string) int {
-	smallest, greatest, ok := takesPrefix(unit)
-	size := math.Abs(value)
-	if !ok || size == 0 || size >= smallest && size < greatest {
-		return 0
-	}
-	exponent := int(math.Floor(math.Log10(size)/3)) * 3
-	return min(max(exponent, -12), 9)
-}
-
-func placesForThreeDigits(scaled float64) int {
-	if math.Abs(scaled) >= 99.95 {
-		return 1
-	}
-	return 2
-}
-
-// Unit writes a unit; under --ascii Ω is "ohm", ° is "deg" and µ is "u".
-func (t Theme) Unit(unit string) string { return t.Plain(unit) }
-
-// Plain writes a unit or a value's text without characters beyond ASCII where the theme asks for that.
+// Plain writes a unit, or a text with units in it, without characters beyond ASCII where the theme asks for that: Ω is
+// "ohm", ° is "deg", µ is "u".
 func (t Theme) Plain(text string) string {
-	if !t.ascii {
+	if !t.ascii || isPlain(text) {
 		return text
 	}
-	return asciiUnits.Replace(text)
+	return asciiSigns.Replace(text)
 }
 
-var asciiUnits = strings.NewReplacer("Ω", "ohm", "°", "deg", "µ", "u", "μ", "u", "²", "2", "±", "+-", "−", "-", "⁄", "/",
-	"·", ".", "…", "..", "≤", "<=", "≥", ">=", "–", "-", "×", "x", "Δ", "d", "τ", "tau", "→", "->", "\u2126", "ohm")
+var asciiSigns = strings.NewReplacer("Ω", "ohm", "\u2126", "ohm", "°", "deg", "µ", "u", "μ", "u", "²", "2", "±", "+-",
+	"−", "-", "–", "-", "⁄", "/", "·", ".", "…", "..", "≤", "<=", "≥", ">=", "×", "x", "Δ", "d", "τ", "tau", "→", "->", "✓", "+", "✗", "X")

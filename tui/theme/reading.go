@@ -55,7 +55,7 @@ func (t Theme) Show(r signal.Reading, unproved bool, now time.Time, maxAge time.
 	}
 	s := Shown{Role: Live, Value: r.Value}
 	unit := r.Name.Unit()
-	s.Number, s.Unit = t.Parts(r.Value, unit, placesFor(r.Name))
+	s.Number, s.Unit = t.Parts(r.Value, unit)
 	if (unit == "A" || unit == "W") && r.Value > 0 && !isZero(s.Number) {
 		s.Number = "+" + s.Number
 	}
@@ -81,16 +81,6 @@ func whyNone(r signal.Reading, now time.Time) string {
 		return ""
 	}
 	return Age(r.Age(now))
-}
-
-func placesFor(name signal.Name) int {
-	switch name.Unit() {
-	case "":
-		return 0
-	case "W":
-		return 0
-	}
-	return 1
 }
 
 // Age writes an age with one unit: "12 ms", "3.4 s", "5 min", "2 h", "4 d". A negative age means clocks disagree.
