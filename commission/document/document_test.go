@@ -285,6 +285,23 @@ func TestRevise(t *testing.T) {
 	}
 }
 
+func TestValueIsWhatReviseTakes(t *testing.T) {
+	text := []byte("a = \"1 µ\\u03a9\"\nb = 3\nc = { d = 2026-03-01 }\n[[e]]\nf = true\n")
+	for path, want := range map[string]string{"a": "1 µΩ", "b": "3", "c.d": "2026-03-01", "e.0.f": "true"} {
+		if got, ok := Value(text, path); !ok || got != want {
+			t.Errorf("Value(%q) = %q, %v, want %q", path, got, ok, want)
+		}
+		if revised, err := Revise(text, map[string]string{path: want}); err != nil || !strings.Contains(string(revised), want) {
+			t.Errorf("Revise(%q) = %q, %v", path, revised, err)
+		}
+	}
+	for _, path := range []string{"", "x", "c", "e", "e.1.f", "a.b"} {
+		if got, ok := Value(text, path); ok {
+			t.Errorf("Value(%q) = %q, want none", path, got)
+		}
+	}
+}
+
 func TestNearest(t *testing.T) {
 	known := []string{"bus-voltage", "bus-current", "power", "mode"}
 	for word, want := range map[string]string{"bus-volatge": "bus-voltage", "BUS-CURRENT": "bus-current", "powr": "power", "mod": "mode", "x": "", "": ""} {

@@ -49,6 +49,24 @@ func Revise(text []byte, changes map[string]string) ([]byte, error) {
 	return revised, nil
 }
 
+// Value gives the value at a path as [Revise] takes it; false where the path names none.
+func Value(source []byte, path string) (string, bool) {
+	f := parse("site file", source)
+	v := &value{kind: table, table: f.root}
+	for _, name := range strings.Split(path, ".") {
+		if v = v.step(name); v == nil {
+			return "", false
+		}
+	}
+	switch v.kind {
+	case text:
+		return v.text, true
+	case boolean, integer, float, date:
+		return string(f.text[v.at:v.end]), true
+	}
+	return "", false
+}
+
 // syntaxOnly gives the problems found so far, without those of a reader.
 func (f *File) syntaxOnly() error { return &Problems{File: f.name, List: f.problems} }
 

@@ -14,6 +14,9 @@ const (
 	largest  = 1e15
 )
 
+// longest is the greatest length of a typed quantity in bytes; it bounds the work of finding out what was meant.
+const longest = 200
+
 // absoluteZero in degrees Celsius, by definition of the Celsius scale.
 const absoluteZero = -273.15
 
@@ -245,6 +248,8 @@ func (s *scanner) number() (string, *Refusal) {
 func (s *scanner) startsBadly() *Refusal {
 	trimmed := strings.TrimSpace(s.text)
 	switch {
+	case len(s.text) > longest:
+		return s.refuse(s.d.name+", a number and its unit", "")
 	case !utf8.ValidString(s.text):
 		return s.refuse("text in UTF-8", "")
 	case trimmed == "":

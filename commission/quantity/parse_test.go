@@ -83,6 +83,7 @@ var refusals = []struct {
 	{"3 V ", voltage, Rule{}, 0, "no space before or after", "3 V"},
 	{"many", voltage, Rule{}, 0, "a number and its unit", "750 V"},
 	{"\xff 3 V", voltage, Rule{}, 0, "UTF-8", "750 V"},
+	{strings.Repeat("1'", 1<<20), voltage, Rule{}, 0, "a number and its unit", "750 V"},
 	{"+3 V", voltage, Rule{}, 0, "without plus sign", "3 V"},
 	{"–3 V", voltage, Rule{}, 0, "a number and its unit", "750 V"},
 	{"33", resistance, Rule{}, 2, "a unit: µΩ mΩ Ω kΩ MΩ GΩ", "33 Ω"},

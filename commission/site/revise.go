@@ -8,3 +8,6 @@ import "chargehand/commission/document"
 func Revise(text []byte, changes map[string]string) ([]byte, error) {
 	return document.Revise(text, changes)
 }
+
+// Value gives the text of the value at a path as [Revise] takes it; false where the file has none there.
+func Value(text []byte, path string) (string, bool) { return document.Value(text, path) }
