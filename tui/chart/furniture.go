@@ -133,9 +133,8 @@ func (f *frame) markerLines() {
 		switch {
 		case math.IsNaN(m.At):
 		case m.Upright && inside(f.x, m.At, p.perX):
-			x, _ := f.place(m.At, 0)
 			for row := range p.rows {
-				p.mark(x/p.perX, row, upright, m.role())
+				p.mark(nearest(f.x, m.At), row, upright, m.role())
 			}
 		case !m.Upright && inside(f.y, m.At, p.perY):
 			_, y := f.place(0, m.At)
@@ -246,9 +245,8 @@ func (f *frame) cursor() {
 	if c == nil || !inside(f.x, *c, f.plot.perX) {
 		return
 	}
-	x, _ := f.place(*c, 0)
 	for row := range f.plot.rows {
-		f.plot.mark(x/f.plot.perX, row, cursorLine, theme.Cursor)
+		f.plot.mark(nearest(f.x, *c), row, cursorLine, theme.Cursor)
 	}
 }
 

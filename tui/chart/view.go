@@ -138,6 +138,9 @@ func inside(a Axis, v float64, per int) bool {
 	return cell >= -half && cell <= float64(a.Cells-1)+half
 }
 
+// nearest is the cell whose own value is closest to v, which must lie on the axis.
+func nearest(a Axis, v float64) int { return int(math.Round(a.Cell(v))) }
+
 // bands fills the bands with staggered dots and draws their edges in dots further apart than a line's, so that without
 // colour too a band is told from a trace.
 func (f *frame) bands() {
@@ -282,8 +285,7 @@ func (f *frame) points() {
 				f.edge(x, y, theme.Trace)
 				continue
 			}
-			px, py := f.place(x, y)
-			f.plot.mark(px/f.plot.perX, py/f.plot.perY, point, theme.Trace)
+			f.plot.mark(nearest(f.x, x), nearest(f.y, y), point, theme.Trace)
 		}
 	}
 }
