@@ -55,11 +55,22 @@ func Decode(kind string, body []byte) (Body, error) {
 // Known tells whether this version knows the kind.
 func Known(kind string) bool { _, ok := blank[kind]; return ok }
 
-// blank holds one empty body of each kind.
+// Kinds are the kinds that this version knows, in the order in which a log usually first has them.
+func Kinds() []string {
+	kinds := make([]string, len(bodies))
+	for i, b := range bodies {
+		kinds[i] = b.Kind()
+	}
+	return kinds
+}
+
+// bodies holds one empty body of each kind.
+var bodies = []Body{Opened{}, File{}, Person{}, Instrument{}, Reading{}, Capture{}, Finding{}, Stage{}, Point{}, Attempt{},
+	Deviation{}, Punch{}, Note{}, Setting{}, Link{}, Clock{}, Hastened{}, Resumed{}, SignOff{}, Seal{}}
+
 var blank = func() map[string]Body {
 	m := map[string]Body{}
-	for _, b := range []Body{Opened{}, File{}, Person{}, Instrument{}, Reading{}, Capture{}, Finding{}, Stage{}, Point{},
-		Attempt{}, Deviation{}, Punch{}, Note{}, Setting{}, Link{}, Clock{}, Hastened{}, Resumed{}, SignOff{}, Seal{}} {
+	for _, b := range bodies {
 		m[b.Kind()] = b
 	}
 	return m
