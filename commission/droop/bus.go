@@ -77,62 +77,112 @@ type Sharing struct {
 	Status    Status
 }
 
-// Share gives the sharing over all setpoint errors with at most four corners per infeed instead of 2^N: the current of an
-// infeed rises with its own setpoint and falls with every other one, so its extremes lie where its own error stands
-// against all others. At a limit the total current still moves with the others, so both signs of the others are tried
-// with either sign of its own. Sources that are offline take no part.
+// enumerated is the greatest number of infeeds whose corners are enumerated where the extreme may lie between the ends.
+const enumerated = 6
+
+// Share gives the sharing with each setpoint at either end of its error, with four corners per infeed instead of 2^N. The
+// current of an infeed rises with its own setpoint; the others act on it through the bus voltage alone, which rises with
+// each of them and so lies between the corners with all others low and all others high. Between those the deviation turns
+// at most where the infeed meets a limit or where it falls as fast as its share. Only where such a place lies between are
+// the other corners tried, up to six infeeds; with more of them the corners lie densely and the place itself stands for
+// the nearest. Sources that are offline take no part.
 func Share(sources []Source, errors []quantity.Voltage, load Load) Sharing {
 	share := Sharing{Status: Found,
 		Deviation: make([]quantity.Spread[quantity.Ratio], len(sources)), Current: make([]quantity.Spread[quantity.Current], len(sources))}
-	total := 0.0
-	for _, s := range sources {
-		if !s.Offline {
-			total += float64(s.Rated)
-		}
-	}
 	work := make([]Source, 0, len(sources))
-	take := func(k int, own, others quantity.Voltage, first bool) {
-		work = shifted(work, sources, errors, others)
-		work[k].NoLoad = sources[k].NoLoad + own*errors[k]
-		v, status := balance(work, load)
-		if status != Found {
-			share.Status = status
-			return
-		}
-		i, sum := 0.0, 0.0
-		for j, s := range work {
-			if s.Offline {
-				continue
-			}
-			c := s.current(v)
-			sum += c
-			if j == k {
-				i = c
-			}
-		}
-		deviation := (i - float64(sources[k].Rated)/total*sum) / float64(sources[k].Rated)
-		widen(&share.Deviation[k], quantity.Ratio(deviation), first)
-		widen(&share.Current[k], quantity.Current(i), first)
-	}
+	total := ratedSum(sources)
 	for k, s := range sources {
 		if s.Offline {
 			continue
 		}
-		take(k, 0, 0, true)
+		one := sharer{s, float64(s.Rated / total), load}
+		v, status := balance(sources, load)
+		if status != Found {
+			share.Status = status
+			return share
+		}
+		share.Current[k] = quantity.Exactly(quantity.Current(s.current(v)))
+		share.Deviation[k] = quantity.Exactly(quantity.Ratio(one.deviation(v)))
 		for _, own := range []quantity.Voltage{-1, +1} {
-			take(k, own, -own, false)
-			take(k, own, own, false)
+			one.source.NoLoad = s.NoLoad + own*errors[k]
+			corner := func(others quantity.Voltage) float64 {
+				work = shifted(work, sources, errors, others)
+				work[k].NoLoad = one.source.NoLoad
+				v, status := balance(work, load)
+				if status != Found {
+					share.Status = status
+				}
+				return v
+			}
+			places := []float64{corner(-1), corner(+1)}
+			if share.Status != Found {
+				return share
+			}
+			if turns := one.turns(places[0], places[1]); len(turns) > 0 {
+				if len(sources) <= enumerated {
+					turns = everyCorner(work, sources, errors, load, k)
+				}
+				places = append(places, turns...)
+			}
+			for _, v := range places {
+				widen(&share.Current[k], quantity.Current(one.source.current(v)))
+				widen(&share.Deviation[k], quantity.Ratio(one.deviation(v)))
+			}
 		}
 	}
 	return share
 }
 
-// widen takes a value into a spread; the first one is the nominal.
-func widen[Q quantity.Scalar](s *quantity.Spread[Q], v Q, first bool) {
-	if first {
-		*s = quantity.Exactly(v)
-		return
+// everyCorner are the bus voltages with every other setpoint at either end; that of infeed k stays as it is in work.
+func everyCorner(work, sources []Source, errors []quantity.Voltage, load Load, k int) []float64 {
+	var all []float64
+	for pattern := range 1 << len(sources) {
+		if pattern>>k&1 == 1 {
+			continue // its own place in the pattern is not used
+		}
+		for j := range work {
+			if j != k {
+				work[j].NoLoad = sources[j].NoLoad + errors[j]*quantity.Voltage(2*(pattern>>j&1)-1)
+			}
+		}
+		if v, status := balance(work, load); status == Found {
+			all = append(all, v)
+		}
 	}
+	return all
+}
+
+// sharer is one infeed beside its share w of the load.
+type sharer struct {
+	source Source
+	weight float64
+	load   Load
+}
+
+// deviation is (I_k − w·ΣI) ⁄ I_rated at a bus voltage; the currents together are those of the load.
+func (s sharer) deviation(bus float64) float64 {
+	sum := float64(s.load.Power)/bus + float64(s.load.Current) + bus*s.load.conductance()
+	return (s.source.current(bus) - s.weight*sum) / float64(s.source.Rated)
+}
+
+// turns are the bus voltages between low and high where the deviation may be extreme: where the infeed meets a limit, and
+// where it falls as fast as its share of the load.
+func (s sharer) turns(low, high float64) []float64 {
+	var all []float64
+	v0, r := float64(s.source.NoLoad), s.source.slope()
+	for _, v := range []float64{
+		v0 - r*float64(s.source.Most), v0 - r*float64(s.source.Least),
+		math.Sqrt(s.weight * float64(s.load.Power) / (1/r + s.weight*s.load.conductance())),
+	} {
+		if v > low && v < high {
+			all = append(all, v)
+		}
+	}
+	return all
+}
+
+// widen takes a value into a spread.
+func widen[Q quantity.Scalar](s *quantity.Spread[Q], v Q) {
 	s.Low, s.High = min(s.Low, v), max(s.High, v)
 }
 

@@ -31,7 +31,7 @@ const copperCoefficient = 0.00393
 // times 1 + 0.00393·(T − 20 °C). It is false for a section or class that the table does not have.
 func ConductorResistance(section quantity.Area, class int, temperature quantity.Temperature) (float64, bool) {
 	for _, c := range Conductors {
-		if math.Abs(c.Section*1e-6-float64(section)) > 1e-12 {
+		if !(math.Abs(c.Section*1e-6-float64(section)) <= 1e-12) {
 			continue
 		}
 		perKilometre := c.Class2

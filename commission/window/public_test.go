@@ -1,0 +1,106 @@
+package window
+
+import (
+	"math"
+	"testing"
+
+	"chargehand/commission/finding/findingtest"
+	"chargehand/commission/quantity"
+)
+
+const publicCases = "../../testdata/public-cases.json"
+
+// Source of the figures: public-cases.json, closed form, P19 and P20 confirmed by ngspice.
+func TestPublicVoltageWindow(t *testing.T) {
+	for _, c := range findingtest.Cases(t, publicCases, "voltage_window") {
+		v := func(name string) quantity.Voltage { return quantity.Voltage(c.Input(name, 0)) }
+		a := func(name string) quantity.Current { return quantity.Current(c.Input(name, 0)) }
+		r := func(name string) quantity.Resistance { return quantity.Resistance(c.Input(name, 0)) }
+		n := v("n_cells")
+		high := HighestTerminal(n*v("v_cell_max_V"), a("i_charge_A"), r("r_int_ohm"), v("meas_err_src_V"))
+		low := LowestTerminal(n*v("v_cell_min_V"), a("i_discharge_A"), r("r_ext_ohm"), v("meas_err_src_V"))
+		busLow := LowestBus(v("v_set_V"), v("droop_V"), v("reg_tol_V"), v("meas_err_bus_V"), v("ripple_pp_V"))
+		busHigh := HighestBus(v("v_set_V"), v("droop_regen_V"), v("reg_tol_V"), v("meas_err_bus_V"), v("ripple_pp_V"))
+		least := HardwareDuty(quantity.Frequency(c.Input("f_sw_Hz", 0)), quantity.Seconds(c.Input("t_min_pulse_s", 0)), quantity.Seconds(c.Input("t_dead_s", 0)))
+		dutyLow, dutyHigh := Duty(high, busLow), Duty(low, busHigh)
+		c.Check(t, map[string]any{
+			"v_src_max_V": float64(high), "v_src_min_V": float64(low), "v_bus_min_V": float64(busLow), "v_bus_max_V": float64(busHigh),
+			"margin_V": float64(busLow - high), "margin_ok": busLow-high >= v("margin_req_V"),
+			"ratio_min": float64(busLow / high), "ratio_max": float64(busHigh / low), "duty_min": float64(dutyLow), "duty_max": float64(dutyHigh),
+			"duty_hw_min": float64(least), "duty_low_ok": dutyLow >= least, "duty_high_ok": dutyHigh <= 1-least,
+			"v_bus_min_for_duty_V": float64(high + DutyNeed(high, least)),
+		})
+	}
+}
+
+func TestPublicSourcePower(t *testing.T) {
+	for _, c := range findingtest.Cases(t, publicCases, "source_power") {
+		emf, r := quantity.Voltage(c.Input("emf_V", 0)), quantity.Resistance(c.Input("r_int_ohm", 0))
+		eta := c.Input("eta", 1)
+		bus := c.Input("p_bus_W", 0)
+		power := bus / eta
+		if bus < 0 {
+			power = bus * eta
+		}
+		i, ok := CurrentAtPower(emf, r, quantity.Power(power))
+		phases := c.Input("n_phases", 3)
+		limits := Limits{Phase: quantity.Current(c.Input("i_phase_max_A", 0)), Phases: int(phases), Source: quantity.Current(c.Input("i_src_max_A", 0)),
+			LeastTerminal: quantity.Voltage(c.Input("v_term_min_V", 0)), HighestTerminal: quantity.Voltage(c.Input("v_term_max_V", 0))}
+		available, at := AvailableDischarge(emf, r, quantity.Ratio(eta), limits)
+		c.Check(t, map[string]any{
+			"p_src_W": power, "solvable": ok, "i_src_A": float64(i), "v_term_V": float64(emf) - float64(r)*float64(i),
+			"i_phase_A": float64(i) / phases, "i_bus_A": bus / c.Input("v_bus_V", 0), "p_transfer_max_W": float64(emf*emf) / (4 * float64(r)),
+			"p_avail_boost_W": float64(available), "i_at_p_avail_A": float64(at), "current_ok": i <= at,
+		})
+	}
+}
+
+func TestPublicDiodeConduction(t *testing.T) {
+	for _, c := range findingtest.Cases(t, publicCases, "diode_conduction") {
+		loop := Conduction{EMF: quantity.Voltage(c.Input("emf_V", 0)), Bus: quantity.Voltage(c.Input("v_bus_V", 0)), Diode: quantity.Voltage(c.Input("v_diode_V", 0)),
+			Source: quantity.Resistance(c.Input("r_src_ohm", 0)), Choke: quantity.Resistance(c.Input("r_choke_ohm", 0)), DiodeResistance: quantity.Resistance(c.Input("r_diode_ohm", 0)),
+			ChokeInductance: quantity.Inductance(c.Input("l_choke_H", 0)), Stray: quantity.Inductance(c.Input("l_stray_H", 0)), Phases: int(c.Input("n_phases", 3))}
+		trip, ok := loop.TimeTo(quantity.Current(c.Input("i_trip_A", 0)))
+		if !ok {
+			t.Errorf("%s: TimeTo = never, want a time", c.ID)
+		}
+		n := float64(loop.Phases)
+		c.Check(t, map[string]any{
+			"i_final_A": float64(loop.Final()), "i_phase_final_A": float64(loop.Final()) / n, "di_dt_A_s": loop.Slope(),
+			"di_dt_phase_A_s": loop.Slope() / n, "tau_s": float64(loop.TimeConstant()), "t_trip_s": float64(trip),
+		})
+		if _, ok := loop.TimeTo(loop.Final()); ok {
+			t.Errorf("%s: TimeTo(final current) = a time, want never", c.ID)
+		}
+	}
+}
+
+func TestPublicDutyLossy(t *testing.T) {
+	for _, c := range findingtest.Cases(t, publicCases, "duty_lossy") {
+		source, bus := quantity.Voltage(c.Input("v_src_V", 0)), quantity.Voltage(c.Input("v_bus_V", 0))
+		d := DutyWithDrops(source, bus, quantity.Current(c.Input("i_phase_A", 0)), Drops{Resistance: quantity.Resistance(c.Input("r_phase_ohm", 0)),
+			Switch: quantity.Voltage(c.Input("v_ce_V", 0)), Forward: quantity.Voltage(c.Input("v_f_V", 0))})
+		c.Check(t, map[string]any{"duty_boost": float64(d), "duty_upper": float64(1 - d), "duty_ideal": float64(Duty(source, bus))})
+	}
+}
+
+// The Joule integral that TimeToJoule inverts is added up step by step (trapezoid, 200000 steps) from the current itself.
+func TestTimeToJouleAgainstSummation(t *testing.T) {
+	loop := Conduction{EMF: 720, Source: 0.06, Choke: 0.009, ChokeInductance: 0.4e-3, Stray: 5e-6, Phases: 3}
+	for _, goal := range []quantity.CurrentTime2{1e-3, 10, 9e4, 5e6} {
+		end := float64(loop.TimeToJoule(goal))
+		const steps = 200000
+		sum, dt := 0.0, end/steps
+		for k := 0; k <= steps; k++ {
+			i := float64(loop.Final()) * -math.Expm1(-float64(k)*dt/float64(loop.TimeConstant()))
+			weight := 1.0
+			if k == 0 || k == steps {
+				weight = 0.5
+			}
+			sum += weight * i * i * dt
+		}
+		if math.Abs(sum-float64(goal)) > 1e-6*float64(goal) {
+			t.Errorf("TimeToJoule(%v) = %v s, at which the integral is %v A²s, want the goal", goal, end, sum)
+		}
+	}
+}
