@@ -1,0 +1,250 @@
+package tui
+
+import (
+	"context"
+
+	tea "github.com/charmbracelet/bubbletea"
+
+	"chargehand/commission"
+	"chargehand/commission/desk"
+	"chargehand/tui/deskview"
+	"chargehand/tui/start"
+	"chargehand/tui/theme"
+	"chargehand/tui/walkview"
+)
+
+// Host is what the screens need of the world.
+type Host interface {
+	// Entries lists what the start screen offers, unfinished logs first.
+	Entries(ctx context.Context) []start.Entry
+	// Open opens what was chosen there.
+	Open(ctx context.Context, chosen start.Entry) (walkview.Session, error)
+	// Check calculates a site's desk findings; an empty path is the built-in example.
+	Check(ctx context.Context, siteFile string) (desk.Sheet, error)
+}
+
+// screen is which screen is shown.
+type screen int
+
+const (
+	onStart screen = iota
+	onWalk
+	onDesk
+)
+
+// Model is the whole program.
+type Model struct {
+	host          Host
+	theme         theme.Theme
+	width, height int
+
+	shown   screen
+	before  screen // where the desk screen leads back to
+	start   start.Model
+	walk    walkview.Model
+	desk    deskview.Model
+	session *walkview.Session
+	only    bool // one walk was asked for: leaving it ends the program
+	opening *start.Entry
+}
+
+type (
+	entriesMsg []start.Entry
+	openedMsg  struct {
+		session walkview.Session
+		first   commission.Snapshot
+		err     error
+	}
+	checkedMsg struct {
+		sheet desk.Sheet
+		err   error
+	}
+	snapshotMsg struct {
+		run      *commission.Run
+		snapshot commission.Snapshot
+	}
+	closedMsg struct{ err error }
+)
+
+// New makes the program with its start screen.
+func New(host Host, t theme.Theme) Model {
+	return Model{host: host, theme: t, start: start.New(nil, t, 0, 0)}
+}
+
+// Opening makes the program with one walk to open at once; leaving it ends the program.
+func Opening(host Host, t theme.Theme, entry start.Entry) Model {
+	m := New(host, t)
+	m.only, m.opening = true, &entry
+	m.start = m.start.WithMessage("opening …")
+	return m
+}
+
+// Init asks for what the first screen shows.
+func (m Model) Init() tea.Cmd {
+	title := tea.SetWindowTitle("chargehand")
+	if m.opening != nil {
+		return tea.Batch(title, m.open(*m.opening))
+	}
+	return tea.Batch(title, m.entries())
+}
+
+func (m Model) entries() tea.Cmd {
+	return func() tea.Msg { return entriesMsg(m.host.Entries(context.Background())) }
+}
+
+func (m Model) open(e start.Entry) tea.Cmd {
+	return func() tea.Msg {
+		session, err := m.host.Open(context.Background(), e)
+		if err != nil {
+			return openedMsg{err: err}
+		}
+		return openedMsg{session: session, first: <-session.Run.Snapshots()}
+	}
+}
+
+func (m Model) check(file string) tea.Cmd {
+	return func() tea.Msg {
+		sheet, err := m.host.Check(context.Background(), file)
+		return checkedMsg{sheet, err}
+	}
+}
+
+// await waits for the next snapshot; it is asked again in one place, when one has come.
+func await(run *commission.Run) tea.Cmd {
+	return func() tea.Msg {
+		s, ok := <-run.Snapshots()
+		if !ok {
+			return nil
+		}
+		return snapshotMsg{run, s}
+	}
+}
+
+// Update takes one message.
+func (m Model) Update(msg tea.Msg) (tea.Model, tea.Cmd) {
+	switch msg := msg.(type) {
+	case tea.WindowSizeMsg:
+		return m.resized(msg.Width, msg.Height), nil
+	case tea.KeyMsg:
+		if msg.Type == tea.KeyCtrlC {
+			return m.leave(true)
+		}
+	case entriesMsg:
+		m.start = m.start.WithEntries(msg)
+		return m, nil
+	case start.Chosen:
+		return m.chosen(msg.Entry)
+	case start.Quit:
+		return m, tea.Quit
+	case openedMsg:
+		return m.opened(msg)
+	case snapshotMsg:
+		return m.snapshot(msg)
+	case checkedMsg:
+		return m.checked(msg), nil
+	case walkview.FindingsWanted:
+		return m.findings(), nil
+	case walkview.Left:
+		return m.leave(m.only)
+	case deskview.Left:
+		m.shown = m.before
+		return m, nil
+	case closedMsg:
+		if m.only {
+			return m, tea.Quit
+		}
+		return m, m.entries()
+	}
+	return m.pass(msg)
+}
+
+// pass hands a message to the screen it is for: keys to the one shown, everything else to the walk.
+func (m Model) pass(msg tea.Msg) (tea.Model, tea.Cmd) {
+	var cmd tea.Cmd
+	_, isKey := msg.(tea.KeyMsg)
+	switch {
+	case m.shown == onWalk || !isKey && m.session != nil:
+		m.walk, cmd = m.walk.Update(msg)
+	case m.shown == onDesk:
+		m.desk, cmd = m.desk.Update(msg)
+	default:
+		m.start, cmd = m.start.Update(msg)
+	}
+	return m, cmd
+}
+
+func (m Model) resized(width, height int) Model {
+	m.width, m.height = width, height
+	m.start, m.walk, m.desk = m.start.Resized(width, height), m.walk.Resized(width, height), m.desk.Resized(width, height)
+	return m
+}
+
+func (m Model) chosen(e start.Entry) (tea.Model, tea.Cmd) {
+	if e.Kind == start.Check {
+		return m, m.check(e.Site)
+	}
+	return m, m.open(e)
+}
+
+func (m Model) opened(msg openedMsg) (tea.Model, tea.Cmd) {
+	if msg.err != nil {
+		m.start = m.start.WithMessage(msg.err.Error())
+		return m, m.entries()
+	}
+	m.session, m.shown = &msg.session, onWalk
+	m.start = m.start.WithMessage("")
+	m.walk = walkview.New(msg.session, m.theme, m.width, m.height, msg.first)
+	title := "chargehand " + theme.Clean(msg.first.State.Site().Reference)
+	return m, tea.Batch(await(msg.session.Run), tea.SetWindowTitle(title))
+}
+
+// snapshot passes a snapshot on, unless it is of a walk that has been left.
+func (m Model) snapshot(msg snapshotMsg) (tea.Model, tea.Cmd) {
+	if m.session == nil || msg.run != m.session.Run {
+		return m, nil
+	}
+	var cmd tea.Cmd
+	m.walk, cmd = m.walk.WithSnapshot(msg.snapshot)
+	return m, tea.Batch(cmd, await(msg.run))
+}
+
+func (m Model) checked(msg checkedMsg) Model {
+	if msg.err != nil {
+		m.start = m.start.WithMessage(msg.err.Error())
+		return m
+	}
+	m.start = m.start.WithMessage("")
+	m.before, m.shown = m.shown, onDesk
+	m.desk = deskview.New(msg.sheet.Site, msg.sheet.Findings, m.theme, m.width, m.height)
+	return m
+}
+
+// findings shows what the open walk's log holds of findings, desk and measured.
+func (m Model) findings() Model {
+	state := m.walk.State()
+	all := append(state.Measured(""), state.Desk()...)
+	m.before, m.shown = onWalk, onDesk
+	m.desk = deskview.New(state.Site().Name, all, m.theme, m.width, m.height)
+	return m
+}
+
+// leave closes an open walk; its log stays as it is and can be gone on with.
+func (m Model) leave(quit bool) (tea.Model, tea.Cmd) {
+	if m.session == nil {
+		return m, tea.Quit
+	}
+	session := *m.session
+	m.session, m.shown, m.only = nil, onStart, quit
+	return m, func() tea.Msg { return closedMsg{session.Close()} }
+}
+
+// View draws the screen shown.
+func (m Model) View() string {
+	switch m.shown {
+	case onWalk:
+		return m.walk.View()
+	case onDesk:
+		return m.desk.View()
+	}
+	return m.start.View()
+}

@@ -1,0 +1,168 @@
+package walkview
+
+import (
+	"fmt"
+
+	"chargehand/commission"
+	"chargehand/commission/capture"
+	"chargehand/commission/record"
+	"chargehand/commission/walk"
+)
+
+// step is what Enter does next at a point.
+type step int
+
+const (
+	stepNothing  step = iota
+	stepPerson        // nobody has entered who goes the walk
+	stepGo            // go to another point: the hold in the way, or the next open one
+	stepEnter         // step into the point's stage
+	stepArm           // arm the capture
+	stepCause         // enter what the last attempt failed of
+	stepOverride      // a reason for an attempt before its time
+	stepLive          // take the live readings
+	stepMeasure       // enter an instrument's reading
+	stepSeen          // enter what was seen
+	stepPass          // pass the point
+	stepFail          // it has failed: deviation or punch item
+	stepSign          // sign it
+	stepSeal          // all is done: seal the log
+)
+
+// action is a step with what it acts on and how the screen names it.
+type action struct {
+	step   step
+	label  string
+	point  string           // where it leads
+	hand   walk.HandReading // what to measure
+	reason string           // why it is in the way
+}
+
+// next is what Enter does at point p now.
+func next(s commission.Snapshot, p walk.Point) action {
+	state := s.State
+	if len(state.People()) == 0 {
+		return action{step: stepPerson, label: "enter who goes the walk"}
+	}
+	if state.Sealed() != nil {
+		return action{label: "the log is sealed"}
+	}
+	if s.Capture != nil && s.Capture.Point == p.ID {
+		return action{label: "capture " + string(s.Capture.Phase) + ", s stops it"}
+	}
+	if hold, held := state.HeldBy(p); held {
+		return action{step: stepGo, point: hold.ID, label: "go to hold point " + hold.ID, reason: "closed until " + hold.ID + " is signed"}
+	}
+	st := state.Status(p.ID)
+	switch {
+	case state.IsDone(p):
+		return afterDone(state)
+	case st.Result == walk.Open:
+		return nextReading(s, p)
+	case st.Result == walk.Failed && st.Accepted == nil && !hasPunch(state, p.ID):
+		return action{step: stepFail, point: p.ID, label: "enter a punch item (d: deviation)"}
+	case p.Kind == walk.Hold:
+		return action{step: stepSign, point: p.ID, label: "sign " + p.ID}
+	}
+	return afterDone(state)
+}
+
+func hasPunch(state walk.State, point string) bool {
+	for _, k := range state.Punches() {
+		if k.Point == point && k.Event == "raised" {
+			return true
+		}
+	}
+	return false
+}
+
+func afterDone(state walk.State) action {
+	if p, open := state.NextOpen(); open {
+		return action{step: stepGo, point: p.ID, label: "go on to " + p.ID}
+	}
+	return action{step: stepSeal, label: "seal the log"}
+}
+
+// nextReading is the next reading an open point wants, or its verdict.
+func nextReading(s commission.Snapshot, p walk.Point) action {
+	state := s.State
+	if state.Stage() < p.Stage {
+		return action{step: stepEnter, point: p.ID, label: fmt.Sprintf("enter stage %d, %s", p.Stage, walk.StageTitles[p.Stage-1])}
+	}
+	if p.Capture != "" && !captured(state, p) {
+		return nextArm(s, p)
+	}
+	if p.Wants(walk.Live) && p.Capture == "" && !has(state, p, record.FromDevice, "") && anyMapped(s, p) {
+		return action{step: stepLive, point: p.ID, label: "take the live readings"}
+	}
+	if p.Wants(walk.Instrument) {
+		for _, h := range p.Hand {
+			if !has(state, p, record.FromInstrument, h.What) {
+				return action{step: stepMeasure, point: p.ID, hand: h, label: "enter the instrument's reading: " + h.What}
+			}
+		}
+	}
+	if (p.Wants(walk.Observation) || p.Wants(walk.Document)) && !has(state, p, record.Observed, "") {
+		return action{step: stepSeen, point: p.ID, label: "enter what was seen"}
+	}
+	if assessed := state.Assess(p); assessed.Result == walk.Failed {
+		return action{step: stepFail, point: p.ID, label: "not met: fail it (a: take again)", reason: because(assessed)}
+	} else if assessed.Result == walk.Open {
+		return action{step: stepPass, point: p.ID, label: "pass (something is missing)", reason: because(assessed)}
+	}
+	return action{step: stepPass, point: p.ID, label: "pass " + p.ID}
+}
+
+func because(a walk.Assessment) string {
+	if len(a.Because) == 0 {
+		return ""
+	}
+	return a.Because[0]
+}
+
+func nextArm(s commission.Snapshot, p walk.Point) action {
+	if s.Capture != nil {
+		return action{label: "another capture is " + string(s.Capture.Phase)}
+	}
+	if p.Capture == capture.Precharge {
+		if s.State.CauseIsMissing() {
+			return action{step: stepCause, point: p.ID, label: "enter the cause of the last attempt"}
+		}
+		if wait := s.State.NotBefore(s.Now); wait != "" {
+			return action{step: stepOverride, point: p.ID, label: "wait, or give a reason", reason: wait}
+		}
+	}
+	return action{step: stepArm, point: p.ID, label: "arm the capture"}
+}
+
+// captured tells whether a capture has brought its reading or finding to the point since it was opened.
+func captured(state walk.State, p walk.Point) bool {
+	if len(state.Status(p.ID).Readings) > 0 {
+		return true
+	}
+	for _, id := range p.Findings {
+		if len(state.Measured(id)) > 0 {
+			return true
+		}
+	}
+	return false
+}
+
+func has(state walk.State, p walk.Point, source, what string) bool {
+	for _, seq := range state.Status(p.ID).Readings {
+		if r, ok := state.Reading(seq); ok && r.Source == source && (what == "" || r.Signal == what) {
+			return true
+		}
+	}
+	return false
+}
+
+// anyMapped tells whether the device has any of the point's signals.
+func anyMapped(s commission.Snapshot, p walk.Point) bool {
+	for _, name := range p.Signals {
+		if _, ok := s.Live[name]; ok {
+			return true
+		}
+	}
+	return false
+}

@@ -1,0 +1,367 @@
+package walkview
+
+import (
+	"fmt"
+	"strings"
+	"time"
+
+	"github.com/charmbracelet/bubbles/key"
+
+	"chargehand/commission/signal"
+	"chargehand/commission/walk"
+	"chargehand/tui/form"
+	"chargehand/tui/oneline"
+	"chargehand/tui/theme"
+)
+
+// LeastWidth and LeastHeight are the smallest terminal the screen is drawn in.
+const (
+	LeastWidth  = 80
+	LeastHeight = 24
+)
+
+// stagesWidth is the column of the stages; in a wide terminal it has room for their titles in full.
+const (
+	stagesNarrow = 22
+	stagesWide   = 36
+	wide         = 120
+)
+
+// View draws the screen in exactly its size.
+func (m Model) View() string {
+	switch {
+	case m.width <= 0 || m.height <= 0:
+		return ""
+	case m.width < LeastWidth || m.height < LeastHeight:
+		return m.tooSmall()
+	case m.explain:
+		return m.frame(m.explanation())
+	case m.done != nil:
+		return m.frame(m.ending())
+	case m.far:
+		return m.farView()
+	}
+	return m.frame(m.body())
+}
+
+func (m Model) tooSmall() string {
+	text := fmt.Sprintf("this screen needs %d columns and %d rows, the terminal has %d and %d; nothing is lost", LeastWidth, LeastHeight, m.width, m.height)
+	return strings.Join(cut(wrap(text, m.width), m.height), "\n")
+}
+
+// frame puts a body between the title line and the key line.
+func (m Model) frame(body []string) string {
+	rows := append([]string{m.titleLine()}, body...)
+	for len(rows) < m.height-1 {
+		rows = append(rows, "")
+	}
+	rows = append(rows[:m.height-1], m.keyLine())
+	for i, row := range rows {
+		rows[i] = m.theme.Clip(row, m.width)
+	}
+	return strings.Join(rows, "\n")
+}
+
+// titleLine says which walk this is, whether it is a rehearsal, and what the link is worth.
+func (m Model) titleLine() string {
+	state := m.snapshot.State
+	left := " " + theme.Clean(state.Site().Name)
+	if r := state.Site().Reference; r != "" {
+		left += m.theme.Pick(" · ", " - ") + theme.Clean(r)
+	}
+	right := m.linkWords() + "  " + m.snapshot.Now.Format(time.TimeOnly) + " "
+	mark := ""
+	if state.IsRehearsal() {
+		mark = "  " + m.theme.Paint(theme.Hazard, " REHEARSAL ")
+		if m.session.Pace != nil && m.session.Pace() > 1 {
+			mark += m.theme.Paint(theme.Abnormal, fmt.Sprintf(" x%.0f", m.session.Pace()))
+		}
+	}
+	space := m.width - theme.Width(left) - theme.Width(mark) - theme.Width(right)
+	if space < 1 {
+		left = m.theme.Clip(left, max(8, theme.Width(left)+space-1))
+		space = max(1, m.width-theme.Width(left)-theme.Width(mark)-theme.Width(right))
+	}
+	return m.theme.Paint(theme.Title, left) + mark + strings.Repeat(" ", space) + right
+}
+
+func (m Model) linkWords() string {
+	link := m.snapshot.Link
+	if link.Up {
+		words := fmt.Sprintf("link good %.0f/s", link.Rate)
+		if age, ok := m.newestAge(); ok {
+			words += m.theme.Pick(" · ", " - ") + "age " + theme.Age(age)
+		}
+		return m.theme.Paint(theme.Normal, words)
+	}
+	words := "NO LINK"
+	if wait := link.NextTry.Sub(m.snapshot.Now); !link.NextTry.IsZero() && wait > 0 {
+		words += fmt.Sprintf(", next try in %.0f s", wait.Seconds())
+	}
+	return m.theme.Paint(theme.Alarm, " "+words+" ")
+}
+
+func (m Model) newestAge() (time.Duration, bool) {
+	age, ok := time.Duration(0), false
+	for _, r := range m.snapshot.Live {
+		if r.Quality.HasValue() && (!ok || r.Age(m.snapshot.Now) < age) {
+			age, ok = r.Age(m.snapshot.Now), true
+		}
+	}
+	return max(age, 0), ok
+}
+
+// maxAge is how old a reading may be by the plant's clock.
+func (m Model) maxAge() time.Duration {
+	if m.session.Pace == nil {
+		return m.session.MaxAge
+	}
+	return time.Duration(float64(m.session.MaxAge) * m.session.Pace())
+}
+
+// body is the drawing, the stages and the open point.
+func (m Model) body() []string {
+	drawing := m.drawing()
+	rule := m.rule()
+	rows := append([]string{rule}, drawing...)
+	rows = append(rows, rule)
+	height := m.height - len(rows) - 3 // title, message, keys
+	left := m.stages(height)
+	right := m.panel(m.panelWidth(), height)
+	bar := m.theme.Paint(theme.Wire, m.theme.Pick("│", "|"))
+	for i := range height {
+		rows = append(rows, m.theme.Fit(at(left, i), m.stagesWidth())+bar+" "+at(right, i))
+	}
+	return append(rows, m.messageLine())
+}
+
+func (m Model) rule() string {
+	return m.theme.Paint(theme.Wire, strings.Repeat(m.theme.Pick("─", "-"), m.width))
+}
+
+func (m Model) drawing() []string {
+	height := 7
+	if m.width >= oneline.RoomyWidth && m.height >= 36 {
+		height = oneline.RoomyHeight + 1
+	}
+	return strings.Split(oneline.View(m.plan, m.snapshot.Live, m.unproved(), m.snapshot.Now, m.maxAge(), m.theme, m.width, height), "\n")
+}
+
+func (m Model) unproved() map[signal.Name]bool {
+	unproved := map[signal.Name]bool{}
+	for name := range m.snapshot.Live {
+		unproved[name] = !name.IsState() && !m.snapshot.State.IsProved(name)
+	}
+	return unproved
+}
+
+func (m Model) stagesWidth() int {
+	if m.width >= wide {
+		return stagesWide
+	}
+	return stagesNarrow
+}
+
+func (m Model) panelWidth() int { return m.width - m.stagesWidth() - 2 }
+
+// stages lists the twelve stages and, under the open one, its points as far as there is room.
+func (m Model) stages(height int) []string {
+	open := m.current().Stage
+	points := m.snapshot.State.InStage(open)
+	room := height - walk.Stages
+	first, last := window(len(points), m.indexIn(points), max(room, 0))
+	var rows []string
+	for stage := 1; stage <= walk.Stages; stage++ {
+		rows = append(rows, m.stageRow(stage, stage == open))
+		if stage == open {
+			for _, p := range points[first:last] {
+				rows = append(rows, m.pointRow(p))
+			}
+		}
+	}
+	if len(rows) <= height {
+		return rows
+	}
+	from, to := window(len(rows), open-1, height)
+	return rows[from:to]
+}
+
+func (m Model) indexIn(points []walk.Point) int {
+	for i, p := range points {
+		if p.ID == m.point {
+			return i
+		}
+	}
+	return 0
+}
+
+// window is the part of n rows, size long, that holds row at.
+func window(n, at, size int) (from, to int) {
+	size = min(size, n)
+	from = min(max(at-size/2, 0), n-size)
+	return from, from + size
+}
+
+var shortTitles = [walk.Stages]string{"Permission", "Papers", "Dead checks", "Link", "Pre-charge", "Window", "First boost",
+	"Droop", "Current mode", "Trips", "Shut-down", "Sign-off"}
+
+func (m Model) stageRow(stage int, open bool) string {
+	done, all := m.snapshot.State.Progress(stage)
+	title := shortTitles[stage-1]
+	if m.stagesWidth() == stagesWide {
+		title = walk.StageTitles[stage-1]
+	}
+	lead := " "
+	if open {
+		lead = m.theme.Pick("▸", ">")
+	}
+	count := fmt.Sprintf("%d/%d", done, all)
+	sign := " "
+	if done == all {
+		sign = m.theme.Pick("✓", "+")
+	}
+	row := fmt.Sprintf("%s%2d %s", lead, stage, title)
+	row = m.theme.Fit(row, m.stagesWidth()-len(count)-3) + sign + count
+	switch {
+	case open:
+		return m.theme.Paint(theme.Title, row)
+	case done == all:
+		return m.theme.Paint(theme.Normal, row)
+	}
+	return row
+}
+
+func (m Model) pointRow(p walk.Point) string {
+	row := "    " + m.pointSign(p) + " " + p.ID
+	if m.stagesWidth() == stagesWide {
+		row = "    " + m.pointSign(p) + " " + p.Title
+	}
+	row = m.theme.Fit(row, m.stagesWidth()-1)
+	if p.ID == m.point {
+		return m.theme.Paint(theme.Selected, row)
+	}
+	return row
+}
+
+func (m Model) pointSign(p walk.Point) string {
+	st := m.snapshot.State.Status(p.ID)
+	switch {
+	case st.Result == walk.Passed && m.snapshot.State.IsDone(p):
+		return m.theme.Pick("✓", "+")
+	case st.Result == walk.Failed:
+		return m.theme.Pick("✗", "X")
+	case st.Result == walk.NotApplicable && m.snapshot.State.IsDone(p):
+		return m.theme.Pick("∅", "0")
+	case st.Result != walk.Open:
+		return m.theme.Pick("✎", "s") // waits for its signature
+	}
+	return m.theme.Pick("·", ".")
+}
+
+// messageLine is what was recorded or refused last, or what Enter does next.
+func (m Model) messageLine() string {
+	if m.snapshot.Failure != nil {
+		return m.theme.Paint(theme.Alarm, " NOTHING IS RECORDED: "+theme.Clean(m.snapshot.Failure.Error())+" ")
+	}
+	if c := m.snapshot.Capture; c != nil && c.OpenNow != "" {
+		return m.theme.Paint(theme.Alarm, " OPEN THE PRE-CHARGE NOW: "+theme.Clean(c.OpenNow)+" ")
+	}
+	if m.message == "" {
+		return m.rule()
+	}
+	role := theme.Normal
+	if m.refused {
+		role = theme.Abnormal
+	}
+	return m.theme.Paint(role, " "+theme.Clean(m.message))
+}
+
+// keyLine is the keys that work here, the next thing first.
+func (m Model) keyLine() string {
+	if m.prompt != nil {
+		return m.hints("Enter", "on", "Up Down", "other field", "Esc", "nothing entered")
+	}
+	if m.explain || m.done != nil {
+		return m.hints("Esc", "back")
+	}
+	line := m.hints("Enter", next(m.snapshot, m.current()).label)
+	k := m.keys
+	k.Stop.SetEnabled(m.snapshot.Capture != nil)
+	k.Operate.SetEnabled(m.session.Operator != nil)
+	rest := form.HelpLine(m.theme, max(m.width-theme.Width(line)-1, 0), []key.Binding{k.Stop, k.Operate, k.Far, k.Explain, k.Again, k.Note, k.Punch, k.Findings, k.Back})
+	return line + " " + rest
+}
+
+// hints writes pairs of key and what it does.
+func (m Model) hints(pairs ...string) string {
+	var b strings.Builder
+	for i := 0; i+1 < len(pairs); i += 2 {
+		b.WriteString(" " + m.theme.Paint(theme.Key, pairs[i]) + " " + pairs[i+1] + " ")
+	}
+	return b.String()
+}
+
+func (m Model) explanation() []string {
+	const purpose = "The walk: twelve stages from the permit to the signature. The drawing shows the plant as the device reports it: a " +
+		"reading that is too old loses its number, one with a question mark has not been compared with a known value yet. Enter " +
+		"always does the next thing at the open point; what that is stands at the foot. Nothing is lost by Esc, a resize, a " +
+		"closed terminal or a power cut."
+	page := form.HelpPage(m.theme, m.width-2, m.height-2, "This screen", purpose, m.keys.groups(m.session.Operator != nil))
+	rows := strings.Split(page, "\n")
+	for i := range rows {
+		rows[i] = " " + rows[i]
+	}
+	return rows
+}
+
+func (m Model) ending() []string {
+	rows := []string{m.rule(), "", " The log is sealed. Its verdict: " + m.theme.Verdict(m.snapshot.State.Verdict()), ""}
+	for _, l := range m.done {
+		for _, w := range wrap(theme.Clean(l), m.width-4) {
+			rows = append(rows, "  "+w)
+		}
+	}
+	return append(rows, "", "  Log  "+theme.Clean(m.session.Log))
+}
+
+func at(rows []string, i int) string {
+	if i < len(rows) {
+		return rows[i]
+	}
+	return ""
+}
+
+func cut(rows []string, height int) []string { return rows[:min(len(rows), max(height, 0))] }
+
+// wrap breaks a text at spaces so that no line is wider than width.
+func wrap(text string, width int) []string {
+	if width < 1 {
+		return nil
+	}
+	var lines []string
+	line := ""
+	for _, word := range strings.Fields(text) {
+		for theme.Width(word) > width {
+			if line != "" {
+				lines, line = append(lines, line), ""
+			}
+			head := theme.Theme{}.Clip(word, width)
+			if head == "" {
+				return lines
+			}
+			lines, word = append(lines, head), strings.TrimPrefix(word, head)
+		}
+		switch {
+		case line == "":
+			line = word
+		case theme.Width(line)+1+theme.Width(word) <= width:
+			line += " " + word
+		default:
+			lines, line = append(lines, line), word
+		}
+	}
+	if line != "" {
+		lines = append(lines, line)
+	}
+	return lines
+}
