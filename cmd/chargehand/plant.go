@@ -1,0 +1,74 @@
+package main
+
+import (
+	"context"
+	"fmt"
+	"math"
+
+	"chargehand/commission/signal"
+	"chargehand/commission/site"
+	"chargehand/protocol/simulator"
+)
+
+// simulatedPlant is the hand at the simulated converter, in the words of the walk.
+type simulatedPlant struct {
+	simulator *simulator.Simulator
+	site      site.Site
+}
+
+// Do does one act of the console's vocabulary.
+func (p simulatedPlant) Do(ctx context.Context, act string) error {
+	parsed, err := simulator.ParseAct(act)
+	if err != nil {
+		return err
+	}
+	return p.simulator.Do(ctx, parsed)
+}
+
+// spots are where the walk's readings are measured on the simulated plant.
+var spots = map[string]string{
+	string(signal.SourceVoltage):       "source",
+	string(signal.BusVoltage):          "bus",
+	string(signal.StarPointVoltage):    "star-point",
+	string(signal.SourceCurrent):       "source-current",
+	string(signal.BusCurrent):          "bus-current",
+	string(signal.ResistorTemperature): "resistor-temperature",
+	"difference across the bypass":     "across-bypass",
+	"pre-charge resistance":            "precharge-resistance",
+}
+
+// Measure reads a hand instrument, or the device's own display, on the simulated plant.
+func (p simulatedPlant) Measure(_ context.Context, what string) (float64, string, error) {
+	if spot, ok := spots[what]; ok {
+		return p.simulator.Measure(spot)
+	}
+	switch what {
+	case "highest voltage found":
+		return p.highest()
+	case string(signal.VoltageSetpoint):
+		if len(p.site.Infeeds) > 0 {
+			return float64(p.site.Infeeds[0].Setpoint.Nominal), "V", nil
+		}
+	case string(signal.DroopSetting):
+		if len(p.site.Infeeds) > 0 {
+			in := p.site.Infeeds[0]
+			return float64(in.Droop.At(p.site.Bus.Nominal.Nominal, in.RatedCurrent.Nominal)), "V/A", nil
+		}
+	}
+	return 0, "", fmt.Errorf("the simulated plant has no place to read %q", what)
+}
+
+// highest is the voltage of greatest size at the places where absence of voltage is proved, the source side left out.
+func (p simulatedPlant) highest() (float64, string, error) {
+	greatest := 0.0
+	for _, spot := range []string{"bus", "star-point"} {
+		v, _, err := p.simulator.Measure(spot)
+		if err != nil {
+			return 0, "", err
+		}
+		if math.Abs(v) > math.Abs(greatest) {
+			greatest = v
+		}
+	}
+	return greatest, "V", nil
+}
