@@ -75,9 +75,6 @@ func orNaN(p *float64) float64 {
 func (f Finding) MarshalJSON() ([]byte, error) {
 	w := wire{ID: f.ID, Title: f.Title, Unit: f.Unit, State: f.State, Value: f.Value.wire(), Parts: []wirePart{},
 		Margin: finite(f.Margin), Verdict: f.Verdict, Because: f.Because, Basis: f.Basis, Remedy: f.Remedy, Captures: f.Captures, Cause: f.Cause}
-	if !f.Limit.IsGiven() {
-		w.Margin = nil
-	}
 	if f.Subject != "" {
 		w.Subject = &f.Subject
 	}
@@ -94,6 +91,9 @@ func (f Finding) MarshalJSON() ([]byte, error) {
 		if side.from != nil {
 			*side.to = finite(*side.from)
 		}
+	}
+	if w.Limit.Low == nil && w.Limit.High == nil {
+		w.Margin = nil
 	}
 	return marshal(w)
 }

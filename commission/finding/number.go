@@ -40,14 +40,18 @@ func (f Finding) tellsApart(digits int) bool {
 	return true
 }
 
-// Print writes a number of a coherent unit for people, "148 V"; a count stands without decimals, a number that is not finite
-// is "–".
+// Print writes a number of a coherent unit for people, "148 V"; a count stands without decimals, a size beyond all prefixes
+// as a power of ten, and a number that is not finite is "–".
 func Print(v float64, unit string, digits int) string {
-	if unit == "1" && v == math.Trunc(v) && math.Abs(v) < 1e15 {
+	if unit == "1" && v == math.Trunc(v) && math.Abs(v) < 1e12 {
 		return strconv.FormatFloat(v, 'f', 0, 64)
 	}
-	if math.IsNaN(v) || math.IsInf(v, 0) {
+	size := math.Abs(v)
+	switch {
+	case math.IsNaN(v) || math.IsInf(v, 0):
 		return "–"
+	case size >= 1e12 || size > 0 && size < 1e-12:
+		return strings.TrimSuffix(strconv.FormatFloat(v, 'e', digits-1, 64)+" "+unit, " 1")
 	}
 	return quantity.Engineering(v, unit, digits)
 }

@@ -119,7 +119,10 @@ func (t *table) cells(f Finding) cells {
 // verdictWidth is the sign, a blank, and the longest word.
 const verdictWidth = 2 + len("undecided")
 
-// measure lays out the columns for all families alike; what is too wide loses its end in the name's column.
+// leastName is the least width of the name's column: the longest family-less id but its end.
+const leastName = 12
+
+// measure lays out the columns for all families alike; what is too wide loses its end, first the names, then the figures.
 func (t *table) measure(families [][]Finding) {
 	for _, family := range families {
 		for _, f := range family {
@@ -128,13 +131,17 @@ func (t *table) measure(families [][]Finding) {
 			t.limit, t.marginWidth = max(t.limit, width(c.limit)), max(t.marginWidth, width(c.margin))
 		}
 	}
-	rest := t.options.Width - (2 + verdictWidth + 2 + t.nominal + 2 + t.between + 2 + t.limit)
+	rest := t.options.Width - (2 + verdictWidth + 2 + 2 + t.nominal + 2 + t.between + 2 + t.limit)
 	if t.options.Width >= wide {
 		rest -= 2 + t.marginWidth
 	} else {
 		t.marginWidth = 0
 	}
-	t.name = max(12, min(t.name, rest))
+	for _, column := range []*int{&t.between, &t.limit, &t.nominal} {
+		less := max(0, min(leastName-rest, *column-1))
+		*column, rest = *column-less, rest+less
+	}
+	t.name = max(leastName, min(t.name, rest))
 	if rest -= t.name + 2; t.options.Width >= wide && rest >= 16 {
 		t.titles = rest
 	}
@@ -152,7 +159,7 @@ func (t *table) family(findings []Finding) {
 func (t *table) row(f Finding) {
 	c := t.cells(f)
 	verdict := pad(t.sign(f.Verdict)+" "+string(f.Verdict), verdictWidth)
-	line := pad(clip(c.name, t.name, t.ellipsis()), t.name) + "  " + padLeft(c.nominal, t.nominal) + "  " + pad(c.between, t.between) + "  " + pad(c.limit, t.limit)
+	line := t.column(c.name, t.name, pad) + "  " + t.column(c.nominal, t.nominal, padLeft) + "  " + t.column(c.between, t.between, pad) + "  " + t.column(c.limit, t.limit, pad)
 	if t.marginWidth > 0 {
 		line += "  " + padLeft(c.margin, t.marginWidth)
 	}
@@ -162,8 +169,16 @@ func (t *table) row(f Finding) {
 	t.text.WriteString("  " + t.styled(f.Verdict, verdict) + "  " + strings.TrimRight(line, " ") + "\n")
 }
 
-// reasons stand below a finding that needs attention.
+// column fits a cell into its column.
+func (t *table) column(text string, columns int, fill func(string, int) string) string {
+	return fill(clip(text, columns, t.ellipsis()), columns)
+}
+
+// reasons stand below a finding that needs attention, and below a name that lost its end.
 func (t *table) reasons(f Finding) {
+	if c := t.cells(f); width(c.name) > t.name {
+		t.wrapped(f.ID + ", " + f.Subject)
+	}
 	switch f.Verdict {
 	case Undecided:
 		t.wrapped("needs: " + strings.Join(f.Because, ", "))
