@@ -7,9 +7,12 @@ type matrix struct {
 	n     int
 	a     []float64
 	pivot []int
+	inv   []float64 // inverses of the diagonal after the decomposition
 }
 
-func newMatrix(n int) *matrix { return &matrix{n: n, a: make([]float64, n*n), pivot: make([]int, n)} }
+func newMatrix(n int) *matrix {
+	return &matrix{n: n, a: make([]float64, n*n), pivot: make([]int, n), inv: make([]float64, n)}
+}
 
 func (m *matrix) clear() { clear(m.a) }
 
@@ -36,6 +39,7 @@ func (m *matrix) factorise() bool {
 			}
 		}
 		inverse := 1 / m.a[k*n+k]
+		m.inv[k] = inverse
 		rowK := m.a[k*n : k*n+n]
 		for i := k + 1; i < n; i++ {
 			rowI := m.a[i*n : i*n+n]
@@ -60,16 +64,17 @@ func (m *matrix) solve(b []float64) {
 	}
 	for i := 1; i < n; i++ {
 		s := b[i]
-		for j := 0; j < i; j++ {
-			s -= m.a[i*n+j] * b[j]
+		for j, v := range m.a[i*n : i*n+i] {
+			s -= v * b[j]
 		}
 		b[i] = s
 	}
 	for i := n - 1; i >= 0; i-- {
 		s := b[i]
+		row := m.a[i*n : i*n+n]
 		for j := i + 1; j < n; j++ {
-			s -= m.a[i*n+j] * b[j]
+			s -= row[j] * b[j]
 		}
-		b[i] = s / m.a[i*n+i]
+		b[i] = s * m.inv[i]
 	}
 }
