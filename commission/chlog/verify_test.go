@@ -2,11 +2,14 @@ package chlog_test
 
 import (
 	"bytes"
+	"context"
 	"encoding/json"
+	"errors"
 	"fmt"
 	"os"
 	"path/filepath"
 	"strings"
+	"sync/atomic"
 	"testing"
 	"time"
 
@@ -224,4 +227,151 @@ func TestVerifySaysWhatTheTableSays(t *testing.T) {
 			t.Errorf("Marshal = %s, %v", b, err)
 		}
 	})
+}
+
+// What stands beside a good log can be bad in its own ways: a sentence and exit 1 for each, never a panic.
+func TestVerifyOfBadSignaturesBesideAGoodLog(t *testing.T) {
+	key, other := chlogtest.Key(t), chlogtest.Key(t)
+	path := chlogtest.Sealed(t, record.SiteMode, key)
+	good := string(read(t, path+".sig"))
+	foreign, err := other.Sign([]byte("another file"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	for name, c := range map[string]struct{ text, says string }{
+		"trailing text":     {good + "approved\n", "text after -----END SSH SIGNATURE-----"},
+		"leading text":      {"approved\n" + good, "does not begin with"},
+		"empty":             {"", "does not begin with"},
+		"cut":               {good[:100], "no line -----END"},
+		"of another file":   {foreign, "it is not for these bytes"},
+		"another namespace": {string(read(t, "../signing/testdata/message.namespace.sig")), `for namespace "git", not "chargehand"`},
+	} {
+		t.Run(name, func(t *testing.T) {
+			write(t, path+".sig", []byte(c.text))
+			wantReport(t, chlog.Verifier{Now: now}.File(path), chlog.BadSignature, 1, "intact chain to record 7, but wagtail.chlog.sig does not hold", c.says)
+		})
+	}
+	write(t, path+".sig", []byte(good))
+	if _, err := chlog.SignFile(path, other); err != nil {
+		t.Fatal(err)
+	}
+	list := allow(t, "tech@example.org "+key.AuthorizedKey(), `surveyor@example.org valid-before="20261215Z" `+other.AuthorizedKey())
+	wantReport(t, chlog.Verifier{Signers: list, Now: now}.File(path), chlog.NotPermitted, 1, "wagtail.chlog.2.sig", "today, since a detached signature carries no time")
+}
+
+func TestVerifyOfSignOffs(t *testing.T) {
+	key, other := chlogtest.Key(t), chlogtest.Key(t)
+	v := chlog.Verifier{Now: now}
+	t.Run("a witness without a key", func(t *testing.T) {
+		w := chlogtest.Begin(t, record.SiteMode, key)
+		chlogtest.Append(t, w, record.Person{ID: "p2", Name: "B. Example", Role: "witness"})
+		if _, err := w.SignOff("p2", "charge.curve", nil, ""); err != chlog.ErrUnsigned {
+			t.Errorf("SignOff without a key or a reason = %v, want ErrUnsigned", err)
+		}
+		if _, err := w.SignOff("p2", "charge.curve", nil, "no key at hand"); err != nil {
+			t.Fatal(err)
+		}
+		if _, err := w.SignOff("p1", "charge.curve", other, ""); err == nil {
+			t.Error("SignOff with another key than the person's = nil, want an error")
+		}
+		if _, err := w.SignOff("p7", "charge.curve", key, ""); err == nil {
+			t.Error("SignOff by nobody = nil, want an error")
+		}
+		if _, err := w.Seal("p1", "pass", nil, "key left at home"); err != nil {
+			t.Fatal(err)
+		}
+		wantReport(t, v.File(w.Path()), chlog.SealUnsigned, 1, "intact to the seal at record 4, which nobody's key signed (key left at home); signed nowhere")
+		if _, err := chlog.SignFile(w.Path(), key); err != nil {
+			t.Fatal(err)
+		}
+		r := v.File(w.Path())
+		wantReport(t, r, chlog.Consistent, 0)
+		if len(r.Notes) != 2 || r.Notes[0] != "record 3: p2 B. Example did not sign: no key at hand" {
+			t.Errorf("Notes = %q, want both that are not signed", r.Notes)
+		}
+	})
+	t.Run("another key in a person's name", func(t *testing.T) {
+		w := chlogtest.Begin(t, record.SiteMode, key)
+		if _, err := w.AppendSigned(func(seq int64, head string, at time.Time) (record.Body, error) {
+			text, err := chlog.Statement{Log: chlogtest.ID, Mode: record.SiteMode, Act: chlog.ActSignOff, Point: "charge.curve", Record: seq, Head: head, At: chlog.FormatTime(at),
+				Person: record.Person{ID: "p1", Name: "A. Example", Role: "technician"}}.Text()
+			if err != nil {
+				return nil, err
+			}
+			signature, err := other.Sign([]byte(text))
+			return record.SignOff{Person: "p1", Point: "charge.curve", Statement: text, Signature: signature}, err
+		}); err != nil {
+			t.Fatal(err)
+		}
+		wantReport(t, v.File(w.Path()), chlog.OtherHistory, 1, "signature at record 2", "p1 is entered with key "+key.Fingerprint()+", and another key signed")
+	})
+	t.Run("a name with a line of its own", func(t *testing.T) {
+		w := chlogtest.Begin(t, record.SiteMode, key)
+		chlogtest.Append(t, w, record.Person{ID: "p2", Name: "B.\nact: seal", Role: "witness"})
+		if _, err := w.SignOff("p2", "charge.curve", nil, "no key"); err == nil {
+			t.Error("SignOff by a person with a line feed in the name = nil, want an error")
+		}
+	})
+	t.Run("a log that is not finished", func(t *testing.T) {
+		w := chlogtest.Begin(t, record.SiteMode, key)
+		if _, err := chlog.SignFile(w.Path(), key); err == nil || !strings.Contains(err.Error(), "without a seal") {
+			t.Errorf("SignFile of an open log = %v, want a NotSealedError", err)
+		}
+		wantReport(t, v.File(w.Path()), chlog.Unsealed, 1, "intact to 1; signed nowhere; cannot tell what followed")
+	})
+}
+
+func TestVerifyManyAtOnce(t *testing.T) {
+	key := chlogtest.Key(t)
+	var paths []string
+	for i := range 12 {
+		path := chlogtest.Sealed(t, record.SiteMode, key)
+		b := read(t, path)
+		if i == 7 {
+			b[len(b)/2] ^= 1
+		}
+		write(t, path, b)
+		paths = append(paths, path)
+	}
+	paths = append(paths, filepath.Join(t.TempDir(), "none.chlog"), t.TempDir())
+	var done, total atomic.Int64
+	v := chlog.Verifier{Now: now, Progress: func(d, n int64) { done.Store(max(d, done.Load())); total.Store(n) }}
+	reports := v.Verify(t.Context(), paths)
+	for i, r := range reports {
+		want := 0
+		switch {
+		case i == 7:
+			want = 1
+		case i >= 12:
+			want = 2
+		}
+		if r.File != paths[i] || r.Exit != want {
+			t.Errorf("report %d = %s, exit %d, want %d", i, r, r.Exit, want)
+		}
+	}
+	if chlog.Worst(reports) != 2 || chlog.Worst(reports[:12]) != 1 || chlog.Worst(nil) != 0 {
+		t.Errorf("Worst = %d, want 2", chlog.Worst(reports))
+	}
+	if done.Load() > total.Load() || total.Load() == 0 {
+		t.Errorf("progress told of %d of %d bytes", done.Load(), total.Load())
+	}
+	ended, cancel := context.WithCancel(t.Context())
+	cancel()
+	if r := v.Verify(ended, paths[:1])[0]; r.Outcome != chlog.Unreadable || !errors.Is(r.Err(), context.Canceled) {
+		t.Errorf("Verify after cancel = %s, want unreadable", r)
+	}
+}
+
+func TestReadFileGivesTheIntactLines(t *testing.T) {
+	path := chlogtest.Sealed(t, record.SiteMode, chlogtest.Key(t))
+	all, err := chlog.ReadFile(path)
+	if err != nil || len(all) != 8 {
+		t.Fatalf("ReadFile = %d lines, %v, want 8", len(all), err)
+	}
+	b := read(t, path)
+	write(t, path, b[:len(b)-4])
+	all, err = chlog.ReadFile(path)
+	if damage, ok := errors.AsType[*chlog.DamageError](err); !ok || damage.Record != 7 || len(all) != 7 {
+		t.Errorf("ReadFile of a torn log = %d lines, %v, want 7 and the damage", len(all), err)
+	}
 }

@@ -56,50 +56,6 @@ type Writer struct {
 	began     time.Duration
 }
 
-// Acknowledged is what is certainly on disk.
-type Acknowledged struct {
-	Path  string
-	Lines int64
-	Bytes int64
-	Head  string // SHA-256 of the last line
-}
-
-// WriteError says that a log can take nothing more, and what of it is safe.
-type WriteError struct {
-	Safe Acknowledged
-	Do   string // "write", "sync"
-	Err  error
-}
-
-func (e *WriteError) Error() string {
-	return fmt.Sprintf("%s %s: %v; nothing more is taken; certainly on disk are records 0 to %d (%d bytes)",
-		e.Do, filepath.Base(e.Safe.Path), e.Err, e.Safe.Lines-1, e.Safe.Bytes)
-}
-
-// Unwrap gives the system's error.
-func (e *WriteError) Unwrap() error { return e.Err }
-
-// InUseError says that somebody else writes this log.
-type InUseError struct{ Path string }
-
-func (e *InUseError) Error() string {
-	return fmt.Sprintf("another chargehand is writing %s; close it, or choose another log", filepath.Base(e.Path))
-}
-
-// RefusedError says that one record cannot be written as it is. The log is unharmed and takes the next.
-type RefusedError struct {
-	Kind string
-	Why  string
-}
-
-func (e *RefusedError) Error() string { return fmt.Sprintf("record %q refused: %s", e.Kind, e.Why) }
-
-// ErrSealed says that a log has ended; what is to be added needs a new log with "continues".
-var ErrSealed = errors.New("the log is sealed; a supplement is a new log that continues it")
-
-// ErrClosed says that the writer has been closed.
-var ErrClosed = errors.New("the log is closed")
-
 // NewID makes a log's identity: 32 random lower-case hexadecimal digits.
 func NewID() string {
 	var b [16]byte
@@ -259,15 +215,18 @@ func (w *Writer) append(body record.Body, at time.Time) (Line, error) {
 	if raw.replaced {
 		return Line{}, &RefusedError{body.Kind(), "its text is not UTF-8"}
 	}
-	known, err := record.Decode(body.Kind(), text)
-	if err != nil {
-		return Line{}, &RefusedError{body.Kind(), err.Error()}
+	if w.notes(body) {
+		read, err := record.Decode(body.Kind(), text)
+		if err != nil {
+			return Line{}, &RefusedError{body.Kind(), err.Error()}
+		}
+		body = read
 	}
 	if err := w.write(line); err != nil {
 		return Line{}, err
 	}
 	l := Line{Seq: w.seq, At: raw.time, Kind: body.Kind(), Prev: w.head, Body: text}
-	w.take(known, line)
+	w.take(body, line)
 	if w.options.Recorded != nil {
 		w.options.Recorded(l)
 	}
@@ -289,6 +248,19 @@ func (w *Writer) write(line []byte) error {
 		return w.failed
 	}
 	return nil
+}
+
+// notes tells whether take wants the body as a reader would see it: those kinds that it notes, and those of a known kind that
+// come as bare JSON.
+func (w *Writer) notes(body record.Body) bool {
+	if _, bare := body.(record.Other); bare {
+		return record.Known(body.Kind())
+	}
+	switch body.Kind() {
+	case "opened", "person", "file", "seal", "finding":
+		return true
+	}
+	return false
 }
 
 // take notes a line that is on disk.

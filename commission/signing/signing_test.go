@@ -27,8 +27,8 @@ func read(t testing.TB, name string) string {
 	return string(b)
 }
 
-// private copies a test key to where only the test can read it.
-func private(t testing.TB, name string) string {
+// privateFile copies a test key to where only the test can read it.
+func privateFile(t testing.TB, name string) string {
 	t.Helper()
 	path := filepath.Join(t.TempDir(), name)
 	if err := os.WriteFile(path, []byte(read(t, name)), 0o600); err != nil {
@@ -39,7 +39,7 @@ func private(t testing.TB, name string) string {
 
 func load(t testing.TB, name string) signing.Key {
 	t.Helper()
-	k, err := signing.Load(private(t, name), nil)
+	k, err := signing.Load(privateFile(t, name), nil)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -168,7 +168,7 @@ func TestEverySingleByteOfASignatureCounts(t *testing.T) {
 }
 
 func TestLoadAsksForThePassphrase(t *testing.T) {
-	path := private(t, "locked")
+	path := privateFile(t, "locked")
 	asked := 0
 	answer := func(word string) func(string) ([]byte, error) {
 		return func(string) ([]byte, error) { asked++; return []byte(word), nil }
