@@ -3,6 +3,7 @@ package droop
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"chargehand/commission/finding"
 	"chargehand/commission/quantity"
@@ -42,6 +43,20 @@ func wish(s site.Site, p planned) (Wish, finding.Missing) {
 func AdviceFinding(s site.Site) finding.Finding { return adviceFinding(s, plan(s)) }
 
 func adviceFinding(s site.Site, p planned) finding.Finding {
+	f := adviceJudged(s)
+	if f.Verdict != finding.Fail {
+		return f
+	}
+	if w, missing := wish(s, p); len(missing) == 0 && f.Value.Nominal > *f.Limit.High {
+		f.Remedy, f.Changes = relax(s, w, Advise(w))
+	} else {
+		f.Remedy, f.Changes = settle(s)
+	}
+	return f
+}
+
+func adviceJudged(s site.Site) finding.Finding {
+	p := plan(s)
 	f := finding.Finding{ID: "droop.advice", Title: "Least droop voltage at rated current that meets all limits", Unit: "V",
 		Basis: "ΔV_min = 2e·(1 − w_min)⁄share_tolerance; V_lo + ΔV ≤ V_set ≤ V_hi − ΔV; " + ownDerivation}
 	w, missing := wish(s, p)
@@ -50,6 +65,7 @@ func adviceFinding(s site.Site, p planned) finding.Finding {
 	}
 	a := Advise(w)
 	if w.ShareTolerance == 0 && len(w.Rated) > 1 {
+		f.Limit = finding.AtMost(float64(a.Greatest))
 		return f.Without(finding.Fail, "load.share_tolerance 0 % asks for a droop without bounds")
 	}
 	f = f.Judged(finding.Exactly(float64(a.Least)), finding.AtMost(float64(a.Greatest)), 0)
@@ -59,14 +75,12 @@ func adviceFinding(s site.Site, p planned) finding.Finding {
 		f.Verdict = finding.Fail
 		f.Because = append(f.Because, fmt.Sprintf("load.share_tolerance %s and the window exclude each other: sharing needs %.5g V of droop, the window leaves %.5g V, %.5g V too little",
 			remedy.Figure(float64(w.ShareTolerance), "1"), float64(a.Least), float64(a.Greatest), float64(a.Least-a.Greatest)))
-		f.Remedy, f.Changes = relax(s, w, a)
 		return f
 	}
 	outside := outsiders(s, p, a)
 	if len(outside) > 0 {
 		f.Verdict = finding.Fail
 		f.Because = append(f.Because, outside...)
-		f.Remedy, f.Changes = settle(s)
 	}
 	return f
 }
@@ -88,20 +102,28 @@ func adviceParts(s site.Site, p planned, a Advice) []finding.Part {
 // no reason.
 func outsiders(s site.Site, p planned, a Advice) []string {
 	var because []string
-	for k, source := range p.sources {
-		name, dV := s.Infeeds[k].Name, quantity.Voltage(source.slope()*float64(source.Rated))
-		slack := 1e-9 * source.NoLoad
-		if dV < a.Least-slack {
-			because = append(because, fmt.Sprintf("%s: droop of %.5g V at rated current, %.5g V needed for sharing", name, float64(dV), float64(a.Least)))
-		}
-		if low := a.Lowest + dV; source.NoLoad < low-slack {
-			because = append(because, fmt.Sprintf("%s: setpoint %.5g V is %.4g V too low for its droop", name, float64(source.NoLoad), float64(low-source.NoLoad)))
-		}
-		if high := a.Highest - dV; source.NoLoad > high+slack {
-			because = append(because, fmt.Sprintf("%s: setpoint %.5g V is %.4g V too high for its droop", name, float64(source.NoLoad), float64(source.NoLoad-high)))
+	for k := range p.sources {
+		if why := outside(p, k, a); why != "" {
+			because = append(because, s.Infeeds[k].Name+": "+why)
 		}
 	}
 	return because
+}
+
+// outside says why the pair of one infeed lies outside; "" where it lies inside.
+func outside(p planned, k int, a Advice) string {
+	source := p.sources[k]
+	dV, slack := quantity.Voltage(source.slope()*float64(source.Rated)), 1e-9*source.NoLoad
+	low, high := a.Lowest+dV, a.Highest-dV
+	switch {
+	case dV < a.Least-slack:
+		return fmt.Sprintf("droop of %.5g V at rated current, %.5g V needed for sharing", float64(dV), float64(a.Least))
+	case source.NoLoad < low-slack:
+		return fmt.Sprintf("setpoint %.5g V is %.4g V too low for its droop", float64(source.NoLoad), float64(low-source.NoLoad))
+	case source.NoLoad > high+slack:
+		return fmt.Sprintf("setpoint %.5g V is %.4g V too high for its droop", float64(source.NoLoad), float64(source.NoLoad-high))
+	}
+	return ""
 }
 
 func adviceWorking(s site.Site, p planned, w Wish, a Advice) *finding.Explanation {
@@ -132,16 +154,53 @@ func adviceWorking(s site.Site, p planned, w Wish, a Advice) *finding.Explanatio
 	return e.Done()
 }
 
-// settle is the advice as a remedy: a common setpoint in the middle of its interval and the droop of each infeed. A
-// setpoint error in per cent grows with the setpoint, so the advice is taken again until it stands.
+// settle is the advice as a remedy: where only setpoints lie outside, the nearest ones that lie inside; else a common
+// setpoint in the middle of its interval and the least droop of each infeed.
 func settle(s site.Site) (string, []finding.Change) {
-	changes := settled(s)
+	changes := nearestSetpoints(s)
+	if changes == nil {
+		changes = settled(s)
+	}
 	if changes == nil {
 		return "", nil
 	}
 	return "set " + remedy.Phrase(changes), changes
 }
 
+// nearestSetpoints moves each setpoint that lies outside to the nearest end of its interval, where that settles it.
+func nearestSetpoints(s site.Site) []finding.Change {
+	var changes []finding.Change
+	for k, infeed := range s.Infeeds {
+		change := finding.Change{Key: "infeed.setpoint", Subject: infeed.Name, Unit: "V", Was: float64(infeed.Setpoint.Nominal)}
+		settles := func(v float64) bool {
+			change.Value = v
+			changed, err := remedy.Apply(s, append(changes[:len(changes):len(changes)], change)...)
+			if err != nil {
+				return false
+			}
+			p := plan(changed)
+			w, missing := wish(changed, p)
+			return len(missing) == 0 && outside(p, k, Advise(w)) == ""
+		}
+		if settles(change.Was) {
+			continue
+		}
+		w, _ := wish(s, plan(s))
+		a := Advise(w)
+		value, ok := remedy.Least(change.Was, float64(a.Lowest+a.Highest)/2, settles)
+		if !ok {
+			return nil
+		}
+		change.Value = value
+		changes = append(changes, change)
+	}
+	if changed, err := remedy.Apply(s, changes...); err != nil || adviceJudged(changed).Verdict != finding.Pass {
+		return nil
+	}
+	return changes
+}
+
+// settled takes the advice until it stands: a setpoint error in per cent grows with the setpoint.
 func settled(s site.Site) []finding.Change {
 	var changes []finding.Change
 	original, _, _ := Sources(s)
@@ -156,10 +215,8 @@ func settled(s site.Site) []finding.Change {
 			return nil
 		}
 		a := Advise(w)
-		if len(changes) > 0 && a.Feasible && len(outsiders(changed, p, a)) == 0 {
-			return changes
-		}
-		changes = changes[:0]
+		before := changes
+		changes = nil
 		setpoint := math.Round(float64(a.SetpointLow+a.SetpointHigh)/2*10) / 10
 		for k, infeed := range s.Infeeds {
 			droop := math.Ceil((float64(a.Droop[k])-float64(p.sources[k].Cable))*1e6) / 1e6
@@ -169,6 +226,9 @@ func settled(s site.Site) []finding.Change {
 			changes = append(changes,
 				finding.Change{Key: "infeed.setpoint", Subject: infeed.Name, Unit: "V", Was: float64(infeed.Setpoint.Nominal), Value: setpoint},
 				finding.Change{Key: "infeed.droop", Subject: infeed.Name, Unit: "V/A", Was: float64(original[k].Droop), Value: droop})
+		}
+		if slices.Equal(before, changes) && a.Feasible && len(outsiders(changed, p, a)) == 0 {
+			return changes
 		}
 	}
 	return nil
@@ -183,11 +243,16 @@ func relax(s site.Site, w Wish, a Advice) (string, []finding.Change) {
 	}
 	tolerance := finding.Change{Key: "load.share_tolerance", Unit: "1", Was: float64(w.ShareTolerance)}
 	exact, exactChanges := exacter(s, w)
-	value, ok := remedy.Least(tolerance.Was, 1, func(x float64) bool {
+	settles := func(x float64) bool {
 		tolerance.Value = x
 		changed, err := remedy.Apply(s, tolerance)
 		return err == nil && settled(changed) != nil
-	})
+	}
+	limit := math.Max(tolerance.Was, 1e-3)
+	for limit < 1 && !settles(limit) { // not at once to 100 %: there the cables alone may drop more than the advice
+		limit = math.Min(1, limit*1.1)
+	}
+	value, ok := remedy.Least(tolerance.Was, limit, settles)
 	if !ok {
 		return exact, exactChanges
 	}
@@ -215,10 +280,15 @@ func exacter(s site.Site, w Wish) (string, []finding.Change) {
 		}
 		return changes
 	}
-	e, ok := remedy.Least(float64(w.SetpointError), 0, func(e float64) bool {
+	settles := func(e float64) bool {
 		changed, err := remedy.Apply(s, errors(e)...)
 		return err == nil && settled(changed) != nil
-	})
+	}
+	limit := float64(w.SetpointError)
+	for limit > 1e-3*float64(w.SetpointError) && !settles(limit) {
+		limit *= 0.9
+	}
+	e, ok := remedy.Least(float64(w.SetpointError), limit, settles)
 	if !ok {
 		return "", nil
 	}

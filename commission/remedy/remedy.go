@@ -6,12 +6,10 @@ package remedy
 import (
 	"fmt"
 	"math"
-	"slices"
 	"strconv"
 	"strings"
 
 	"chargehand/commission/finding"
-	"chargehand/commission/quantity"
 	"chargehand/commission/site"
 )
 
@@ -62,21 +60,6 @@ func AwayFrom(from, value float64) float64 {
 	return round(value/scale) * scale
 }
 
-// Apply gives a copy of the site with the changes put in; the site handed in is not touched. It fails for a key that no
-// remedy changes, and for an infeed or instrument that the site does not have.
-func Apply(s site.Site, changes ...finding.Change) (site.Site, error) {
-	for _, c := range changes {
-		set, known := setters[c.Key]
-		if !known {
-			return s, fmt.Errorf("apply remedy: no setter for key %q", c.Key)
-		}
-		if !set(&s, c) {
-			return s, fmt.Errorf("apply remedy: the site has no %s %q to change", c.Key, c.Subject)
-		}
-	}
-	return s, nil
-}
-
 // Phrase writes changes as a person would key them in: `infeed.setpoint of "aft string" to 945.4 V (now 870 V)`.
 func Phrase(changes []finding.Change) string {
 	phrases := make([]string, len(changes))
@@ -120,121 +103,6 @@ func round7(v float64) float64 {
 		return v
 	}
 	return rounded
-}
-
-// setters put one value into a site; false where the site has no place for it.
-var setters = map[string]func(s *site.Site, c finding.Change) bool{
-	"bus.under_voltage_trip": func(s *site.Site, c finding.Change) bool {
-		s.Bus.UnderVoltageTrip = moved(s.Bus.UnderVoltageTrip, c)
-		return true
-	},
-	"bus.over_voltage_trip": func(s *site.Site, c finding.Change) bool {
-		s.Bus.OverVoltageTrip = moved(s.Bus.OverVoltageTrip, c)
-		return true
-	},
-	"bus.chopper.on": func(s *site.Site, c finding.Change) bool {
-		if s.Bus.Chopper == nil {
-			return false
-		}
-		chopper := *s.Bus.Chopper
-		chopper.On = moved(chopper.On, c)
-		s.Bus.Chopper = &chopper
-		return true
-	},
-	"source.cell_min": func(s *site.Site, c finding.Change) bool {
-		s.Source.CellMin = moved(s.Source.CellMin, c)
-		return s.Source.CellsInSeries > 0
-	},
-	"source.min_voltage": func(s *site.Site, c finding.Change) bool {
-		s.Source.MinVoltage = moved(s.Source.MinVoltage, c)
-		return s.Source.CellsInSeries == 0
-	},
-	"converter.rated_power": func(s *site.Site, c finding.Change) bool {
-		return changeConverter(s, func(v *site.Converter) { v.RatedPower = moved(v.RatedPower, c) })
-	},
-	"converter.choke": func(s *site.Site, c finding.Change) bool {
-		return changeConverter(s, func(v *site.Converter) { v.Choke = moved(v.Choke, c) })
-	},
-	"converter.filter.capacitance": func(s *site.Site, c finding.Change) bool {
-		if s.Converter == nil || s.Converter.Filter == nil {
-			return false
-		}
-		filter := *s.Converter.Filter
-		filter.Capacitance = moved(filter.Capacitance, c)
-		return changeConverter(s, func(v *site.Converter) { v.Filter = &filter })
-	},
-	"load.power": func(s *site.Site, c finding.Change) bool {
-		return changeLoad(s, func(v *site.Load) { v.Power = moved(v.Power, c) })
-	},
-	"load.regeneration": func(s *site.Site, c finding.Change) bool {
-		return changeLoad(s, func(v *site.Load) { v.Regeneration = moved(v.Regeneration, c) })
-	},
-	"load.share_tolerance": func(s *site.Site, c finding.Change) bool {
-		return changeLoad(s, func(v *site.Load) { v.ShareTolerance = moved(v.ShareTolerance, c) })
-	},
-	"infeed.setpoint": func(s *site.Site, c finding.Change) bool {
-		return changeInfeed(s, c.Subject, func(v *site.Infeed) { v.Setpoint = moved(v.Setpoint, c) })
-	},
-	"infeed.setpoint_error": func(s *site.Site, c finding.Change) bool {
-		return changeInfeed(s, c.Subject, func(v *site.Infeed) {
-			v.SetpointError = quantity.ErrorBound{Absolute: quantity.Voltage(c.Value), Text: text(c)}
-		})
-	},
-	"infeed.droop": func(s *site.Site, c finding.Change) bool {
-		return changeInfeed(s, c.Subject, func(v *site.Infeed) {
-			v.Droop = quantity.DroopSetting{PerAmpere: quantity.Droop(c.Value), Text: text(c)}
-		})
-	},
-	"instrument.accuracy.of_reading": func(s *site.Site, c finding.Change) bool {
-		i := slices.IndexFunc(s.Instruments, func(v site.Instrument) bool { return v.Name == c.Subject })
-		if i < 0 {
-			return false
-		}
-		s.Instruments = slices.Clone(s.Instruments)
-		s.Instruments[i].OfReading = quantity.Ratio(c.Value)
-		return true
-	},
-}
-
-func changeConverter(s *site.Site, change func(*site.Converter)) bool {
-	if s.Converter == nil {
-		return false
-	}
-	converter := *s.Converter
-	change(&converter)
-	s.Converter = &converter
-	return true
-}
-
-func changeLoad(s *site.Site, change func(*site.Load)) bool {
-	if s.Load == nil {
-		return false
-	}
-	load := *s.Load
-	change(&load)
-	s.Load = &load
-	return true
-}
-
-func changeInfeed(s *site.Site, name string, change func(*site.Infeed)) bool {
-	i := slices.IndexFunc(s.Infeeds, func(v site.Infeed) bool { return v.Name == name })
-	if i < 0 {
-		return false
-	}
-	s.Infeeds = slices.Clone(s.Infeeds)
-	change(&s.Infeeds[i])
-	return true
-}
-
-func text(c finding.Change) string { return strconv.FormatFloat(c.Value, 'g', -1, 64) + " " + c.Unit }
-
-// moved keeps the relative tolerance: a choke of another size is still a choke of ten per cent.
-func moved[Q quantity.Scalar](was quantity.Entered[Q], c finding.Change) quantity.Entered[Q] {
-	to := quantity.Entered[Q]{Spread: quantity.Exactly(Q(c.Value)), Text: text(c)}
-	if was.IsGiven() && was.Nominal > 0 {
-		to.Low, to.High = was.Low/was.Nominal*to.Nominal, was.High/was.Nominal*to.Nominal
-	}
-	return to
 }
 
 // Offer judges the site and, where the finding does not pass, adds the remedy that mend finds by judging other sites: its

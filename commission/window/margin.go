@@ -120,7 +120,7 @@ func raiseBus(s site.Site, by float64) (string, []finding.Change) {
 		if short := want - own.values.Low; short > 0 {
 			was := float64(k.Setpoint.Nominal)
 			changes = append(changes, finding.Change{Key: "infeed.setpoint", Subject: k.Name, Unit: "V", Was: was,
-				Value: remedy.AwayFrom(was, was+short)})
+				Value: beyond(was, was+short)})
 		}
 	}
 	text := "raise the lowest bus voltage by " + fmt.Sprintf("%.4g V", by) + ": set " + remedy.Phrase(changes)

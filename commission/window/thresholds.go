@@ -105,7 +105,7 @@ func mendLadder(s site.Site, sourceHigh, busLow, busHigh float64) (string, []fin
 	var text string
 	move := func(key string, was, to float64) float64 {
 		if was != to {
-			to = remedy.AwayFrom(was, to)
+			to = beyond(was, to)
 			changes = append(changes, finding.Change{Key: key, Unit: "V", Was: was, Value: to})
 		}
 		return to
@@ -117,7 +117,10 @@ func mendLadder(s site.Site, sourceHigh, busLow, busHigh float64) (string, []fin
 		move("bus.under_voltage_trip", under, math.Min(math.Max(under, lowest), highest))
 	default:
 		text = fmt.Sprintf("source-high %.5g V and bus-low %.5g V exclude each other: a trip between them needs %.4g V more; ", sourceHigh, busLow, lowest-highest)
-		moved := move("bus.under_voltage_trip", under, lowest)
+		moved := under
+		if under < lowest { // a trip above it may stay: only the bus has to rise
+			moved = move("bus.under_voltage_trip", under, lowest)
+		}
 		_, lift := raiseBus(s, moved-highest)
 		changes = append(changes, lift...)
 		busHigh = busHighWith(s, lift, busHigh)
@@ -135,6 +138,10 @@ func mendLadder(s site.Site, sourceHigh, busLow, busHigh float64) (string, []fin
 	}
 	return text + "set " + remedy.Phrase(changes), changes
 }
+
+// beyond rounds a value away from what it was, by at least a part in 10⁹, so that a gap that is met exactly is not lost to
+// rounding.
+func beyond(was, to float64) float64 { return remedy.AwayFrom(was, to+(to-was)*1e-9) }
 
 func busHighWith(s site.Site, changes []finding.Change, otherwise float64) float64 {
 	changed, err := remedy.Apply(s, changes...)
