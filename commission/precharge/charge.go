@@ -55,8 +55,8 @@ func (p *path) closes() ([]corner.Axis, []corner.Spread) {
 	axes[axisError] = corner.Axis{Name: "measurement errors", Low: -float64(p.errors), High: float64(p.errors)}
 	return axes[:], corner.OverAll(axes[:], closeResults, func(x, out []float64) {
 		c := p.circuit(x)
-		_, how := c.Settled()
-		out[ofGap], out[ofHiccup] = float64(c.Remaining()), 0
+		_, remaining, how := c.rest()
+		out[ofGap], out[ofHiccup] = float64(remaining), 0
 		if how == Hiccups {
 			out[ofHiccup] = 1
 		}
@@ -69,8 +69,7 @@ func (p *path) closes() ([]corner.Axis, []corner.Spread) {
 // if that never comes. The auxiliary supply adds to the energy, not to the shape. Without a time-out a charge that never
 // closes has no energy: NaN.
 func (p *path) heat(c Circuit) Heat {
-	on := c.TimeToClose(p.difference)
-	energy := c.EnergyToClose(p.difference)
+	on, energy := c.close(p.difference, true)
 	if math.IsInf(float64(on), 1) {
 		on = p.timeout()
 		energy = quantity.Energy(math.NaN())

@@ -84,26 +84,27 @@ func (c Circuit) PeakPower() quantity.Power {
 // Settled is the link voltage at which the charge stays when the bypass never closes, and how. Where the auxiliary supply
 // hiccups it is the upper level. With a supercapacitor under load nothing stays: it is the highest voltage reached.
 func (c Circuit) Settled() (quantity.Voltage, Settling) {
-	if c.isCoupled() {
-		o := c.draw(0, -1)
-		return quantity.Voltage(o.settled), o.how
-	}
-	v, how := c.solve().settle()
-	return quantity.Voltage(v), how
+	settled, _, how := c.rest()
+	return settled, how
 }
 
 // Remaining is the difference between source and link when the charge has settled; a supercapacitor has sagged by then.
 func (c Circuit) Remaining() quantity.Voltage {
+	_, remaining, _ := c.rest()
+	return remaining
+}
+
+func (c Circuit) rest() (settled, remaining quantity.Voltage, how Settling) {
 	if c.isCoupled() {
 		o := c.draw(0, -1)
-		return quantity.Voltage(o.source - o.settled)
+		return quantity.Voltage(o.settled), quantity.Voltage(o.source - o.settled), o.how
 	}
 	s := c.solve()
+	v, how := s.settle()
 	if c.Source > 0 {
-		return c.DiodeDrop
+		return quantity.Voltage(v), c.DiodeDrop, how
 	}
-	v, _ := s.settle()
-	return quantity.Voltage(s.e - v)
+	return quantity.Voltage(v), quantity.Voltage(s.e - v), how
 }
 
 // TimeTo is the time until the link has reached v: 0 when it is there already, infinite when it never comes.
@@ -113,38 +114,45 @@ func (c Circuit) TimeTo(v quantity.Voltage) quantity.Seconds {
 
 // TimeToClose is the time until source and link differ by no more than difference; infinite when that never comes.
 func (c Circuit) TimeToClose(difference quantity.Voltage) quantity.Seconds {
-	s := c.solve()
-	gap := float64(difference)
-	switch {
-	case s.e-s.v0 <= gap:
-		return 0
-	case c.isCoupled():
-		return quantity.Seconds(c.draw(gap, -1).closedAt)
-	case c.Source > 0:
-		drop := float64(c.DiodeDrop)
-		if gap <= drop {
-			return quantity.Seconds(math.Inf(1))
-		}
-		return quantity.Seconds(s.tau * math.Log((s.es-s.v0)/(gap-drop)))
-	}
-	return quantity.Seconds(s.timeTo(s.e - gap))
+	t, _ := c.close(difference, false)
+	return t
 }
 
 // EnergyToClose is the energy in the resistor until source and link differ by no more than difference; infinite when that
 // never comes.
 func (c Circuit) EnergyToClose(difference quantity.Voltage) quantity.Energy {
-	t := float64(c.TimeToClose(difference))
-	if math.IsInf(t, 1) {
-		return quantity.Energy(t)
-	}
+	_, w := c.close(difference, true)
+	return w
+}
+
+// close is the time until the bypass may close and, where asked for, the energy until then.
+func (c Circuit) close(difference quantity.Voltage, energy bool) (quantity.Seconds, quantity.Energy) {
 	s := c.solve()
+	gap, drop := float64(difference), float64(c.DiodeDrop)
+	target := s.e - gap
+	var t float64
 	switch {
+	case s.e-s.v0 <= gap:
+		return 0, 0
 	case c.isCoupled():
-		return quantity.Energy(c.draw(float64(difference), -1).energy)
-	case c.Source > 0 || !s.isLoadedBelow(s.e-float64(difference)):
-		return quantity.Energy(s.unloadedEnergy(t))
+		o := c.draw(gap, -1)
+		return quantity.Seconds(o.closedAt), quantity.Energy(o.energy)
+	case c.Source > 0 && gap <= drop:
+		t = math.Inf(1)
+	case c.Source > 0:
+		t = s.tau * math.Log((s.es-s.v0)/(gap-drop))
+	default:
+		t = s.timeTo(target)
 	}
-	return quantity.Energy(s.energyTo(s.e - float64(difference)))
+	switch {
+	case !energy:
+		return quantity.Seconds(t), 0
+	case math.IsInf(t, 1):
+		return quantity.Seconds(t), quantity.Energy(t)
+	case c.Source > 0 || !s.isLoadedBelow(target):
+		return quantity.Seconds(t), quantity.Energy(s.unloadedEnergy(t))
+	}
+	return quantity.Seconds(t), quantity.Energy(s.energyTo(target))
 }
 
 // EnergyUntil is the energy in the resistor until t with the bypass open. While the auxiliary supply hiccups it is an

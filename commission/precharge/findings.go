@@ -334,9 +334,9 @@ func Remaining(s site.Site) (remaining quantity.Spread[quantity.Voltage], hiccup
 	axes[axisEMF] = corner.Axis{Name: "rest voltage", Low: float64(s.Source.LowestRest()), Nominal: highest, High: highest}
 	gap := corner.Over(axes[:], func(x []float64) float64 {
 		c := p.circuit(x)
-		_, how := c.Settled()
+		_, remaining, how := c.rest()
 		hiccups = hiccups || how == Hiccups
-		return float64(c.Remaining())
+		return float64(remaining)
 	})
 	return quantity.Spread[quantity.Voltage]{Low: quantity.Voltage(gap.Low), Nominal: quantity.Voltage(gap.Nominal), High: quantity.Voltage(gap.High)}, hiccups
 }

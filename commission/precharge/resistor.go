@@ -47,6 +47,13 @@ func (c choice) inCorners(r float64) hardest {
 	}
 }
 
+// isCertain tells whether the worst corners are known: among corners that never close, or stand nothing or everything,
+// none is worse than another.
+func (c choice) isCertain() bool {
+	withstand := c.a.charge[ofWithstand].Low
+	return !math.IsInf(c.a.closing[ofTimeToClose].High, 1) && withstand > 0 && !math.IsInf(withstand, 1)
+}
+
 // overAll takes all corners again.
 func (c choice) overAll(r float64) hardest {
 	b := assess(withResistance(c.a.site, r), false)
@@ -148,13 +155,10 @@ func between(low, high float64) float64 {
 // else both; or which of them exclude each other and by how much.
 func (a *assessment) remedyResistor(f finding.Finding) finding.Finding {
 	c := a.choice()
-	for _, way := range []func(finding.Finding) (finding.Finding, bool){c.otherTimeout, c.otherResistor, c.both} {
-		if g, ok := way(f); ok && a.passesWith(f.ID, g.Changes) {
-			return g
-		}
+	if !c.isCertain() {
+		c.at = c.overAll
 	}
-	c.at = c.overAll
-	for _, way := range []func(finding.Finding) (finding.Finding, bool){c.otherResistor, c.both} {
+	for _, way := range []func(finding.Finding) (finding.Finding, bool){c.otherTimeout, c.otherResistor, c.both} {
 		if g, ok := way(f); ok && a.passesWith(f.ID, g.Changes) {
 			return g
 		}

@@ -5,14 +5,15 @@ import (
 	"math"
 	"testing"
 
+	"chargehand/commission/precharge/workedtest"
 	"chargehand/commission/quantity"
 )
 
-func (c publicCase) rating(t *testing.T) Rating {
+func ratingIn(t *testing.T, c workedtest.Case) Rating {
 	t.Helper()
-	r := Rating{Power: quantity.Power(c.in(t, "p_rated_W")), FullTo: quantity.Temperature(c.in(t, "t1_C")),
-		ZeroAt: quantity.Temperature(c.in(t, "t2_C")), Multiple: c.in(t, "sto_k"), OverloadTime: quantity.Seconds(c.in(t, "sto_t_s"))}
-	if single := c.in(t, "e_single_J"); single > 0 {
+	r := Rating{Power: quantity.Power(c.In(t, "p_rated_W")), FullTo: quantity.Temperature(c.In(t, "t1_C")),
+		ZeroAt: quantity.Temperature(c.In(t, "t2_C")), Multiple: c.In(t, "sto_k"), OverloadTime: quantity.Seconds(c.In(t, "sto_t_s"))}
+	if single := c.In(t, "e_single_J"); single > 0 {
 		// An energy that is permitted however short the pulse is the limit of a curve with one very short point.
 		r.Pulses = []Pulse{{Duration: 1e-9, Energy: quantity.Energy(single)}}
 	}
@@ -28,25 +29,25 @@ func (c publicCase) rating(t *testing.T) Rating {
 	return r
 }
 
-func (c publicCase) heat(t *testing.T) Heat {
+func heatIn(t *testing.T, c workedtest.Case) Heat {
 	t.Helper()
-	on := quantity.Seconds(c.in(t, "t_on_s"))
+	on := quantity.Seconds(c.In(t, "t_on_s"))
 	if on == 0 {
-		on = quantity.Seconds(40 * c.in(t, "tau_s"))
+		on = quantity.Seconds(40 * c.In(t, "tau_s"))
 	}
-	steady := quantity.Current(c.in(t, "i_inf_A"))
-	return Heat{quantity.Resistance(c.in(t, "r_pre_ohm")), steady, quantity.Current(c.in(t, "i0_A")) - steady,
-		quantity.Seconds(c.in(t, "tau_s")), on, 1}
+	steady := quantity.Current(c.In(t, "i_inf_A"))
+	return Heat{quantity.Resistance(c.In(t, "r_pre_ohm")), steady, quantity.Current(c.In(t, "i0_A")) - steady,
+		quantity.Seconds(c.In(t, "tau_s")), on, 1}
 }
 
 func TestRatingOnPublicPulseCases(t *testing.T) {
-	for _, c := range publicCases(t, "resistor_pulse") {
-		rating, heat := c.rating(t), c.heat(t)
-		peak := quantity.Power(c.in(t, "r_pre_ohm") * math.Pow(c.in(t, "i0_A"), 2))
-		from := quantity.Temperature(c.in(t, "t_amb_C"))
+	for _, c := range workedtest.Cases(t, "resistor_pulse") {
+		rating, heat := ratingIn(t, c), heatIn(t, c)
+		peak := quantity.Power(c.In(t, "r_pre_ohm") * math.Pow(c.In(t, "i0_A"), 2))
+		from := quantity.Temperature(c.In(t, "t_amb_C"))
 		duration := PulseTime(heat.TimeConstant, heat.Energy(), peak)
 		permitted := rating.Permissible(duration, from)
-		c.compare(t, map[string]float64{
+		c.Compare(t, map[string]float64{
 			"temp_factor": float64(rating.Factor(from)), "p_peak_W": float64(peak), "e_pulse_J": float64(heat.Energy()),
 			"pulse_t_s": float64(duration), "p_perm_W": float64(permitted),
 			"e_perm_J": float64(permitted) * float64(duration), "utilisation": float64(peak / permitted),
@@ -55,15 +56,15 @@ func TestRatingOnPublicPulseCases(t *testing.T) {
 }
 
 func TestBodyOnPublicSeries(t *testing.T) {
-	for _, c := range publicCases(t, "resistor_attempts") {
-		heat, period := c.heat(t), quantity.Seconds(c.in(t, "period_s"))
-		body := Body{quantity.Thermal(c.in(t, "r_th_K_W")), quantity.Seconds(c.in(t, "tau_th_s"))}
-		ambient := c.in(t, "t_amb_C")
+	for _, c := range workedtest.Cases(t, "resistor_attempts") {
+		heat, period := heatIn(t, c), quantity.Seconds(c.In(t, "period_s"))
+		body := Body{quantity.Thermal(c.In(t, "r_th_K_W")), quantity.Seconds(c.In(t, "tau_th_s"))}
+		ambient := c.In(t, "t_amb_C")
 		steady := body.SteadyStart(heat, period)
-		factor := c.rating(t).Factor(quantity.Temperature(ambient))
-		thermal := float64(body.LeastPeriod(heat, quantity.Difference(c.in(t, "t_max_C")-ambient)))
-		mean := float64(heat.Energy()) / float64(factor) / c.in(t, "p_rated_W")
-		c.compare(t, map[string]float64{
+		factor := ratingIn(t, c).Factor(quantity.Temperature(ambient))
+		thermal := float64(body.LeastPeriod(heat, quantity.Difference(c.In(t, "t_max_C")-ambient)))
+		mean := float64(heat.Energy()) / float64(factor) / c.In(t, "p_rated_W")
+		c.Compare(t, map[string]float64{
 			"e_pulse_J": float64(heat.Energy()), "t_ss_start_C": ambient + float64(steady),
 			"t_ss_peak_C": ambient + float64(body.Peak(heat, steady)), "p_avg_W": float64(heat.Energy()) / float64(period),
 			"period_min_thermal_s": thermal, "period_min_avg_s": mean, "period_min_s": math.Max(thermal, mean),
@@ -84,24 +85,24 @@ func TestBodyOnPublicSeries(t *testing.T) {
 }
 
 func TestWithstandOnPublicFaults(t *testing.T) {
-	for _, c := range publicCases(t, "resistor_fault") {
-		rating := c.rating(t)
-		current := c.in(t, "emf_V") / (c.in(t, "r_pre_ohm") + c.in(t, "r_series_ohm"))
-		power := quantity.Power(c.in(t, "r_pre_ohm") * current * current)
-		start := quantity.Temperature(c.in(t, "t_start_C"))
+	for _, c := range workedtest.Cases(t, "resistor_fault") {
+		rating := ratingIn(t, c)
+		current := c.In(t, "emf_V") / (c.In(t, "r_pre_ohm") + c.In(t, "r_series_ohm"))
+		power := quantity.Power(c.In(t, "r_pre_ohm") * current * current)
+		start := quantity.Temperature(c.In(t, "t_start_C"))
 		pulse := float64(rating.Withstand(power, start))
 		got := map[string]float64{"i_fault_A": current, "p_fault_W": float64(power), "t_withstand_pulse_s": pulse, "t_withstand_s": pulse}
-		if thermal := c.in(t, "r_th_K_W"); thermal > 0 {
-			body := Body{quantity.Thermal(thermal), quantity.Seconds(c.in(t, "tau_th_s"))}
-			ambient := c.in(t, "t_amb_C")
+		if thermal := c.In(t, "r_th_K_W"); thermal > 0 {
+			body := Body{quantity.Thermal(thermal), quantity.Seconds(c.In(t, "tau_th_s"))}
+			ambient := c.In(t, "t_amb_C")
 			rise := quantity.Difference(float64(start) - ambient)
-			byHeat := float64(body.Withstand(power, rise, quantity.Difference(c.in(t, "t_max_C")-ambient)))
+			byHeat := float64(body.Withstand(power, rise, quantity.Difference(c.In(t, "t_max_C")-ambient)))
 			got["t_withstand_thermal_s"] = byHeat
 			got["t_withstand_s"] = math.Min(pulse, byHeat)
-			steady := Heat{Resistor: quantity.Resistance(c.in(t, "r_pre_ohm")), Steady: quantity.Current(current), TimeConstant: 1, On: 1e9, Scale: 1}
-			got["t_at_timeout_C"] = ambient + float64(body.Rise(steady, rise, quantity.Seconds(c.in(t, "t_timeout_s"))))
+			steady := Heat{Resistor: quantity.Resistance(c.In(t, "r_pre_ohm")), Steady: quantity.Current(current), TimeConstant: 1, On: 1e9, Scale: 1}
+			got["t_at_timeout_C"] = ambient + float64(body.Rise(steady, rise, quantity.Seconds(c.In(t, "t_timeout_s"))))
 		}
-		got["window_lo_s"] = aboveSlowestCharge * c.in(t, "t_charge_max_s")
+		got["window_lo_s"] = aboveSlowestCharge * c.In(t, "t_charge_max_s")
 		got["window_hi_s"] = got["t_withstand_s"] / belowLeastWithstand
 		exists := got["window_lo_s"] < got["window_hi_s"]
 		if want := string(c.Expected["window_exists"]) == "true"; exists != want {
@@ -110,10 +111,10 @@ func TestWithstandOnPublicFaults(t *testing.T) {
 		if exists {
 			got["timeout_rec_s"] = math.Sqrt(got["window_lo_s"] * got["window_hi_s"])
 		}
-		if out := c.in(t, "t_timeout_s"); out > 0 {
+		if out := c.In(t, "t_timeout_s"); out > 0 {
 			got["fault_utilisation"] = out / got["t_withstand_s"]
 		}
-		c.compare(t, got, "window_exists", "timeout_ok", "timeout_rec_s")
+		c.Compare(t, got, "window_exists", "timeout_ok", "timeout_rec_s")
 	}
 }
 

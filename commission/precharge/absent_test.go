@@ -1,0 +1,138 @@
+package precharge
+
+import (
+	"slices"
+	"strings"
+	"testing"
+
+	"chargehand/commission/corner/cornertest"
+	"chargehand/commission/finding"
+	"chargehand/commission/quantity"
+	"chargehand/commission/site"
+)
+
+// What is taken away, which findings are undecided then and by which key; all others stay decided.
+func TestFindingsNameTheKeysThatAreMissing(t *testing.T) {
+	all := []string{"time-constant", "final-voltage", "stall", "time-to-close", "peak-current", "peak-power", "energy", "pulse",
+		"repeat", "wait", "shorted-bus", "timeout", "breaking"}
+	released := []string{"stall", "time-to-close", "wait", "timeout"}
+	for _, c := range []struct {
+		key       string
+		take      func(*site.Site)
+		undecided []string
+	}{
+		{"converter.choke_resistance", func(s *site.Site) { s.Converter = nil }, all},
+		{"converter.phases", func(s *site.Site) { v := *s.Converter; v.Phases = 0; s.Converter = &v }, all},
+		{"source.measurement_error", func(s *site.Site) { s.Source.MeasurementError = quantity.ErrorBound{} }, released},
+		{"bus.measurement_error", func(s *site.Site) { s.Bus.MeasurementError = quantity.ErrorBound{} }, released},
+		{"bus.auxiliary.stops_at", func(s *site.Site) {
+			v := *s.Bus.Auxiliary
+			v.StopsAt = quantity.Entered[quantity.Voltage]{}
+			s.Bus.Auxiliary = &v
+		}, slices.DeleteFunc(slices.Clone(all), func(id string) bool { return strings.HasPrefix(id, "peak") || id == "breaking" })},
+		{"precharge.rated_power", func(s *site.Site) { s.Precharge.RatedPower = quantity.Entered[quantity.Power]{} },
+			[]string{"pulse", "wait", "shorted-bus", "timeout"}},
+		{"precharge.derating", func(s *site.Site) { s.Precharge.Derating = nil }, []string{"pulse", "wait", "shorted-bus", "timeout"}},
+		{"precharge.ambient", func(s *site.Site) { s.Precharge.Ambient = quantity.Entered[quantity.Temperature]{} },
+			[]string{"pulse", "repeat", "wait", "shorted-bus", "timeout"}},
+		{"precharge.pulse", func(s *site.Site) { s.Precharge.Pulse, s.Precharge.Overload = nil, nil }, []string{"pulse", "shorted-bus", "timeout"}},
+		{"precharge.thermal", func(s *site.Site) { s.Precharge.Thermal = nil }, []string{"shorted-bus", "timeout"}},
+		{"precharge.attempts", func(s *site.Site) { s.Precharge.Attempts = 0 }, []string{"repeat", "shorted-bus", "timeout"}},
+		{"precharge.interval", func(s *site.Site) { s.Precharge.Interval = quantity.Entered[quantity.Seconds]{} },
+			[]string{"repeat", "wait", "shorted-bus", "timeout"}},
+		{"precharge.timeout", func(s *site.Site) { s.Precharge.Timeout = quantity.Entered[quantity.Seconds]{} }, []string{"shorted-bus", "timeout"}},
+		{"precharge.contactor", func(s *site.Site) { s.Precharge.Contactor = nil }, []string{"breaking"}},
+		{"a bleeder, which may be absent", func(s *site.Site) { s.Bus.Bleeders = nil }, nil},
+		{"the auxiliary supply, which may be absent", func(s *site.Site) { s.Bus.Auxiliary = nil }, nil},
+		{"the filter, which may be absent", func(s *site.Site) { v := *s.Converter; v.Filter = nil; s.Converter = &v }, nil},
+		{"the overload, beside a pulse curve", func(s *site.Site) { s.Precharge.Overload = nil }, nil},
+	} {
+		s := load(t, "wagtail")
+		c.take(&s)
+		for _, f := range Findings(s) {
+			id := strings.TrimPrefix(f.ID, "precharge.")
+			want := slices.Contains(c.undecided, id)
+			if got := f.Verdict == finding.Undecided; got != want {
+				t.Errorf("without %s: %s undecided = %v (%v), want %v", c.key, f.ID, got, f.Because, want)
+			}
+			if want && !slices.Contains(f.Because, c.key) {
+				t.Errorf("without %s: %s because = %v, want the key", c.key, f.ID, f.Because)
+			}
+		}
+	}
+}
+
+// One attempt starts at ambient, so it needs no thermal model.
+func TestShortedBusOfOneAttemptNeedsNoThermalModel(t *testing.T) {
+	s := load(t, "wagtail")
+	s.Precharge.Attempts, s.Precharge.Thermal = 1, nil
+	if f := find(t, s, "precharge.shorted-bus"); f.Verdict == finding.Undecided {
+		t.Errorf("shorted-bus of one attempt = undecided (%v), want a verdict", f.Because)
+	}
+}
+
+// Every kind of source with every optional table there or not: no panic, values in order, undecided findings name a key.
+func TestEveryKindOfSourceAndOptionalTable(t *testing.T) {
+	tables := []struct {
+		name string
+		take func(*site.Site)
+	}{
+		{"bleeder", func(s *site.Site) { s.Bus.Bleeders = nil }},
+		{"auxiliary", func(s *site.Site) { s.Bus.Auxiliary = nil }},
+		{"filter", func(s *site.Site) { v := *s.Converter; v.Filter = nil; s.Converter = &v }},
+		{"thermal", func(s *site.Site) { s.Precharge.Thermal = nil }},
+		{"pulse", func(s *site.Site) { s.Precharge.Pulse = nil }},
+		{"overload", func(s *site.Site) { s.Precharge.Overload = nil }},
+		{"contactor", func(s *site.Site) { s.Precharge.Contactor = nil }},
+		{"timeout", func(s *site.Site) { s.Precharge.Timeout = quantity.Entered[quantity.Seconds]{} }},
+	}
+	for _, kind := range []site.SourceKind{site.Battery, site.Supercapacitor, site.FuelCell, site.OtherSource} {
+		for mask := range 1 << len(tables) {
+			if kind != site.Battery && mask >= 16 {
+				continue // what lies behind the first four does not know the kind of source
+			}
+			s := load(t, "wagtail")
+			s.Source.Kind = kind
+			if kind == site.Supercapacitor {
+				set(&s.Source.Capacitance, 14)
+			}
+			name := string(kind) + " without"
+			for i, table := range tables {
+				if mask>>i&1 == 1 {
+					table.take(&s)
+					name += " " + table.name
+				}
+			}
+			cornertest.AreOrdered(t, name, judged(s))
+			if mask >= 8 { // the tables behind the first three do not enter a prediction
+				continue
+			}
+			p := Predict(s, quantity.Exactly(s.Source.HighestRest()), 0)
+			if len(p.Missing) > 0 || len(p.Band) == 0 {
+				t.Errorf("%s: Predict lacks %v and has %d points, want a band", name, p.Missing, len(p.Band))
+			}
+		}
+	}
+}
+
+// With tolerances on everything that may have one the corners still hold every draw.
+func TestCornersHoldWithTolerancesOnEverything(t *testing.T) {
+	s := load(t, "wagtail")
+	loose := func(q float64, by float64) (low, high float64) { return q * (1 - by), q * (1 + by) }
+	auxiliary, thermal, converter := *s.Bus.Auxiliary, *s.Precharge.Thermal, *s.Converter
+	for _, e := range []*quantity.Entered[quantity.Voltage]{&auxiliary.StartsAt, &auxiliary.StopsAt} {
+		l, h := loose(float64(e.Nominal), 0.05)
+		e.Low, e.High = quantity.Voltage(l), quantity.Voltage(h)
+	}
+	l, h := loose(float64(auxiliary.Power.Nominal), 0.3)
+	auxiliary.Power.Low, auxiliary.Power.High = quantity.Power(l), quantity.Power(h)
+	l, h = loose(float64(thermal.Resistance.Nominal), 0.2)
+	thermal.Resistance.Low, thermal.Resistance.High = quantity.Thermal(l), quantity.Thermal(h)
+	l, h = loose(float64(thermal.TimeConstant.Nominal), 0.2)
+	thermal.TimeConstant.Low, thermal.TimeConstant.High = quantity.Seconds(l), quantity.Seconds(h)
+	l, h = loose(float64(converter.ChokeResistance.Nominal), 0.5)
+	converter.ChokeResistance.Low, converter.ChokeResistance.High = quantity.Resistance(l), quantity.Resistance(h)
+	s.Precharge.Ambient.Low, s.Precharge.Ambient.High = 20, 60
+	s.Bus.Auxiliary, s.Precharge.Thermal, s.Converter = &auxiliary, &thermal, &converter
+	cornertest.Holds(t, s, judged, 1000)
+}
