@@ -1,0 +1,244 @@
+package closing
+
+import (
+	"math"
+	"slices"
+	"strings"
+	"testing"
+
+	"chargehand/commission/corner/cornertest"
+	"chargehand/commission/finding"
+	"chargehand/commission/quantity"
+	"chargehand/commission/site"
+)
+
+func set[Q quantity.Scalar](e *quantity.Entered[Q], v float64) {
+	e.Spread, e.Text = quantity.Exactly(Q(v)), "typed"
+}
+
+func find(t *testing.T, s site.Site, id, subject string) finding.Finding {
+	t.Helper()
+	for _, f := range Findings(s) {
+		if f.ID == id && f.Subject == subject {
+			return f
+		}
+	}
+	t.Fatalf("no finding %s %s", id, subject)
+	return finding.Finding{}
+}
+
+func withBypass(s site.Site, making float64) site.Site {
+	b := *s.Bypass
+	set(&b.MakingCurrent, making)
+	s.Bypass = &b
+	return s
+}
+
+func withConverter(s site.Site, change func(*site.Converter)) site.Site {
+	c := *s.Converter
+	if c.Filter != nil {
+		f := *c.Filter
+		c.Filter = &f
+	}
+	change(&c)
+	s.Converter = &c
+	return s
+}
+
+// put puts one change of a remedy into a copy of the site.
+func put(t *testing.T, s site.Site, c finding.Change) site.Site {
+	t.Helper()
+	switch c.Key {
+	case keyDifference:
+		set(&s.Precharge.ClosingDifference, c.Value)
+	case "bypass.making_current":
+		return withBypass(s, c.Value)
+	case "precharge.minimum_time":
+		set(&s.Precharge.MinimumTime, c.Value)
+	case "source.fuse.pre_arcing_i2t":
+		f := *s.Source.Fuse
+		set(&f.PreArcingI2t, c.Value)
+		s.Source.Fuse = &f
+	default:
+		t.Fatalf("remedy changes %s, which no finding of this family asks for", c.Key)
+	}
+	return s
+}
+
+// Each remedy is put into the site and passes; where it is one value, one per cent less of the change does not.
+func TestRemediesPassAndLessDoesNot(t *testing.T) {
+	fused := func(s site.Site, i2t float64) site.Site {
+		f := *s.Source.Fuse
+		set(&f.PreArcingI2t, i2t)
+		s.Source.Fuse = &f
+		return s
+	}
+	differing := func(s site.Site, v float64) site.Site {
+		set(&s.Precharge.ClosingDifference, v)
+		return s
+	}
+	whole := load(t, "wagtail")
+	short := whole
+	set(&short.Precharge.MinimumTime, 0.2)
+	for _, c := range []struct {
+		name, id string
+		site     site.Site
+		key      string
+	}{
+		{"bypass too weak, smaller difference helps", "closing.inrush", withBypass(whole, 230), keyDifference},
+		{"bypass too weak for any difference", "closing.inrush", withBypass(whole, 100), "bypass.making_current"},
+		{"fuse too small, smaller difference helps", "closing.i2t", fused(whole, 110), keyDifference},
+		{"fuse too small for any difference", "closing.i2t", fused(whole, 10), "source.fuse.pre_arcing_i2t"},
+		{"difference too small", "closing.threshold", differing(whole, 12), keyDifference},
+		{"difference too large", "closing.threshold", differing(whole, 300), keyDifference},
+		{"no window", "closing.threshold", withBypass(whole, 100), "bypass.making_current"},
+		{"dwell too short", "closing.live-bus", short, "precharge.minimum_time"},
+	} {
+		f := find(t, c.site, c.id, "")
+		if f.Verdict == finding.Pass || len(f.Changes) == 0 || f.Changes[0].Key != c.key {
+			t.Errorf("%s: %s = %s, remedy %q, want a change of %s", c.name, c.id, f.Verdict, f.Remedy, c.key)
+			continue
+		}
+		mended := c.site
+		for _, change := range f.Changes {
+			mended = put(t, mended, change)
+		}
+		if g := find(t, mended, c.id, ""); g.Verdict != finding.Pass {
+			t.Errorf("%s: with %q %s = %s (%v), want pass", c.name, f.Remedy, c.id, g.Verdict, g.Because)
+		}
+		less := f.Changes[0]
+		less.Value -= 0.01 * (less.Value - less.Was)
+		if g := find(t, put(t, c.site, less), c.id, ""); g.Verdict == finding.Pass {
+			t.Errorf("%s: one per cent less than %q passes too", c.name, f.Remedy)
+		}
+	}
+}
+
+// Where a third of the inrush exceeds the saturation, the value stays and the verdict uses the bound with the source
+// inductance alone, which is never above u⁄R.
+func TestSaturatedChokesAreJudgedByTheUpperBound(t *testing.T) {
+	s := load(t, "wagtail")
+	s.Converter.Filter = nil // whose own loop is the larger one otherwise
+	linear := find(t, s, "closing.inrush", "")
+	saturating := withConverter(s, func(c *site.Converter) { set(&c.ChokeSaturation, 40) })
+	f := find(t, saturating, "closing.inrush", "")
+	if f.Value != linear.Value {
+		t.Errorf("value with chokes that saturate = %v, want it unchanged, %v", f.Value, linear.Value)
+	}
+	if len(f.Parts) == 0 || !(f.Parts[0].Value.High > 2*f.Value.High) {
+		t.Fatalf("parts = %v, want an upper bound well above %v", f.Parts, f.Value.High)
+	}
+	u := float64(Step(s).High)
+	if bound, most := f.Parts[0].Value.High, u/(0.062*0.85+0.001); bound > most {
+		t.Errorf("upper bound = %v A, want at most u⁄R = %v A", bound, most)
+	}
+	between := (f.Value.High + f.Parts[0].Value.High) / 2
+	if g := find(t, withBypass(saturating, between), "closing.inrush", ""); g.Verdict != finding.Fail {
+		t.Errorf("verdict between value and bound = %s, want fail", g.Verdict)
+	}
+	if g := find(t, withBypass(s, between), "closing.inrush", ""); g.Verdict != finding.Pass {
+		t.Errorf("verdict of the same bypass without saturation = %s, want pass", g.Verdict)
+	}
+}
+
+// A filter before the bypass is charged by the source switch: a second inrush without a limit, and no longer in the bypass's
+// loops. E·√(C⁄L)·e^(−α·t_p) by hand for 821.7 V, 64 mΩ, 6.04 µH, 0.8 mF.
+func TestFilterBeforeTheBypass(t *testing.T) {
+	s := withConverter(load(t, "wagtail"), func(c *site.Converter) { c.Filter.Position = site.AtSource })
+	f := find(t, s, "closing.inrush", "filter")
+	l, c, r := 6.04e-6, 0.8e-3, 0.064
+	alpha := r / (2 * l)
+	omega := math.Sqrt(1/(l*c) - alpha*alpha)
+	want := 821.7 * math.Sqrt(c/l) * math.Exp(-alpha*math.Atan2(omega, alpha)/omega)
+	if math.Abs(f.Value.Nominal-want) > 1e-6*want || f.Verdict != finding.Info {
+		t.Errorf("closing.inrush filter = %v A, %s, want %v A, info", f.Value.Nominal, f.Verdict, want)
+	}
+	if g := find(t, s, "closing.live-bus", ""); g.Verdict != finding.Info || g.State != finding.None {
+		t.Errorf("closing.live-bus = %s, %s, want info and no value: nothing behind the resistor to charge", g.Verdict, g.State)
+	}
+	bare := withConverter(load(t, "wagtail"), func(c *site.Converter) { c.Filter = nil })
+	if got, want := find(t, s, "closing.i2t", "").Value, find(t, bare, "closing.i2t", "").Value; got != want {
+		t.Errorf("closing.i2t with the filter before the bypass = %v, want as without, %v", got, want)
+	}
+}
+
+func TestWhetherTheFuseClears(t *testing.T) {
+	whole := load(t, "wagtail") // I²t 39,900 … 57,109 … 79,362 A²s by the expected findings
+	for i2t, want := range map[float64][3]float64{30_000: {1, 1, 1}, 50_000: {0, 1, 1}, 70_000: {0, 0, 1}, 90_000: {0, 0, 0}} {
+		s := whole
+		f := *s.Source.Fuse
+		set(&f.PreArcingI2t, i2t)
+		s.Source.Fuse = &f
+		got := find(t, s, "closing.without-precharge", "").Parts[1]
+		if v := [3]float64{got.Value.Low, got.Value.Nominal, got.Value.High}; v != want || got.Name != "fuse clears it" {
+			t.Errorf("%s at %v A²s = %v, want %v", got.Name, i2t, v, want)
+		}
+	}
+}
+
+func TestStepHoldsBothErrors(t *testing.T) {
+	// 25 V, 0.5 % of 821.7 V and 0.5 % of 1000 V.
+	want := quantity.Spread[quantity.Voltage]{Low: 25 - 9.1085, Nominal: 25, High: 34.1085}
+	got := Step(load(t, "wagtail"))
+	for _, d := range []quantity.Voltage{got.Low - want.Low, got.Nominal - want.Nominal, got.High - want.High} {
+		if math.Abs(float64(d)) > 1e-9 {
+			t.Fatalf("Step = %v, want %v", got, want)
+		}
+	}
+}
+
+func TestFindingsNameTheKeysThatAreMissing(t *testing.T) {
+	loops := []string{"inrush", "i2t", "overshoot", "threshold", "without-precharge"}
+	for _, c := range []struct {
+		key       string
+		take      func(*site.Site)
+		undecided []string
+	}{
+		{"source.inductance", func(s *site.Site) { s.Source.Inductance = quantity.Entered[quantity.Inductance]{} }, loops},
+		{"converter.choke", func(s *site.Site) {
+			*s = withConverter(*s, func(c *site.Converter) { c.Choke = quantity.Entered[quantity.Inductance]{} })
+		}, loops},
+		{"converter.phases", func(s *site.Site) { s.Converter = nil }, loops},
+		{"converter.choke_saturation", func(s *site.Site) {
+			*s = withConverter(*s, func(c *site.Converter) { c.ChokeSaturation = quantity.Entered[quantity.Current]{} })
+		}, []string{"inrush"}},
+		{"converter.filter.esr", func(s *site.Site) {
+			*s = withConverter(*s, func(c *site.Converter) { c.Filter.ESR = quantity.Entered[quantity.Resistance]{} })
+		}, []string{"inrush", "threshold", "without-precharge"}},
+		{"bypass.making_current", func(s *site.Site) { s.Bypass = nil }, []string{"inrush", "threshold"}},
+		{"source.fuse.pre_arcing_i2t", func(s *site.Site) { s.Source.Fuse = nil }, []string{"i2t"}},
+		{"bus.measurement_error", func(s *site.Site) { s.Bus.MeasurementError = quantity.ErrorBound{} }, []string{"inrush", "i2t", "overshoot", "threshold"}},
+		{"precharge.compares", func(s *site.Site) { s.Precharge.Compares = "" }, []string{"live-bus"}},
+		{"precharge.minimum_time", func(s *site.Site) { s.Precharge.MinimumTime = quantity.Entered[quantity.Seconds]{} }, []string{"live-bus"}},
+		{"a bleeder, which may be absent", func(s *site.Site) { s.Bus.Bleeders = nil }, nil},
+	} {
+		s := load(t, "wagtail")
+		c.take(&s)
+		for _, f := range Findings(s) {
+			want := slices.Contains(c.undecided, strings.TrimPrefix(f.ID, "closing."))
+			if got := f.Verdict == finding.Undecided; got != want || want && !slices.Contains(f.Because, c.key) {
+				t.Errorf("without %s: %s = %s (%v), want undecided = %v by that key", c.key, f.ID, f.Verdict, f.Because, want)
+			}
+		}
+	}
+}
+
+// Values without the parts that may be 0: no choke resistance, no source inductance, no internal resistance.
+func TestFindingsWithNothingInTheLoop(t *testing.T) {
+	for _, change := range []func(*site.Site){
+		func(s *site.Site) { set(&s.Source.Inductance, 0) },
+		func(s *site.Site) { set(&s.Source.InternalResistance, 0) },
+		func(s *site.Site) {
+			*s = withConverter(*s, func(c *site.Converter) { set(&c.ChokeResistance, 0); set(&c.Filter.ESL, 0); set(&c.Filter.ESR, 0) })
+			set(&s.Source.Inductance, 0)
+		},
+		func(s *site.Site) {
+			*s = withConverter(*s, func(c *site.Converter) { set(&c.ChokeResistance, 0) })
+			set(&s.Source.InternalResistance, 0)
+		},
+	} {
+		s := load(t, "wagtail")
+		change(&s)
+		cornertest.AreOrdered(t, "bare loop", Findings(s))
+	}
+}

@@ -1,0 +1,170 @@
+package discharge
+
+import (
+	"math"
+	"math/rand/v2"
+	"slices"
+	"strings"
+	"testing"
+
+	"chargehand/commission/corner/cornertest"
+	"chargehand/commission/finding"
+	"chargehand/commission/quantity"
+	"chargehand/commission/site"
+)
+
+func set[Q quantity.Scalar](e *quantity.Entered[Q], v float64) {
+	e.Spread, e.Text = quantity.Exactly(Q(v)), "typed"
+}
+
+func touchSafe(t *testing.T, s site.Site) finding.Finding {
+	t.Helper()
+	for _, f := range Findings(s) {
+		if f.ID == "discharge.touch-safe" {
+			return f
+		}
+	}
+	t.Fatal("no finding discharge.touch-safe")
+	return finding.Finding{}
+}
+
+// The bleeder that the remedy names passes, one per cent more does not; without any it starts from none.
+func TestBleederOfTheRemedyPassesAndMoreDoesNot(t *testing.T) {
+	for _, name := range []string{"wagtail", "ouzel", "nightjar"} {
+		s := load(t, name)
+		f := touchSafe(t, s)
+		if len(f.Changes) != 1 || f.Changes[0].Key != "bus.bleeder" {
+			t.Fatalf("%s: remedy = %q, want a bleeder", name, f.Remedy)
+		}
+		bleeding := func(r float64) site.Site {
+			was := quantity.Spread[quantity.Resistance]{Low: 1, Nominal: 1, High: 1}
+			if len(s.Bus.Bleeders) > 0 {
+				was = s.Bus.Bleeders[0].Value.Spread
+			}
+			b := site.Bleeder{Name: "new"}
+			scale := quantity.Resistance(r) / was.Nominal
+			b.Value = quantity.Entered[quantity.Resistance]{Spread: quantity.Spread[quantity.Resistance]{Low: was.Low * scale, Nominal: quantity.Resistance(r), High: was.High * scale}, Text: "typed"}
+			changed := s
+			changed.Bus.Bleeders = []site.Bleeder{b}
+			return changed
+		}
+		if g := touchSafe(t, bleeding(f.Changes[0].Value)); g.Verdict != finding.Pass {
+			t.Errorf("%s: with %q = %s, want pass", name, f.Remedy, g.Verdict)
+		}
+		if g := touchSafe(t, bleeding(f.Changes[0].Value*1.01)); g.Verdict == finding.Pass {
+			t.Errorf("%s: one per cent more than %q passes too", name, f.Remedy)
+		}
+	}
+}
+
+func TestLabelRoundsUp(t *testing.T) {
+	for slowest, want := range map[quantity.Seconds]quantity.Seconds{4.2: 5, 60: 60, 60.1: 120, 987.6: 17 * 60} {
+		if got := Label(slowest); got != want {
+			t.Errorf("Label(%v) = %v, want %v", slowest, got, want)
+		}
+	}
+	if f := touchSafe(t, load(t, "wagtail")); !strings.Contains(f.Remedy, "waiting time of 17 min") {
+		t.Errorf("remedy = %q, want the label's 17 min for 987.6 s", f.Remedy)
+	}
+}
+
+func TestFindingsNameTheKeysThatAreMissing(t *testing.T) {
+	for _, c := range []struct {
+		key       string
+		take      func(*site.Site)
+		undecided []string
+	}{
+		{"bus.touch_safe", func(s *site.Site) { s.Bus.TouchSafe = nil }, []string{"discharge.touch-safe"}},
+		{"bus.touch_safe.within", func(s *site.Site) {
+			v := *s.Bus.TouchSafe
+			v.Within = quantity.Entered[quantity.Seconds]{}
+			s.Bus.TouchSafe = &v
+		}, []string{"discharge.touch-safe"}},
+		{"setpoints, where the nominal voltage stands in", func(s *site.Site) { s.Infeeds = nil }, nil},
+		{"a bleeder, which may be absent", func(s *site.Site) { s.Bus.Bleeders = nil }, nil},
+		{"the converter, whose filter may be absent", func(s *site.Site) { s.Converter = nil }, nil},
+	} {
+		s := load(t, "wagtail")
+		c.take(&s)
+		for _, f := range Findings(s) {
+			want := slices.Contains(c.undecided, f.ID)
+			if got := f.Verdict == finding.Undecided; got != want || want && !slices.Contains(f.Because, c.key) {
+				t.Errorf("without %s: %s = %s (%v), want undecided = %v by that key", c.key, f.ID, f.Verdict, f.Because, want)
+			}
+		}
+		cornertest.AreOrdered(t, "without "+c.key, Findings(s))
+	}
+}
+
+// An isolated bank hangs on the bus again when it is discharged; a filter before the bypass stays with the source.
+func TestWhatDischarges(t *testing.T) {
+	s := load(t, "wagtail")
+	whole := touchSafe(t, s).Value
+	isolated := s
+	isolated.Bus.Capacitances = slices.Clone(s.Bus.Capacitances)
+	isolated.Bus.Capacitances[2].Isolated = true
+	if got := touchSafe(t, isolated).Value; got != whole {
+		t.Errorf("time with an isolated bank = %v, want as without, %v", got, whole)
+	}
+	bare, before := s, s
+	c, d := *s.Converter, *s.Converter
+	f := *s.Converter.Filter
+	f.Position = site.AtSource
+	c.Filter, d.Filter = nil, &f
+	bare.Converter, before.Converter = &c, &d
+	if got, want := touchSafe(t, before).Value, touchSafe(t, bare).Value; got != want {
+		t.Errorf("time with the filter before the bypass = %v, want as without, %v", got, want)
+	}
+	if got, with := touchSafe(t, bare).Value, whole; got.High >= with.High {
+		t.Errorf("time without the filter = %v, want less than with, %v", got.High, with.High)
+	}
+}
+
+// Any site inside the tolerances discharges inside the band, from any of the voltages, supply on or off.
+func TestBandHoldsEveryDischarge(t *testing.T) {
+	for _, name := range []string{"wagtail", "ouzel"} {
+		s := load(t, name)
+		v0 := quantity.Spread[quantity.Voltage]{Low: 860, Nominal: 870, High: 880}
+		p := Predict(s, v0)
+		if len(p.Missing) > 0 || len(p.Band) == 0 {
+			t.Fatalf("%s: Predict lacks %v, want a band", name, p.Missing)
+		}
+		if last := p.Band[len(p.Band)-1].Bus; math.Abs(float64(last.High-60)) > 1e-6 {
+			t.Errorf("%s: band ends at %v, want the touch-safe 60 V in the slowest corner", name, last.High)
+		}
+		random := rand.New(rand.NewPCG(3, 3))
+		for range 300 {
+			drawn := cornertest.Draw(s, random, 0.5)
+			axes := predictionAxes(drawn, v0)
+			x := make([]float64, len(axes))
+			for i, a := range axes {
+				x[i] = a.Low + random.Float64()*(a.High-a.Low)
+			}
+			bus, from := cornerBus(x)
+			for _, point := range p.Band {
+				v := bus.VoltageAt(from, quantity.Seconds(point.At.Seconds()))
+				if v < point.Bus.Low-1e-6 || v > point.Bus.High+1e-6 {
+					t.Fatalf("%s: bus at %v = %v, want inside %v … %v", name, point.At, v, point.Bus.Low, point.Bus.High)
+				}
+			}
+		}
+	}
+}
+
+func TestPredictionWithoutAPathStaysFlat(t *testing.T) {
+	p := Predict(load(t, "nightjar"), quantity.Exactly(quantity.Voltage(700)))
+	if !math.IsInf(float64(p.TimeToTouchSafe.Nominal), 1) || !math.IsInf(float64(p.TimeConstant.Low), 1) {
+		t.Errorf("times without a path = %v, %v, want never", p.TimeToTouchSafe, p.TimeConstant)
+	}
+	if last := p.Band[len(p.Band)-1].Bus; last.Low != 700 || last.High != 700 {
+		t.Errorf("band without a path ends at %v, want 700 V still", last)
+	}
+}
+
+func TestPredictionNamesWhatItLacks(t *testing.T) {
+	s := load(t, "wagtail")
+	s.Bus.TouchSafe = nil
+	if p := Predict(s, quantity.Exactly(quantity.Voltage(900))); !slices.Contains(p.Missing, "bus.touch_safe.voltage") || p.Band != nil {
+		t.Errorf("Predict without a touch-safe voltage lacks %v, want bus.touch_safe.voltage and no band", p.Missing)
+	}
+}
