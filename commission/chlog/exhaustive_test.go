@@ -82,7 +82,7 @@ func TestEverySingleByteIsVouchedFor(t *testing.T) {
 	}
 	h.everywhere(func(i int) {
 		changed := bytes.Clone(whole)
-		for _, c := range values(whole[i]) {
+		for _, c := range replacements(whole[i]) {
 			changed[i] = c
 			h.try(fmt.Sprintf("change to %#02x", c), i, changed)
 		}
@@ -92,7 +92,7 @@ func TestEverySingleByteIsVouchedFor(t *testing.T) {
 			h.try("swap", i-1, changed)
 		}
 		longer := append(append(bytes.Clone(whole[:i]), 0), whole[i:]...)
-		for _, c := range values(whole[i]) {
+		for _, c := range insertions() {
 			longer[i] = c
 			h.try(fmt.Sprintf("insertion of %#02x", c), i, longer)
 		}
@@ -105,21 +105,26 @@ func TestEverySingleByteIsVouchedFor(t *testing.T) {
 	t.Logf("%d altered logs of %d bytes, all found", h.tried.Load(), len(whole))
 }
 
-// values are the bytes to put in the place of c and before it: each that differs in one bit, and some that mean something to
-// JSON; with the tag "peer", which CI sets, every byte there is (about 1.1 million altered logs).
-func values(c byte) []byte {
-	if everyValue {
-		all := make([]byte, 256)
-		for i := range all {
-			all[i] = byte(i)
-		}
-		return all
-	}
-	some := []byte("\n\"0 ")
+// replacements are the bytes to put in the place of c: each that differs in one bit, and those that are inserted. With the tag
+// "peer", which CI sets, every byte there is: about 1.1 million altered logs.
+func replacements(c byte) []byte {
+	some := insertions()
 	for bit := range 8 {
 		some = append(some, c^1<<bit)
 	}
 	return some
+}
+
+// insertions are the bytes to put in at each place: some that mean something to JSON; with the tag "peer", every byte.
+func insertions() []byte {
+	if !everyValue {
+		return []byte("\n\"0 ")
+	}
+	all := make([]byte, 256)
+	for i := range all {
+		all[i] = byte(i)
+	}
+	return all
 }
 
 // Lines swapped, deleted, doubled, put in, or spliced from another log of the same signer are found.

@@ -8,6 +8,7 @@ import (
 	"io"
 	"reflect"
 	"strings"
+	"sync"
 )
 
 // Other is the body of a kind that this version does not know. It is shown, kept and never judged.
@@ -146,8 +147,20 @@ type field struct {
 	of   reflect.Type
 }
 
+// fieldsByType keeps what fieldsOf has found out: by type, as every line asks again.
+var fieldsByType sync.Map // reflect.Type to map[string]field
+
 // fieldsOf gives the JSON fields of a struct by folded name; nothing for any other type.
 func fieldsOf(t reflect.Type) map[string]field {
+	if found, ok := fieldsByType.Load(t); ok {
+		return found.(map[string]field)
+	}
+	fields := readFields(t)
+	fieldsByType.Store(t, fields)
+	return fields
+}
+
+func readFields(t reflect.Type) map[string]field {
 	for t != nil && t.Kind() == reflect.Pointer {
 		t = t.Elem()
 	}
