@@ -67,9 +67,23 @@ var known = map[string]struct{ confirm, safe string }{
 
 const notKnown = "not-known"
 
-// spoilsCapture are causes that lie in the readings: the plant may be sound.
-var spoilsCapture = map[string]bool{"readings-frozen": true, "readings-slow": true, "gateway-repeats-old": true, "link-drops": true,
-	"words-swapped": true, "address-shifted": true, "answers-one-behind": true, "missing-code-read": true, "torn-words": true}
+// weight is what the first cause alone makes of a finding: faults that lie in the readings leave the plant undecided, as does
+// a bus that was not dead; a link that drops beside a good curve is marginal.
+func weight(causes []finding.Cause) finding.Verdict {
+	switch causes[0].ID {
+	case "readings-frozen", "readings-slow", "gateway-repeats-old", "words-swapped", "address-shifted", "answers-one-behind", "missing-code-read",
+		"torn-words", "sign-unsigned", "bus-live", "bus-still-charged":
+		return finding.Undecided
+	case "link-drops":
+		return finding.Marginal
+	}
+	return finding.Fail
+}
+
+// spoilsClosing are causes that make the difference across the bypass untrue, or the instant of its closing.
+var spoilsClosing = map[string]bool{"readings-frozen": true, "readings-slow": true, "gateway-repeats-old": true, "link-drops": true, "scale-tenfold": true,
+	"address-shifted": true, "sensor-gain": true, "sensor-offset": true, "contact-report-false": true, "bypass-welded": true, "precharge-welded": true,
+	"bus-live": true, "source-reversed": true, "source-opens": true, "bus-shorted-late": true}
 
 // because is one cause with its evidence.
 func because(id string, score float64, evidence ...string) finding.Cause {

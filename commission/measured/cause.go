@@ -19,10 +19,15 @@ func ranked(causes []finding.Cause) []finding.Cause {
 // pictures looks for what is no charge of the predicted kind at all, or what stands beside a good one. broken tells that
 // numbers of the curve would mean nothing.
 func (f *charge) pictures() (causes []finding.Cause, broken bool) {
-	for _, look := range []func() []finding.Cause{f.readings, f.sourceGone, f.beforeCommand, f.noRise, f.collapse, f.bridged} {
-		if found := look(); len(found) > 0 {
-			return ranked(found), true
+	for _, look := range []func() []finding.Cause{f.readings, f.sourceGone, f.beforeCommand, f.noRise, f.sourceLeft, f.standing, f.collapse, f.bridged} {
+		found := look()
+		if len(found) == 0 {
+			continue
 		}
+		if found[0].ID == "link-drops" && f.unfit() == "" { // the rest of the record carries the curve
+			return ranked(append(f.beside(), found...)), false
+		}
+		return ranked(found), true
 	}
 	return ranked(f.beside()), false
 }
@@ -48,16 +53,19 @@ func (f *charge) sourceGone() []finding.Cause {
 func (f *charge) beforeCommand() []finding.Cause {
 	scale := f.scale()
 	before := f.bus.between(math.Inf(-1), 0)
-	if !before.ok || f.v0 < 0.05*scale {
+	if !before.ok || f.v0 < math.Max(0.05*scale, f.busError) || f.isOffset() {
 		return nil
 	}
 	slope, u := drift(before)
-	falls := slope < -3*u && slope < -0.2*f.v0/(f.rb.high*f.c.high)
+	falls := slope < -3*u && slope < -0.4*f.v0/(f.rb.high*f.c.high)
 	evidence := []string{fmt.Sprintf("bus at %s before the command, source at %s", number(f.v0, "V"), number(f.emf, "V"))}
 	if u > 0 {
 		evidence = append(evidence, fmt.Sprintf("changing by %s ± %s per second", number(slope, "V"), number(2*u, "V")))
 	}
 	near := math.Abs(f.v0-f.emf) < 1.5*(f.busError+f.sourceError)+0.01*scale
+	if found := f.reportedClosed(near, evidence); found != nil {
+		return found
+	}
 	starBefore := f.star.between(math.Inf(-1), 0)
 	if starBefore.ok {
 		star := fit.Median(starBefore.v)
@@ -88,6 +96,29 @@ func (f *charge) beforeCommand() []finding.Cause {
 		return []finding.Cause{because("bus-still-charged", 0.9, evidence...), because("bus-live", 0.4, evidence...)}
 	}
 	return together(0.7, "the bus over time with the source isolated: falling it is still charged, standing it is live", evidence, "bus-live", "bus-still-charged")
+}
+
+// isOffset tells whether what the bus reads before the command is the zero error of its sensor: it stands still, and the
+// settled voltage is above the source by about as much.
+func (f *charge) isOffset() bool {
+	if f.v0 > 0.15*f.scale() || f.fit.Status != fit.OK || !(f.emf > 0) {
+		return false
+	}
+	above := f.fit.Final - f.emf + f.settledDrop(f.scale()).nominal
+	return above > 0.5*f.v0-0.5*(f.busError+f.sourceError)
+}
+
+// reportedClosed: a contact's own report before the command says through which path the bus stands at the source.
+func (f *charge) reportedClosed(near bool, evidence []string) []finding.Cause {
+	before := func(contact trace) bool { return fit.Median(contact.between(math.Inf(-1), -0.02).v) > 0.5 }
+	path := near || f.emf > f.v0 && f.emf-f.v0 < f.settledDrop(f.scale()).high+2*(f.busError+f.sourceError)
+	switch {
+	case path && before(f.precharge):
+		return []finding.Cause{because("precharge-welded", 0.93, append(evidence, "the pre-charge contactor reports closed before the command")...), because("bypass-welded", 0.3, evidence...)}
+	case path && before(f.bypass):
+		return []finding.Cause{because("bypass-welded", 0.94, append(evidence, "the bypass reports closed before the command")...), because("contact-report-false", 0.4, evidence...)}
+	}
+	return nil
 }
 
 func (f *charge) currentBefore() float64 {
@@ -214,6 +245,9 @@ func (f *charge) noiseGuess() float64 { return math.Max(f.bus.resolution, 0.001*
 // bridged: the bypass did not close when it should, as it should.
 func (f *charge) bridged() []finding.Cause {
 	allowed := float64(f.site.Precharge.ClosingDifference.Nominal) + f.busError + f.sourceError
+	if found := f.falseReport(); found != nil {
+		return found
+	}
 	if f.step.found {
 		difference := f.emf - f.step.before
 		slack := 0.25*math.Max(0, f.scale()-f.step.before)*math.Min(1, f.refresh/f.tau().low) + 3*f.noiseGuess()
@@ -226,6 +260,9 @@ func (f *charge) bridged() []finding.Cause {
 			return []finding.Cause{because("bypass-early", 0.95, evidence)}
 		}
 	}
+	if f.step.found && f.bypass.ok && f.bypass.greatest() < 0.5 && f.bus.last() > f.step.at+0.3+3*f.refresh {
+		return []finding.Cause{because("contact-report-false", 0.9, fmt.Sprintf("bus leapt by %s to the source at %s, and yet no bypass reported", number(f.step.after-f.step.before, "V"), number(f.step.at, "s")))}
+	}
 	if opened := f.opened(f.bypass); !math.IsNaN(opened) {
 		return []finding.Cause{because("bypass-drops-out", 0.9, fmt.Sprintf("bypass reported closed and open again at %s", number(opened, "s")))}
 	}
@@ -237,7 +274,7 @@ func (f *charge) neverBridged() []finding.Cause {
 	if !f.bypass.ok || !math.IsNaN(f.bypass.firstAt(0.5, 0)) || f.step.found || !(f.emf > 0) || f.fit.Status != fit.OK {
 		return nil
 	}
-	small := float64(f.site.Precharge.ClosingDifference.Nominal) - f.busError - f.sourceError
+	small := 0.9 * float64(f.site.Precharge.ClosingDifference.Nominal)
 	if f.emf-f.fit.Final > small {
 		return nil
 	}
@@ -251,13 +288,59 @@ func (f *charge) neverBridged() []finding.Cause {
 	return []finding.Cause{because("bypass-never", 0.92, evidence)}
 }
 
+// falseReport: the bypass reports closed while the voltage across it is large.
+func (f *charge) falseReport() []finding.Cause {
+	at := f.bypass.firstAt(0.5, math.Inf(-1))
+	if math.IsNaN(at) || !f.source.ok {
+		return nil
+	}
+	across, what := f.star, "star point"
+	if !across.ok {
+		across, what = f.bus, "bus"
+	}
+	part := across.between(at+2*f.refresh+0.1, at+2*f.refresh+0.1+0.5*f.tau().nominal)
+	if !part.ok {
+		return nil
+	}
+	missing := f.scale() - fit.Median(part.v)
+	if missing < 0.1*f.scale()+f.busError+f.sourceError {
+		return nil
+	}
+	return []finding.Cause{because("contact-report-false", 0.93, fmt.Sprintf("bypass reports closed at %s, %s to source still %s", number(at, "s"), what, number(missing, "V")))}
+}
+
+// sourceLeft: the source's voltage breaks down in the middle of the charge.
+func (f *charge) sourceLeft() []finding.Cause {
+	if !f.source.ok || !(f.emf > 0) {
+		return nil
+	}
+	sag := 0.05*f.emf + 3*f.scale()/f.r.nominal*f.ri.high
+	if f.cSource > 0 {
+		sag += f.emf * f.c.high / f.cSource
+	}
+	for i, t := range f.source.t {
+		if t < 0.02 || i+3 >= len(f.source.t) {
+			continue
+		}
+		if fit.Median(f.source.v[i:i+4]) < f.emf-sag && f.bus.at(t) < 0.97*f.emf {
+			return []finding.Cause{because("source-opens", 0.93, fmt.Sprintf("source voltage fell from %s to %s at %s, bus at %s", number(f.emf, "V"), number(f.source.v[i], "V"), number(t, "s"), number(f.bus.at(t), "V")))}
+		}
+	}
+	return nil
+}
+
 // differences ranks what makes a smooth charge differ from its prediction.
 func (f *charge) differences() []finding.Cause {
 	var found []finding.Cause
 	found = append(found, f.loads()...)
 	if m, ok := f.ohmsOfResistor(); ok {
-		found = append(found, f.withCurrent(m)...)
-	} else {
+		haveLoad := len(found) > 0
+		for _, c := range f.withCurrent(m) {
+			if !haveLoad || c.ID == "resistor-high" || c.ID == "resistor-low" { // a load spoils the balance of charges
+				found = append(found, c)
+			}
+		}
+	} else if len(found) == 0 {
 		found = append(found, f.withoutCurrent()...)
 	}
 	if len(found) == 0 {
@@ -276,10 +359,14 @@ func (f *charge) loads() []finding.Cause {
 	if !ok {
 		return nil
 	}
-	excess := drop.value - f.dropBand().high
+	if low := f.dropBand().low; drop.value < low-drop.expanded() {
+		return f.aboveSource(drop)
+	}
+	excess := drop.value - f.dropBand().high - (f.resistanceRatio()-1)*f.settledDrop(f.scale()).high
 	if excess < drop.expanded() {
 		return nil
 	}
+	excess = drop.value - f.settledDrop(f.scale()).nominal
 	final := f.fit.Final
 	extra := excess / f.r.nominal // A at the end, beyond bleeder and auxiliary supply
 	ohms := final / extra
@@ -295,7 +382,19 @@ func (f *charge) loads() []finding.Cause {
 				because("load-left-on", 0.2, evidence...))
 		}
 	}
-	return []finding.Cause{because("load-left-on", 0.93, evidence...)}
+	return f.kindOfLoad(evidence)
+}
+
+// resistanceRatio is by how much the resistance exceeds its value on paper, at least 1: what the bus needs makes a larger
+// drop in a larger resistance. Without a current it is taken from the time constant.
+func (f *charge) resistanceRatio() float64 {
+	if f.resistance.ok && f.resistance.value > f.rp.high {
+		return f.resistance.value / f.rp.nominal
+	}
+	if r := f.unloadedTau() / f.tau().nominal; !f.resistance.ok && r > 1.15 {
+		return r
+	}
+	return 1
 }
 
 // withCurrent tells resistance and capacitance apart.
@@ -316,11 +415,7 @@ func (f *charge) withCurrent(ohms measurement) []finding.Cause {
 	var found []finding.Cause
 	switch {
 	case r > 0:
-		if rise := f.resistanceDrift(); rise > 0.06 {
-			found = append(found, because("resistor-drifts-hot", 0.9, append(evidence, fmt.Sprintf("rising by %.0f %% during the charge", 100*rise))...), because("resistor-high", 0.6, evidence...))
-		} else {
-			found = append(found, because("resistor-high", 0.93, evidence...))
-		}
+		found = append(found, because("resistor-high", 0.93, evidence...))
 	case r < 0:
 		found = append(found, because("resistor-low", 0.93, evidence...))
 	}
@@ -342,24 +437,6 @@ func outside(m measurement, b band) float64 {
 		return m.value - b.high
 	case m.value < b.low-U:
 		return m.value - b.low
-	}
-	return 0
-}
-
-// resistanceDrift is by what fraction the resistance at the end of the charge exceeds that at its start.
-func (f *charge) resistanceDrift() float64 {
-	greatest := 0.0
-	for _, r := range f.rows {
-		greatest = math.Max(greatest, r.current)
-	}
-	var x, y []float64
-	for _, r := range f.rows {
-		if r.current > math.Max(0.12*greatest, 6*f.current.resolution) {
-			x, y = append(x, r.t), append(y, (r.source-r.bus)/r.current)
-		}
-	}
-	if l := fit.Line(x, y, 0); l.Status == fit.OK && l.Slope > 4*l.SlopeSE {
-		return l.Slope * (x[len(x)-1] - x[0]) / l.At(x[0])
 	}
 	return 0
 }

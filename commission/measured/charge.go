@@ -143,12 +143,17 @@ func (f *charge) window() {
 	if f.step.found {
 		f.end = math.Min(f.end, f.step.at)
 	}
-	if at := f.bypass.firstAt(0.5, 0); !math.IsNaN(at) {
+	if at := f.bypass.firstAt(0.5, 0); !math.IsNaN(at) && !f.reportsBefore() {
 		f.end = math.Min(f.end, at-f.refresh)
 	}
 	if opened := f.opened(f.precharge); !math.IsNaN(opened) {
 		f.end = math.Min(f.end, opened-f.refresh)
 	}
+}
+
+// reportsBefore tells whether the bypass reported closed before the command.
+func (f *charge) reportsBefore() bool {
+	return fit.Median(f.bypass.between(math.Inf(-1), -0.02).v) > 0.5
 }
 
 // opened is the instant at which a contact was first reported open after it had been reported closed; NaN if never.
@@ -206,26 +211,47 @@ func (f *charge) fromCurrents() {
 	}
 }
 
-// ohms regresses the voltage across resistor and chokes on the current, over the rows with at least so much of it.
+// ohms regresses the voltage across resistor and chokes on the current, over the rows with at least so much of it. The
+// offset of the line takes up the diodes' drop and the zero errors of both voltages.
 func (f *charge) ohms(least float64) estimate {
 	if !f.source.ok {
 		return estimate{}
 	}
-	var ui, ii, uu float64
-	n := 0
+	var x, y []float64
 	for _, r := range f.rows {
-		if math.Abs(r.current) < least {
-			continue
+		if math.Abs(r.current) >= least {
+			x, y = append(x, r.current), append(y, r.source-r.bus)
 		}
-		u := r.source - r.bus
-		ui, ii, uu, n = ui+u*r.current, ii+r.current*r.current, uu+u*u, n+1
 	}
-	if n < 4 {
+	l := fit.Line(x, y, 0)
+	if l.Status != fit.OK || l.N < 6 {
 		return estimate{}
 	}
-	ohms := ui / ii
-	rest := math.Max(0, uu-ohms*ui)
-	return estimate{ohms, math.Sqrt(rest / float64(n-1) / ii), n, true}
+	return estimate{l.Slope, l.SlopeSE, l.N, true}
+}
+
+// growth is by what fraction the resistance at the end of the charge exceeds that at its start, and its standard error: the
+// voltage across it goes as a + R·i·(1 + growth·h), h the part of the heat that has gone in so far.
+func (f *charge) growth() (growth, u float64) {
+	heat := make([]float64, len(f.rows))
+	for i, r := range f.rows {
+		if i > 0 {
+			last := f.rows[i-1]
+			heat[i] = heat[i-1] + (r.t-last.t)*(r.current*r.current+last.current*last.current)/2
+		}
+	}
+	var ones, x, xh, y []float64
+	floor := math.Max(6*f.current.resolution, 0.04*f.greatestCurrent())
+	for i, r := range f.rows {
+		if r.current > floor {
+			ones, x, xh, y = append(ones, 1), append(x, r.current), append(xh, r.current*heat[i]/heat[len(heat)-1]), append(y, r.source-r.bus)
+		}
+	}
+	k, se, ok := fit.Linear([][]float64{ones, x, xh}, y)
+	if !ok || !(k[1] > 0) {
+		return 0, math.Inf(1)
+	}
+	return k[2] / k[1], se[2] / k[1]
 }
 
 // endCurrent is the current at the end of the charge, the median of the last rows.

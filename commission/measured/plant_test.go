@@ -46,7 +46,8 @@ type plant struct {
 	lowerShorted      int
 	upperShorted      int
 	reversed          bool
-	reported          int // 1: bypass reports closed always, −1: open always
+	unequal           float64 // part of phase 1's resistance that is missing
+	reported          int     // 1: bypass reports closed always, −1: open always
 	insulation        float64
 
 	busGain, busOffset, sourceOffset, currentGain, currentOffset float64
@@ -82,6 +83,7 @@ func tenSites(t testing.TB) []site.Site {
 	scaleR := func(s *site.Site, by float64) {
 		r := &s.Precharge.Resistance
 		r.Low, r.Nominal, r.High = r.Low*quantity.Resistance(by), r.Nominal*quantity.Resistance(by), r.High*quantity.Resistance(by)
+		s.Precharge.Timeout.Nominal *= quantity.Seconds(max(1, by)) // so that a sound charge ends before it
 	}
 	return []site.Site{w, n, o,
 		change(w, func(s *site.Site) { s.Bus.Auxiliary = nil; scaleR(s, 0.5) }),
@@ -400,6 +402,14 @@ func (p *plant) measure(s *state) []float64 {
 		shares[k-1] = 0
 	}
 	if k := p.lowerShorted; k > 0 && !s.bypass {
+		shares = [3]float64{}
+		shares[k-1] = 1
+	}
+	if p.unequal > 0 { // 3 mΩ of choke and 1 mΩ of diode in each phase
+		first, others := 1/(3e-3*(1-p.unequal)+1e-3), 1/4e-3
+		shares = [3]float64{first / (first + 2*others), others / (first + 2*others), others / (first + 2*others)}
+	}
+	if k := p.upperShorted; k > 0 {
 		shares = [3]float64{}
 		shares[k-1] = 1
 	}

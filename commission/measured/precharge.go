@@ -3,6 +3,7 @@ package measured
 import (
 	"fmt"
 	"math"
+	"strings"
 
 	"chargehand/commission/capture"
 	"chargehand/commission/finding"
@@ -26,6 +27,10 @@ func Precharge(s site.Site, c capture.Capture) []finding.Finding {
 	f = k.judged(f)
 	all := []finding.Finding{f}
 	if closing, ok := k.closing(); ok {
+		if len(f.Cause) > 0 && spoilsClosing[f.Cause[0].ID] {
+			closing = cannot(verdictFinding(closing.ID, closing.Title, closing.Unit, closing.Basis), f.Cause[0].ID+" makes the difference untrue")
+			closing.Captures = named(c)
+		}
 		all = append(all, closing)
 	}
 	return all
@@ -42,11 +47,11 @@ func named(c capture.Capture) []string {
 func (f *charge) judged(out finding.Finding) finding.Finding {
 	causes, broken := f.pictures()
 	if broken { // no charge of the predicted kind: there is nothing to compare number by number
-		out.Verdict, out.Cause = finding.Fail, causes
-		if !f.shows(causes) {
-			out.Verdict = finding.Undecided
+		out.Cause = causes
+		if weight(causes) != finding.Fail {
+			return cannot(out, strings.Join(causes[0].Evidence, "; "))
 		}
-		out.Because = append(out.Because, causes[0].Evidence...)
+		out.Verdict, out.Because = finding.Fail, append(out.Because, causes[0].Evidence...)
 		return out
 	}
 	if why := f.unfit(); why != "" {
@@ -56,7 +61,7 @@ func (f *charge) judged(out finding.Finding) finding.Finding {
 	}
 	out = f.compared(out)
 	if len(causes) > 0 && out.Verdict != finding.Fail {
-		out.Verdict = finding.Fail
+		out.Verdict = finding.Worst(out.Verdict, weight(causes))
 		out.Because = append(out.Because, causes[0].Evidence...)
 	}
 	if out.Verdict == finding.Fail && len(causes) == 0 {
@@ -64,11 +69,6 @@ func (f *charge) judged(out finding.Finding) finding.Finding {
 	}
 	out.Cause = causes
 	return out
-}
-
-// shows tells whether the capture itself proves a fault, or only that it cannot be judged.
-func (f *charge) shows(causes []finding.Cause) bool {
-	return len(causes) > 0 && !spoilsCapture[causes[0].ID]
 }
 
 // unfit says in words why the stretch before the bypass carries no verdict, "" where it does.
