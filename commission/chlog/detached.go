@@ -7,9 +7,11 @@ import (
 	"io/fs"
 	"os"
 	"path/filepath"
+	"runtime"
 	"slices"
 	"strconv"
 	"strings"
+	"time"
 
 	"chargehand/commission/signing"
 )
@@ -140,11 +142,24 @@ func writeBeside(name string, text []byte) error {
 		err = f.Sync()
 	}
 	if err = errors.Join(err, f.Chmod(0o644), f.Close()); err == nil {
-		err = os.Rename(f.Name(), name)
+		err = rename(f.Name(), name)
 	}
 	if err != nil {
 		os.Remove(f.Name())
 		return fmt.Errorf("write %s: %w", filepath.Base(name), err)
 	}
 	return Disk{}.SyncDir(filepath.Dir(name))
+}
+
+// rename tries for a second on Windows, where a virus scanner may hold a file that has just been written.
+func rename(from, to string) error {
+	err := os.Rename(from, to)
+	for range 10 {
+		if err == nil || runtime.GOOS != "windows" {
+			break
+		}
+		time.Sleep(100 * time.Millisecond)
+		err = os.Rename(from, to)
+	}
+	return err
 }

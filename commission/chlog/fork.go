@@ -78,8 +78,8 @@ func compare(a, b string) (divergence, error) {
 func diverge(a, b *bufio.Reader) (divergence, error) {
 	var d divergence
 	for {
-		pa, errA := a.Peek(1)
-		pb, errB := b.Peek(1)
+		_, errA := a.Peek(1)
+		_, errB := b.Peek(1)
 		d.aEnded, d.bEnded = errA == io.EOF, errB == io.EOF
 		if d.aEnded || d.bEnded {
 			return d, nil
@@ -87,8 +87,8 @@ func diverge(a, b *bufio.Reader) (divergence, error) {
 		if errA != nil || errB != nil {
 			return d, fmt.Errorf("compare: %w", firstOf(errA, errB))
 		}
-		pa, _ = a.Peek(a.Buffered())
-		pb, _ = b.Peek(b.Buffered())
+		pa, _ := a.Peek(a.Buffered())
+		pb, _ := b.Peek(b.Buffered())
 		n := min(len(pa), len(pb))
 		if same := commonPrefix(pa[:n], pb[:n]); same < n {
 			d.offset += int64(same)

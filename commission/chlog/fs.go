@@ -59,6 +59,9 @@ func (Disk) SyncDir(name string) error {
 func (Disk) Lock(name string) (io.Closer, error) {
 	l := flock.New(name)
 	got, err := l.TryLock()
+	if _, unopened := errors.AsType[*fs.PathError](err); unopened {
+		return nil, err
+	}
 	if err != nil {
 		return nil, fmt.Errorf("lock %s: %w; a network drive may not be able to: choose a local disk", filepath.Base(name), err)
 	}

@@ -25,7 +25,8 @@ type Options struct {
 	Monotonic func() time.Duration
 	// Program is this program's version, for the record "resumed".
 	Program string
-	// Recorded is told each line once it is on disk, those too that the writer adds of itself. It may be nil.
+	// Recorded is told each line once it is on disk, those too that the writer adds of itself. It must not call the writer, and
+	// may be nil.
 	Recorded func(Line)
 }
 

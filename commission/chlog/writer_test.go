@@ -396,3 +396,31 @@ func TestAppendSignedKnowsItsPlace(t *testing.T) {
 		t.Errorf("AppendSigned = %v (%v), want its own error and a writer that goes on", err, w.Err())
 	}
 }
+
+func TestAPlaceThatCannotBeWrittenSaysSo(t *testing.T) {
+	missing := filepath.Join(t.TempDir(), "no", "such", "folder", "wagtail.chlog")
+	if _, err := chlog.Create(chlog.Disk{}, missing, chlogtest.Opened(record.SiteMode), chlogtest.Options()); !errors.Is(err, fs.ErrNotExist) || strings.Contains(err.Error(), "network") {
+		t.Errorf("Create in a missing folder = %v, want ErrNotExist", err)
+	}
+	d := chlogtest.NewDisk()
+	d.FailAt, d.Err = 1, errors.New("read-only file system")
+	if _, err := chlog.Create(d, path, chlogtest.Opened(record.SiteMode), chlogtest.Options()); err == nil || !strings.Contains(err.Error(), "read-only file system") {
+		t.Errorf("Create on a read-only disk = %v, want its error", err)
+	}
+	d = chlogtest.NewDisk()
+	w, err := chlog.Create(d, path, chlogtest.Opened(record.SiteMode), chlogtest.Options())
+	if err != nil {
+		t.Fatal(err)
+	}
+	d.FailAt, d.Err = d.Calls()+1, chlogtest.ErrGone
+	if _, err := w.Append(record.Note{Text: "lost"}); err == nil {
+		t.Fatal("Append on a medium that is gone = nil, want an error")
+	}
+	if _, err := w.MoveTo("stick/wagtail.chlog"); !errors.Is(err, chlogtest.ErrGone) {
+		t.Errorf("MoveTo another medium that is gone = %v, want ErrGone", err)
+	}
+	d.FailAt = 0
+	if moved, err := w.MoveTo("stick/wagtail.chlog"); err != nil || moved.Acknowledged().Lines != 2 {
+		t.Errorf("MoveTo once there is a place = %v, want the log with its two lines", err)
+	}
+}
