@@ -398,3 +398,31 @@ func TestNewRefusesWhatCannotBeIntegrated(t *testing.T) {
 }
 
 func errorOf(p Parameters) error { _, err := New(p); return err }
+
+// TestInterruptedCurrentEnds: a contactor that opens under current ends it, with and without a filter to take the chokes'.
+func TestInterruptedCurrentEnds(t *testing.T) {
+	for name, change := range map[string]func(*Parameters){
+		"with filter":    func(p *Parameters) {},
+		"without filter": func(p *Parameters) { p.Filter = nil },
+	} {
+		p := everything()
+		change(&p)
+		c := charged(t, p, 6)
+		c.Bypass(true)
+		must(t, c.Step(0.2))
+		c.Precharge(false)
+		c.SetVoltage(1030, 0.136)
+		c.Release(VoltageMode)
+		must(t, c.Step(2))
+		c.SetLoad(80e3, 0)
+		must(t, c.Step(0.5))
+		if r := c.Read(); r.SourceCurrent < 50 {
+			t.Fatalf("%s: %.1f A before the bypass opens, want more than 50 A", name, r.SourceCurrent)
+		}
+		c.Bypass(false)
+		must(t, c.Step(0.5))
+		if r := c.Read(); math.Abs(r.SourceCurrent) > 0.01 || r.Released {
+			t.Errorf("%s: %.3f A after the bypass opened, released %v", name, r.SourceCurrent, r.Released)
+		}
+	}
+}

@@ -20,12 +20,17 @@ const (
 	largestStep  = 0.25
 )
 
+// settlingSteps after a switch has moved are taken at firstStep whatever their error: an interrupted inductance loses its
+// current within picoseconds, which the method damps but its error estimate would have to resolve.
+const settlingSteps = 3
+
 // tolerance of the local error, relative to the size of each quantity.
 const tolerance = 1e-5
 
 // stepper is the working memory of the integration.
 type stepper struct {
 	h       float64 // step to try next
+	settle  int     // settling steps still to come
 	lu      *matrix
 	luStep  float64 // step that lu was made for; 0: none
 	region  uint64
@@ -49,7 +54,7 @@ func (s *stepper) init(n int) {
 	s.h = firstStep
 }
 
-func (s *stepper) restart() { s.h, s.luStep = firstStep, 0 }
+func (s *stepper) restart() { s.h, s.luStep, s.settle = firstStep, 0, settlingSteps }
 
 // scale is what an error of each quantity is measured against.
 func (c *Circuit) scale(k int) float64 {
@@ -98,6 +103,10 @@ func (c *Circuit) advance(limit float64) error {
 			h = rest / 2
 		}
 		err, solved := c.try(h)
+		if solved && s.settle > 0 {
+			s.settle--
+			err = 1 // no longer step yet
+		}
 		if !solved || err > 1 {
 			s.Rejected++
 			shrink := 0.25

@@ -243,7 +243,7 @@ func (s *Simulator) carryOut(a Act) error {
 		s.shutDown(100 * time.Millisecond)
 	case EmergencyStop:
 		c.Block()
-		c.SetLoad(0, 0)
+		d.dropLoad(c)
 		d.fault = faultEmergencyStop
 		d.later(30*time.Millisecond, func(c *circuit.Circuit) { c.Bypass(false); c.Precharge(false) })
 	case Reset:
@@ -293,6 +293,7 @@ func (s *Simulator) setLoad(a Act) error {
 		if w > 0 {
 			g = 1 / w
 		}
+		s.device.dropLoad(s.plant)
 		s.plant.SetLoad(0, g)
 		return nil
 	case a.Fraction && a.Verb == Load:
@@ -306,7 +307,12 @@ func (s *Simulator) setLoad(a Act) error {
 	if a.Verb == Regenerate {
 		w = -w
 	}
-	s.plant.SetLoad(w, 0)
+	d := &s.device
+	if d.load == 0 && d.loadNow == 0 {
+		s.plant.SetLoad(0, 0) // a load resistor goes when a drive comes
+	}
+	d.load = w
+	d.loadStep = math.Max(full, math.Max(math.Abs(w), math.Abs(d.loadNow))) * tick.Seconds() / loadRamp.Seconds()
 	return nil
 }
 
@@ -335,7 +341,7 @@ func (s *Simulator) infeedName(k int) string {
 // shutDown takes everything off in order, with a pause between the steps.
 func (s *Simulator) shutDown(pause time.Duration) {
 	d := &s.device
-	s.plant.SetLoad(0, 0)
+	d.dropLoad(s.plant)
 	s.plant.Block()
 	d.pending = nil
 	d.manualBypass = true

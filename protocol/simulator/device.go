@@ -46,9 +46,10 @@ type device struct {
 	bypassAt       time.Duration
 	releasedAt     time.Duration
 	banksJoined    bool
-	dropped        bool // the disturbance has struck
-	frozen         bool // the bus voltage register has stopped moving
-	load           float64
+	dropped        bool    // the disturbance has struck
+	frozen         bool    // the bus voltage register has stopped moving
+	load, loadNow  float64 // W of constant power, wanted and on its way
+	loadStep       float64 // W a tick
 	earthTest      float64 // Ω of a test resistor to earth; 0: none
 	heatsink       float64
 	pending        []pending
@@ -114,6 +115,10 @@ func (d *device) look(c *circuit.Circuit, t *truth, now time.Duration) {
 	d.note(r)
 	d.takeTrips(c)
 	d.sequence(c, t, r)
+	if d.loadNow != 0 && !r.LoadOn { // the drives have let go of a bus that was too low
+		d.load, d.loadNow = 0, 0
+	}
+	d.rampLoad(c)
 	d.strike(c, t, r)
 	if d.releasedAt >= 0 && !d.banksJoined && now-d.releasedAt >= banksJoinAfter {
 		d.banksJoined = true
@@ -206,6 +211,24 @@ func (d *device) strike(c *circuit.Circuit, t *truth, r circuit.Reading) {
 		d.dropped = true
 		c.Infeed(0, false)
 	}
+}
+
+// loadRamp is how long a drive takes to its rated power.
+const loadRamp = 40 * time.Millisecond
+
+// rampLoad moves the load towards what is wanted.
+func (d *device) rampLoad(c *circuit.Circuit) {
+	if d.loadNow == d.load {
+		return
+	}
+	d.loadNow += math.Max(-d.loadStep, math.Min(d.loadStep, d.load-d.loadNow))
+	c.SetLoad(d.loadNow, 0)
+}
+
+// dropLoad switches all loads off at once.
+func (d *device) dropLoad(c *circuit.Circuit) {
+	d.load, d.loadNow = 0, 0
+	c.SetLoad(0, 0)
 }
 
 // insulation is the insulation resistance with a test resistor in place.

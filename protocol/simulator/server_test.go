@@ -20,7 +20,7 @@ func TestMain(m *testing.M) { goleak.VerifyTestMain(m) }
 func serve(t *testing.T, times float64, disturb ...string) (*Simulator, *modbus.ModbusClient, string) {
 	t.Helper()
 	begin := time.Now()
-	o := Options{Site: wagtail(t), Map: wagtailMap(), Seed: 3, ReplyDelay: -1, Now: func() time.Time {
+	o := Options{Site: wagtail(t), Map: wagtailMap(t), Seed: 3, ReplyDelay: -1, Now: func() time.Time {
 		return begin.Add(time.Duration(float64(time.Since(begin)) * times))
 	}}
 	for _, text := range disturb {
@@ -148,7 +148,7 @@ func TestCommandCoilsOperateThePlant(t *testing.T) {
 }
 
 func TestServeEndsWithItsContext(t *testing.T) {
-	s, err := New(Options{Site: wagtail(t), Map: wagtailMap(), Now: time.Now})
+	s, err := New(Options{Site: wagtail(t), Map: wagtailMap(t), Now: time.Now})
 	if err != nil {
 		t.Fatal(err)
 	}

@@ -298,7 +298,7 @@ func (t *truth) tuneRegulator() {
 	if t.site.Load != nil {
 		load = float64(t.site.Load.Power.Nominal)
 	}
-	crossover := math.Min(400, math.Max(120, 3*load/(nominal*nominal*c)))
+	crossover := math.Min(400, math.Max(200, 3*load/(nominal*nominal*c)))
 	b.VoltageGain = c * crossover
 	b.IntegralGain = b.VoltageGain * crossover / 3
 	b.VoltageRamp = nominal / 5
