@@ -8,6 +8,7 @@ import (
 
 	"chargehand/commission/corner/cornertest"
 	"chargehand/commission/finding"
+	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/quantity"
 	"chargehand/commission/site"
 )
@@ -239,6 +240,43 @@ func TestFindingsWithNothingInTheLoop(t *testing.T) {
 	} {
 		s := load(t, "wagtail")
 		change(&s)
-		cornertest.AreOrdered(t, "bare loop", Findings(s))
+		found := Findings(s)
+		cornertest.AreOrdered(t, "bare loop", found)
+		areExplained(t, "bare loop", found)
+	}
+}
+
+// areExplained reports every finding with a value whose printed calculation does not come out as printed.
+func areExplained(t *testing.T, what string, findings []finding.Finding) {
+	t.Helper()
+	for _, f := range findings {
+		if f.State == finding.None {
+			continue
+		}
+		if err := findingtest.Redo(f.Explanation, f.Value.Nominal); err != nil {
+			t.Errorf("%s: Redo(%s %s) = %v, want nil", what, f.ID, f.Subject, err)
+		}
+	}
+}
+
+// Every regime of damping, either filter position, and a supercapacitor are explained.
+func TestOddLoopsAreExplained(t *testing.T) {
+	for name, change := range map[string]func(*site.Site){
+		"overdamped": func(s *site.Site) { set(&s.Source.InternalResistance, 2) },
+		"filter before the bypass": func(s *site.Site) {
+			*s = withConverter(*s, func(c *site.Converter) { c.Filter.Position = site.AtSource })
+		},
+		"supercapacitor with both": func(s *site.Site) { s.Source.Kind = site.Supercapacitor; set(&s.Source.Capacitance, 14) },
+		"supercapacitor before": func(s *site.Site) {
+			*s = withConverter(*s, func(c *site.Converter) { c.Filter.Position = site.AtSource })
+			s.Source.Kind = site.Supercapacitor
+			set(&s.Source.Capacitance, 14)
+		},
+	} {
+		s := load(t, "wagtail")
+		change(&s)
+		found := Findings(s)
+		cornertest.AreOrdered(t, name, found)
+		areExplained(t, name, found)
 	}
 }

@@ -7,6 +7,7 @@ import (
 
 	"chargehand/commission/corner/cornertest"
 	"chargehand/commission/finding"
+	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/quantity"
 	"chargehand/commission/site"
 )
@@ -103,7 +104,9 @@ func TestEveryKindOfSourceAndOptionalTable(t *testing.T) {
 					name += " " + table.name
 				}
 			}
-			cornertest.AreOrdered(t, name, judged(s))
+			found := judged(s)
+			cornertest.AreOrdered(t, name, found)
+			areExplained(t, name, found)
 			if mask >= 8 { // the tables behind the first three do not enter a prediction
 				continue
 			}
@@ -112,6 +115,60 @@ func TestEveryKindOfSourceAndOptionalTable(t *testing.T) {
 				t.Errorf("%s: Predict lacks %v and has %d points, want a band", name, p.Missing, len(p.Band))
 			}
 		}
+	}
+}
+
+// areExplained reports every finding with a value whose printed calculation does not come out as printed.
+func areExplained(t *testing.T, what string, findings []finding.Finding) {
+	t.Helper()
+	for _, f := range findings {
+		if f.State == finding.None {
+			continue
+		}
+		if f.Explanation == nil {
+			t.Errorf("%s: %s has no explanation", what, f.ID)
+		} else if err := findingtest.Redo(f.Explanation, f.Value.Nominal); err != nil {
+			t.Errorf("%s: Redo(%s) = %v, want nil", what, f.ID, err)
+		}
+	}
+}
+
+// Charges that stall, hiccup, never end or hardly begin are explained too.
+func TestOddChargesAreExplained(t *testing.T) {
+	auxiliary := func(s *site.Site, power, on, off float64) {
+		a := *s.Bus.Auxiliary
+		set(&a.Power, power)
+		set(&a.StartsAt, on)
+		set(&a.StopsAt, off)
+		s.Bus.Auxiliary = &a
+	}
+	for name, change := range map[string]func(*site.Site){
+		"stalls at the equilibrium":     func(s *site.Site) { set(&s.Precharge.ClosingDifference, 5) },
+		"stalls at the divider":         func(s *site.Site) { s.Bus.Auxiliary = nil; set(&s.Precharge.ClosingDifference, 2) },
+		"hiccups":                       func(s *site.Site) { auxiliary(s, 2500, 350, 300) },
+		"is pulled down to equilibrium": func(s *site.Site) { auxiliary(s, 300, 800, 300); set(&s.Precharge.ClosingDifference, 10) },
+		"closes before the supply":      func(s *site.Site) { auxiliary(s, 40, 815, 800) },
+		"runs out of time":              func(s *site.Site) { auxiliary(s, 2500, 350, 300); set(&s.Precharge.Timeout, 0.1) },
+		"is over at once":               func(s *site.Site) { set(&s.Precharge.ClosingDifference, 820) },
+		"no permitted temperature left": func(s *site.Site) { set(&s.Precharge.Ambient, 275) },
+		"continuous rating": func(s *site.Site) {
+			set(&s.Precharge.RatedPower, 20e3)
+			v := *s.Precharge.Thermal
+			set(&v.Resistance, 0.001)
+			s.Precharge.Thermal = &v
+		},
+		"pulse on a point of the curve": func(s *site.Site) {
+			s.Bus.Bleeders, s.Bus.Auxiliary = nil, nil
+			s.Precharge.Pulse = s.Precharge.Pulse[:1]
+		},
+		"pulse before the curve": func(s *site.Site) { s.Precharge.Pulse = s.Precharge.Pulse[2:] },
+		"one attempt":            func(s *site.Site) { s.Precharge.Attempts = 1 },
+	} {
+		s := load(t, "wagtail")
+		change(&s)
+		found := Findings(s)
+		cornertest.AreOrdered(t, name, found)
+		areExplained(t, name, found)
 	}
 }
 

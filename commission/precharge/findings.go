@@ -106,6 +106,14 @@ func (a *assessment) timeToClose() finding.Finding {
 	return f
 }
 
+// orUnlimited marks a ratio without a bound: nothing is permitted, or nothing is left of the rating.
+func orUnlimited(f finding.Finding) finding.Finding {
+	if math.IsInf(f.Value.High, 1) {
+		f.State = finding.Unlimited
+	}
+	return f
+}
+
 // orNever marks a time that never comes in some corner.
 func orNever(f finding.Finding) finding.Finding {
 	if math.IsInf(f.Value.High, 1) {
@@ -154,7 +162,7 @@ func (a *assessment) pulse() finding.Finding {
 	if m := a.missing(a.needsCircuit, a.needsPulse, a.needsEnergy); m != nil {
 		return f.Lacking(m...)
 	}
-	f = f.Judged(valueOf(a.charge[ofPulse]), finding.AtMost(1), 0)
+	f = orUnlimited(f.Judged(valueOf(a.charge[ofPulse]), finding.AtMost(1), 0))
 	f.Explanation = a.explainPulse()
 	if f.Verdict != finding.Pass {
 		f.Because = append(f.Because, fmt.Sprintf("the charge asks for %s times the pulse that the resistor may take", say(f.Value.High, "1")))
@@ -174,7 +182,7 @@ func (a *assessment) repeat() finding.Finding {
 	if m := a.missing(a.needsRepeat, a.needsEnergy); m != nil {
 		return f.Lacking(m...)
 	}
-	f = f.Judged(valueOf(a.charge[ofRepeat]), limit, 0)
+	f = orUnlimited(f.Judged(valueOf(a.charge[ofRepeat]), limit, 0))
 	f.Explanation = a.explainRepeat()
 	if f.Verdict != finding.Pass {
 		f.Because = append(f.Because, fmt.Sprintf("%d attempts every %s heat the resistor beyond what it may take", a.site.Precharge.Attempts, say(float64(a.interval()), "s")))
@@ -215,9 +223,7 @@ func (a *assessment) shortedBus() finding.Finding {
 	}
 	timeout := float64(a.timeout())
 	f = judgedTo(f, valueOf(a.charge[ofWithstand]), finding.AtLeast(belowLeastWithstand*timeout), finding.AtLeast(timeout))
-	if math.IsInf(f.Value.High, 1) {
-		f.State = finding.Unlimited
-	}
+	f = orUnlimited(f)
 	f.Explanation = a.explainShortedBus()
 	if f.Verdict != finding.Pass {
 		f.Because = append(f.Because, fmt.Sprintf("a shorted bus may last until the time-out, %s; the resistor stands it %s", say(timeout, "s"), say(f.Value.Low, "s")))
