@@ -6,6 +6,7 @@ func BenchmarkPrecharge(b *testing.B) {
 	p := plant()
 	p.Filter = &Filter{0.8e-3, 2e-3, 40e-9, false}
 	p.Bus.Auxiliary = &Auxiliary{40, 350, 300}
+	steps := 0
 	for b.Loop() {
 		c, _ := New(p)
 		c.Isolator(true)
@@ -16,7 +17,9 @@ func BenchmarkPrecharge(b *testing.B) {
 				b.Fatal(err)
 			}
 		}
+		steps, _, _ = c.Work()
 	}
+	b.ReportMetric(float64(steps), "steps")
 	b.ReportMetric(6*float64(b.N)/b.Elapsed().Seconds(), "times-real-time")
 }
 

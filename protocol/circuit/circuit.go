@@ -148,9 +148,6 @@ func (c *Circuit) SetBusVoltage(v float64) { c.y[vBus] = v; c.changed() }
 // SetDrawn puts the source at a state of charge.
 func (c *Circuit) SetDrawn(coulombs float64) { c.y[drawn] = coulombs; c.changed() }
 
-// SetResistorRise heats the pre-charge resistor.
-func (c *Circuit) SetResistorRise(kelvin float64) { c.y[rise] = kelvin; c.changed() }
-
 // Isolator commands the source isolator.
 func (c *Circuit) Isolator(close bool) {
 	c.isolator.command(c.isolatorContact(), close, c.time)
@@ -169,9 +166,6 @@ func (c *Circuit) Precharge(close bool) {
 
 // Bypass commands the bypass contactor.
 func (c *Circuit) Bypass(close bool) { c.bypass.command(c.p.Bypass, close, c.time); c.changed() }
-
-// DropBypass opens the bypass contactor's coil without a command having been taken back.
-func (c *Circuit) DropBypass() { c.Bypass(false) }
 
 // ForceReport makes the bypass's auxiliary contact say one thing whatever its main contact does; nil ends that.
 func (c *Circuit) ForceReport(closed *bool) {
@@ -260,12 +254,6 @@ func (c *Circuit) Infeed(k int, on bool) {
 	if !on {
 		c.y[c.infeedPlace(k)] = 0
 	}
-	c.changed()
-}
-
-// SetInfeed changes an infeed's setpoint and resistance.
-func (c *Circuit) SetInfeed(k int, setpoint, resistance float64) {
-	c.p.Infeeds[k].Setpoint, c.p.Infeeds[k].Resistance = setpoint, resistance
 	c.changed()
 }
 

@@ -8,9 +8,9 @@ func (c *Circuit) nextEvent() float64 {
 	return math.Min(t, c.timeout())
 }
 
-// timeout is when the pre-charge has lasted too long.
+// timeout is when the pre-charge has lasted too long without a report that the bypass has closed.
 func (c *Circuit) timeout() float64 {
-	if c.p.Precharge.Timeout <= 0 || !c.precharge.main || !c.precharge.commanded || c.bypass.main || c.bypass.mainAt < never {
+	if c.p.Precharge.Timeout <= 0 || !c.precharge.main || !c.precharge.commanded || c.bypassReport() {
 		return never
 	}
 	return c.prechargeSince + c.p.Precharge.Timeout

@@ -27,7 +27,6 @@ type Reading struct {
 	BypassCommanded   bool
 	PrechargeCommand  bool
 	Released          bool
-	AtLimit           bool // the regulator's current stands at a limit
 	Mode              Mode
 	ChopperOn         bool
 	AuxiliaryOn       bool
@@ -58,9 +57,6 @@ func (c *Circuit) Read() Reading {
 	r.Power = r.BusCurrent * r.BusVoltage
 	if c.loadOn {
 		r.LoadPower += c.loadPower
-	}
-	if c.released {
-		r.AtLimit = c.regulate(c.time, y).region != 0
 	}
 	return r
 }

@@ -202,7 +202,7 @@ func (d *device) strike(c *circuit.Circuit, t *truth, r circuit.Reading) {
 	}
 	switch {
 	case after(d.bypassAt, t.bypassDropsAfter):
-		d.dropped, d.manualBypass = true, true
+		d.dropped, d.manualBypass, d.fault = true, true, faultBypassLost
 		c.Bypass(false)
 	case after(d.prechargeAt, t.sourceOpensAfter):
 		d.dropped = true

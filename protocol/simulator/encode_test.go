@@ -23,7 +23,7 @@ func TestEncodeIsUndoneByTheMapsReader(t *testing.T) {
 			UnitFactor:   rapid.SampledFrom([]float64{1, 1000}).Draw(t, "factor"),
 			SignReversed: rapid.Bool().Draw(t, "reversed"),
 		}
-		value := rapid.Float64Range(-300, 300).Draw(t, "value") * p.UnitFactor
+		value := rapid.Float64Range(-250, 250).Draw(t, "value") * p.UnitFactor
 		if low := p.Offset * p.UnitFactor; p.SignReversed && -value < low || !p.SignReversed && value < low {
 			return // an unsigned register cannot hold it
 		}

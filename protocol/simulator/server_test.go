@@ -58,10 +58,10 @@ func dial(t *testing.T, address string) *modbus.ModbusClient {
 	return client
 }
 
-// eventually waits, at most two seconds, until something has come about.
+// eventually waits, at most twenty seconds, until something has come about.
 func eventually(t *testing.T, what string, done func() bool) {
 	t.Helper()
-	for end := time.Now().Add(5 * time.Second); time.Now().Before(end); time.Sleep(5 * time.Millisecond) {
+	for end := time.Now().Add(20 * time.Second); time.Now().Before(end); time.Sleep(5 * time.Millisecond) {
 		if done() {
 			return
 		}
@@ -70,15 +70,9 @@ func eventually(t *testing.T, what string, done func() bool) {
 }
 
 func TestServeAnswersWithThePlantsVoltages(t *testing.T) {
-	s, client, _ := serve(t, 20)
-	for _, line := range []string{"isolator close", "precharge close"} {
-		act, err := ParseAct(line)
-		if err != nil {
-			t.Fatal(err)
-		}
-		if err := s.Do(t.Context(), act); err != nil {
-			t.Fatal(err)
-		}
+	s, client, _ := serve(t, 1)
+	if err := s.Restore(6); err != nil {
+		t.Fatal(err)
 	}
 	eventually(t, "bypass report over Modbus", func() bool {
 		states, err := client.ReadRegister(120, modbus.HOLDING_REGISTER)
@@ -127,21 +121,32 @@ func TestServeRefusesWhatNoMapHas(t *testing.T) {
 }
 
 func TestCommandCoilsOperateThePlant(t *testing.T) {
-	s, client, _ := serve(t, 40)
+	s, client, _ := serve(t, 1)
 	for _, coil := range []uint16{commandCoils, commandCoils + 1} {
 		if err := client.WriteCoil(coil, true); err != nil {
 			t.Fatal(err)
 		}
 	}
-	eventually(t, "bypass", func() bool {
+	eventually(t, "isolator and pre-charge", func() bool {
 		states, err := client.ReadCoils(commandCoils, 4)
-		return err == nil && states[0] && states[2]
+		return err == nil && states[0] && states[1] && !states[2]
 	})
-	eventually(t, "release", func() bool { return client.WriteCoil(commandCoils+3, true) == nil })
+	if err := client.WriteCoil(commandCoils+3, true); err != modbus.ErrServerDeviceFailure {
+		t.Errorf("release before the bypass closed = %v, want %v", err, modbus.ErrServerDeviceFailure)
+	}
+	if err := s.Restore(6); err != nil {
+		t.Fatal(err)
+	}
+	if err := client.WriteCoil(commandCoils+3, true); err != nil {
+		t.Fatal(err)
+	}
 	eventually(t, "running", func() bool {
 		states, err := client.ReadRegister(120, modbus.HOLDING_REGISTER)
 		return err == nil && states>>1&1 == 1
 	})
+	if behind := s.Behind(); behind < 0 {
+		t.Errorf("Behind() = %v, want 0 or more", behind)
+	}
 	if _, commands := s.Writes(); commands < 3 {
 		t.Errorf("Writes() = %d commands, want at least 3", commands)
 	}

@@ -117,6 +117,14 @@ func (s *Simulator) catchUp() error {
 	}
 }
 
+// Behind is how far the plant lags behind its clock: more than a few ticks when the clock runs faster than this machine
+// can compute.
+func (s *Simulator) Behind() time.Duration {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	return s.options.Now().Sub(s.started) - s.elapsed
+}
+
 // advance moves the plant by whole ticks, at most d. The caller holds the lock.
 func (s *Simulator) advance(d time.Duration) error {
 	for ; d >= tick && s.broken == nil; d -= tick {
