@@ -96,13 +96,13 @@ func TestTimeoutFollowsSizeAndRoundTrip(t *testing.T) {
 		want     time.Duration
 		source   string
 	}{
-		{"unmeasured", patience{}, 1, time.Second, "first time-out"},
-		{"fast peer, one register", patience{smoothed: time.Millisecond}, 1, 300 * time.Millisecond, "floor"},
-		{"fast peer, full block", patience{smoothed: time.Millisecond}, 125, 2 * 270 * 11 * time.Second / 9600,
+		{"unmeasured", patience{floor: floorTimeout}, 1, time.Second, "first time-out"},
+		{"fast peer, one register", patience{floor: floorTimeout, smoothed: time.Millisecond}, 1, 300 * time.Millisecond, "floor"},
+		{"fast peer, full block", patience{floor: floorTimeout, smoothed: time.Millisecond}, 125, 2 * 270 * 11 * time.Second / 9600,
 			"twice the wire time at 9600 baud: (8 + 5 + 250 + 7) characters of 11 bits, by hand"},
-		{"slow peer", patience{smoothed: 400 * time.Millisecond}, 1, 1600 * time.Millisecond, "four round trips"},
-		{"slower than allowed", patience{smoothed: 9 * time.Second}, 1, 10 * time.Second, "most"},
-		{"after a silence", patience{smoothed: time.Millisecond, doubled: 1}, 1, 600 * time.Millisecond, "doubled"},
+		{"slow peer", patience{floor: floorTimeout, smoothed: 400 * time.Millisecond}, 1, 1600 * time.Millisecond, "four round trips"},
+		{"slower than allowed", patience{floor: floorTimeout, smoothed: 9 * time.Second}, 1, 10 * time.Second, "most"},
+		{"after a silence", patience{floor: floorTimeout, smoothed: time.Millisecond, doubled: 1}, 1, 600 * time.Millisecond, "doubled"},
 	} {
 		if got := tt.p.timeout(ReadHoldingRegisters, tt.quantity).Round(time.Microsecond); got != tt.want.Round(time.Microsecond) {
 			t.Errorf("timeout(%s) = %v, want %v (%s)", tt.name, got, tt.want, tt.source)

@@ -19,6 +19,7 @@ type Options struct {
 	Address      string        // host:port
 	Gap          time.Duration // least quiet time from an answer to the next request
 	Settle       time.Duration // quiet time after connecting, which some devices need
+	LeastTimeout time.Duration // of a request, 300 ms where 0; more for a device known to be slow, or a machine that is
 	LoopbackOnly bool          // refuse to dial anything but a loopback address
 
 	Dial   func(ctx context.Context, network, address string) (net.Conn, error) // TCP with keep-alive 15/5/3 s where nil
@@ -90,18 +91,22 @@ func New(o Options) *Link {
 	if o.Now == nil {
 		o.Now = time.Now
 	}
+	if o.LeastTimeout <= 0 {
+		o.LeastTimeout = floorTimeout
+	}
 	if o.Random == nil {
 		var seed [32]byte
 		crand.Read(seed[:]) // never fails since Go 1.24
 		o.Random = rand.NewChaCha8(seed)
 	}
 	return &Link{
-		options: o,
-		turn:    make(chan struct{}, 1),
-		closed:  make(chan struct{}),
-		random:  rand.New(o.Random),
-		units:   map[byte]*unitState{},
-		status:  Status{Peer: o.Address},
+		options:  o,
+		turn:     make(chan struct{}, 1),
+		closed:   make(chan struct{}),
+		random:   rand.New(o.Random),
+		patience: patience{floor: o.LeastTimeout},
+		units:    map[byte]*unitState{},
+		status:   Status{Peer: o.Address},
 	}
 }
 

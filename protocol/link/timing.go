@@ -39,6 +39,7 @@ func WireTime(f Function, quantity, baud int) time.Duration {
 
 // patience holds what was learned of a peer's speed.
 type patience struct {
+	floor    time.Duration
 	smoothed time.Duration // round trip, 0 before the first
 	silences int           // in a row on this connection
 	doubled  int           // times the time-out is doubled, until the next answer
@@ -54,7 +55,7 @@ func (p *patience) heard() { p.silences, p.doubled = 0, 0 }
 // timeout is how long to wait for a block: the largest of the floor, four smoothed round trips and twice the block's time
 // on a slow serial line; doubled after a silence, since a slow device may only be slower than thought.
 func (p *patience) timeout(f Function, quantity int) time.Duration {
-	t := max(floorTimeout, 4*p.smoothed, 2*WireTime(f, quantity, slowestBaud))
+	t := max(p.floor, 4*p.smoothed, 2*WireTime(f, quantity, slowestBaud))
 	if p.smoothed == 0 {
 		t = max(t, firstTimeout)
 	}
