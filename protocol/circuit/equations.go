@@ -178,7 +178,7 @@ func (c *Circuit) paths(y []float64) (precharge, byRise, bypass float64) {
 	return precharge, byRise, c.bypass.conductance(c.p.Bypass, 0)
 }
 
-// short resistance is limited by Parameters; load conductances and powers of the bus as switched now.
+// busLoads are the conductance across the bus and the constant power taken from it, as they are switched now.
 func (c *Circuit) busLoads() (conductance, power float64) {
 	b := &c.p.Bus
 	conductance = b.Bleeder + b.Leakage + b.LeftOn + c.loadConductance

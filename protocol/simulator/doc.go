@@ -26,5 +26,6 @@
 //	61446  discharge         1 shuts down and discharges
 //	61447  emergency stop    1 stops
 //	61448  reset             1 clears a fault
-//	61449… load              1 sets the load to 0, 25, 50, 75, 100 % of load.power; the last two regenerate 50, 100 %
+//	61449 … 61453  load      1 sets 0, 25, 50, 75, 100 % of load.power
+//	61454, 61455  regenerate 1 sets 50, 100 % of load.regeneration
 package simulator
