@@ -78,11 +78,19 @@ func (p *Point) isMissing(words []uint16) bool {
 
 // scaled gives the value in the stated unit.
 func (p *Point) scaled(raw float64) float64 {
-	v := raw*orOne(p.Scale) + p.Offset
+	v := times(raw, orOne(p.Scale)) + p.Offset
 	if p.SignReversed {
 		return 0 - v // no negative zero
 	}
 	return v
+}
+
+// times multiplies by a scale as the map writes it: 7124 · 0.1 is 712.4, although 0.1 has no exact binary form.
+func times(raw, scale float64) float64 {
+	if inverse := math.Round(1 / scale); scale < 1 && scale > 0 && 1/inverse == scale {
+		return raw / inverse
+	}
+	return raw * scale
 }
 
 func (p *Point) stated(v float64) string {
