@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 
+	"chargehand/commission/droop"
 	"chargehand/commission/finding"
 	"chargehand/commission/fit"
 	"chargehand/commission/site"
@@ -21,6 +22,7 @@ func (l *line) causes() []finding.Cause {
 		found = append(found, l.slopes()...)
 		found = append(found, l.shifted()...)
 	}
+	found = append(found, l.overShare()...)
 	found = append(found, l.soft()...)
 	if len(found) == 0 && l.fit.Status == fit.OK {
 		found = append(found, because(notKnown, 0.4, fmt.Sprintf("slope %s, no-load %s", number(l.slope.value, "V/A"), number(l.noLoad.value, "V"))))
@@ -119,4 +121,31 @@ func (l *line) soft() []finding.Cause {
 		return nil
 	}
 	return []finding.Cause{because("source-soft", 0.88, fmt.Sprintf("source falls by %s per ampere, %s on paper", number(m.value, "Ω"), number(paper.nominal, "Ω")))}
+}
+
+// overShare: the line is good, and yet the converter carries more than its share even of the greatest load on paper.
+func (l *line) overShare() []finding.Cause {
+	load := l.site.Load
+	if load == nil || len(l.site.Infeeds) < 2 {
+		return nil
+	}
+	expected, ok := l.prediction.At(droop.Load{Power: load.Power.Nominal})
+	if !ok {
+		return nil
+	}
+	greatest := math.Inf(-1)
+	for _, st := range append(append([]Step{}, l.on...), l.off...) {
+		greatest = math.Max(greatest, float64(st.Current))
+	}
+	most := float64(expected.Current.High)
+	if l.fit.Status == fit.OK { // a no-load voltage that is too high takes more by itself
+		most += math.Max(0, l.noLoad.value-float64(l.prediction.NoLoad.High)) / l.paperSlope().nominal
+	}
+	if greatest < 1.25*most+0.03*float64(l.prediction.Most) {
+		return nil
+	}
+	if l.fit.Status == fit.OK && math.Abs(l.slope.value) < 0.3*l.paperSlope().nominal { // droop off: it takes all by itself
+		return nil
+	}
+	return []finding.Cause{because("infeed-lost", 0.86, fmt.Sprintf("carries %s, its share of the greatest load is at most %s", number(greatest, "A"), number(most, "A")))}
 }

@@ -3,6 +3,7 @@ package measured
 import (
 	"fmt"
 	"math"
+	"strings"
 
 	"chargehand/commission/capture"
 	"chargehand/commission/finding"
@@ -226,9 +227,11 @@ func (f *fall) predictedTau() band {
 }
 
 func (f *fall) judged(out finding.Finding) finding.Finding {
-	if causes := readingCauses(f.paper, f.capture); len(causes) > 0 {
-		out.Because, out.Cause = append(out.Because, causes[0].Evidence...), causes
-		return cannot(out, "the readings are not to be believed")
+	read := readingCauses(f.paper, f.capture)
+	dropped := len(read) > 0 && read[0].ID == "link-drops"
+	if len(read) > 0 && !dropped {
+		out.Cause = read
+		return cannot(out, strings.Join(read[0].Evidence, "; "))
 	}
 	f.touchSafe(&out)
 	if f.shelf.found {
@@ -241,6 +244,7 @@ func (f *fall) judged(out finding.Finding) finding.Finding {
 	}
 	if why := f.unfit(); why != "" {
 		out = cannot(out, why)
+		out.Cause = read
 		if f.stays() {
 			out.Cause = f.stayCauses()
 			out.Verdict = finding.Fail
@@ -260,6 +264,10 @@ func (f *fall) judged(out finding.Finding) finding.Finding {
 	}
 	if verdict == finding.Fail {
 		out.Cause = ranked(append(out.Cause, f.slopeCauses()...))
+	}
+	if dropped {
+		out.Verdict, out.Cause = finding.Worst(out.Verdict, weight(read)), ranked(append(out.Cause, read...))
+		out.Because = append(out.Because, read[0].Evidence...)
 	}
 	return out
 }
@@ -301,7 +309,7 @@ func (f *fall) stayCauses() []finding.Cause {
 	if slope < -4*u {
 		return []finding.Cause{because("bleeder-open", 0.9, evidence...)}
 	}
-	return []finding.Cause{because("bus-live", 0.8, evidence...), because("bleeder-open", 0.6, evidence...)}
+	return together(0.85, "isolate every other infeed: a bus without bleeder still stands", evidence, "bleeder-open", "bus-live")
 }
 
 func (f *fall) sourceLevel() float64 {
@@ -352,6 +360,10 @@ func (f *fall) shelfCauses() []finding.Cause {
 			_ = i
 		}
 		return together(0.8, "resistance across each open contact; the difference across the bypass under the bleeder's current", evidence, "precharge-welded", "bypass-welded")
+	case at > 0.85*f.first:
+		return together(0.85, "isolate every other infeed: a bus without bleeder still stands", evidence, "bleeder-open", "bus-live")
+	case f.p > 0 && math.Abs(at-f.vOff) < 0.04*f.first+f.busError:
+		return []finding.Cause{because("bleeder-open", 0.9, append(evidence, fmt.Sprintf("it fell until the auxiliary supply stopped at %s", number(f.vOff, "V")))...)}
 	case level > 0 && at > level+near:
 		return []finding.Cause{because("bus-live", 0.9, evidence...)}
 	}
@@ -392,7 +404,8 @@ func (f *fall) filterGone() bool {
 		return false
 	}
 	wanted := f.paper.filter.low / f.link.high
-	return f.filter.value+fit.Coverage(f.filter.freedom)*f.filter.u < 0.5*wanted
+	const zeroError = 0.015 // what the bus sensor's offset may make of the share
+	return wanted > 0.04 && f.filter.value+fit.Coverage(f.filter.freedom)*f.filter.u+zeroError < 0.7*wanted
 }
 
 func (f *fall) filterWords() string {

@@ -4,10 +4,12 @@ import (
 	"fmt"
 	"math"
 
+	"chargehand/commission/capture"
 	"chargehand/commission/droop"
 	"chargehand/commission/finding"
 	"chargehand/commission/fit"
 	"chargehand/commission/quantity"
+	"chargehand/commission/signal"
 	"chargehand/commission/site"
 )
 
@@ -104,7 +106,7 @@ func (l *line) dropKink() {
 			at = append(at, i)
 		}
 	}
-	if len(at) < 2 || len(l.on)-len(at) < 2 {
+	if len(at) < 2 || len(l.on) == len(at) {
 		return
 	}
 	low, high := math.Inf(1), math.Inf(-1)
@@ -235,5 +237,24 @@ func Share(s site.Site, st Step) finding.Finding {
 	verdict, text := judge(m, b, "deviation from the share by rating", "%")
 	out = withMeasurement(out, m, b)
 	out.Verdict, out.Because = verdict, append(out.Because, text)
+	return out
+}
+
+// DroopCapture judges a capture of load stairs: its settled steps as [Droop] does, after a look at the readings themselves.
+func DroopCapture(s site.Site, c capture.Capture) []finding.Finding {
+	read := readingCauses(paperOf(s), c)
+	out := Droop(s, Steps(c))
+	for i := range out {
+		out[i].Captures = named(c)
+	}
+	if why := unusable(c, signal.BusVoltage); why != "" {
+		out = out[:1]
+		out[0] = cannot(out[0], why)
+	}
+	if len(read) > 0 {
+		out[0].Verdict = finding.Worst(out[0].Verdict, weight(read))
+		out[0].Because = append(out[0].Because, read[0].Evidence...)
+		out[0].Cause = ranked(append(out[0].Cause, read...))
+	}
 	return out
 }

@@ -103,7 +103,9 @@ func (f *charge) compared(out finding.Finding) finding.Finding {
 	out.Verdict = verdict
 	add := func(m measurement, b band, what, unit string) {
 		v, words := judge(m, b, what, unit)
-		out.Verdict = finding.Worst(out.Verdict, v)
+		if v == finding.Fail { // beside the time constant these only count where they prove something
+			out.Verdict = finding.Fail
+		}
 		out.Because = append(out.Because, words)
 		out.Parts = append(out.Parts, finding.Part{Name: what, Unit: unit, Value: m.asValue()})
 	}
@@ -203,7 +205,7 @@ func (f *charge) closing() (finding.Finding, bool) {
 	difference := f.source.at(at-1e-9) - f.before(at)
 	limit := float64(f.site.Precharge.ClosingDifference.Nominal)
 	b := band{math.Inf(-1), limit, limit + f.busError + f.sourceError} // the device releases on what it measures
-	m := measurement{value: difference, u: math.Hypot(f.noise, f.slewError(at)), freedom: max(f.fit.Freedom, 3)}
+	m := measurement{value: difference, u: math.Hypot(f.lateScatter(), f.slewError(at)), freedom: max(f.fit.Freedom, 3)}
 	verdict, text := judge(m, b, "difference at closing", "V")
 	out = withMeasurement(out, m, b)
 	out.Verdict, out.Because = verdict, append(out.Because, text)
@@ -225,6 +227,23 @@ func (f *charge) before(at float64) float64 {
 		return math.Max(last, f.fit.At(at))
 	}
 	return last
+}
+
+// lateScatter is the standard deviation of the samples about the curve over the last third of the charge, where the voltage
+// is slow and the polling's jitter does not count.
+func (f *charge) lateScatter() float64 {
+	floor := f.bus.resolution / math.Sqrt(12)
+	if f.fit.Status != fit.OK {
+		return math.Max(f.noise, floor)
+	}
+	var rest []float64
+	for _, r := range f.rows[2*len(f.rows)/3:] {
+		rest = append(rest, r.bus-f.fit.At(r.t))
+	}
+	if len(rest) < 4 {
+		return math.Max(f.noise, floor)
+	}
+	return math.Max(fit.Average(rest).SD, floor)
 }
 
 // slewError is what one renewal of the register is worth where the voltage still rises.

@@ -309,10 +309,22 @@ func slow(p paper, c capture.Capture) []finding.Cause {
 		longest = float64(d.MaxAge.Nominal)
 	}
 	refresh := math.Max(renewal(traceOf(c, signal.BusVoltage)), standstill(c))
-	if refresh <= math.Max(longest, 0.2) {
+	if refresh <= math.Max(math.Max(longest, 0.2), 2.5*spacing(c)) { // where polling is the slower, nothing can be said
 		return nil
 	}
 	return []finding.Cause{because("readings-slow", 0.9, fmt.Sprintf("bus voltage is renewed every %s, %s allowed", number(refresh, "s"), number(longest, "s")))}
+}
+
+// spacing is the usual time from sample to sample.
+func spacing(c capture.Capture) float64 {
+	var steps []float64
+	for i := 1; i < len(c.Samples); i++ {
+		steps = append(steps, (c.Samples[i].At - c.Samples[i-1].At).Seconds())
+	}
+	if len(steps) == 0 {
+		return 0
+	}
+	return fit.Median(steps)
 }
 
 // standstill is the usual time for which all signals together stay as they are, noise included; 0 where there are too few

@@ -12,8 +12,8 @@ import (
 
 // Step is one settled operating point of the converter on its droop line.
 type Step struct {
-	From, To time.Duration // since the capture's T0; zero for a step that was read by hand
-	Load     quantity.Power
+	From, To time.Duration  // since the capture's T0; zero for a step that was read by hand
+	Load     quantity.Power // of the whole bus, where it is known; 0 where not
 
 	Current, CurrentU quantity.Current // of the converter, bus side, positive to the bus; U is the standard uncertainty
 	Voltage, VoltageU quantity.Voltage // of the bus
@@ -38,7 +38,7 @@ func Steps(c capture.Capture) []Step {
 	limit := math.Max(traceOf(c, signal.DischargeLimit).at(math.Inf(1)), 0)
 	t, v := fit.OncePerRefresh(current.t, current.v, fit.Refresh(current.t, current.v, current.resolution))
 	var steps []Step
-	for _, part := range plateaus(t, v, current.resolution) {
+	for _, part := range atLimitSplit(plateaus(t, v, current.resolution), bus) {
 		from, to := part[0]+(part[1]-part[0])/3, part[1]
 		i, u := current.between(from, to), bus.between(from, to)
 		if len(i.t) < 6 || len(u.t) < 6 {
@@ -55,7 +55,6 @@ func Steps(c capture.Capture) []Step {
 		if p := sourceCurrent.between(from, to); p.ok {
 			s.SourceCurrent = quantity.Current(fit.Average(p.v).Mean)
 		}
-		s.Load = quantity.Power(meanI.Mean * meanU.Mean)
 		s.Limited = limit > 0 && math.Abs(float64(s.SourceCurrent)) > 0.985*limit ||
 			s.Source > 0 && s.Voltage < s.Source
 		steps = append(steps, s)
@@ -74,6 +73,28 @@ func currentFromPower(power, bus trace) trace {
 		tr.v = append(tr.v, p/bus.at(power.t[i]))
 	}
 	return tr
+}
+
+// atLimitSplit splits a stretch of one current again where the bus voltage falls in steps: a current limit hides the steps
+// of the load. A bus that hunts falls apart into short pieces, which do not count.
+func atLimitSplit(parts [][2]float64, bus trace) [][2]float64 {
+	const shortest = 0.8 // s
+	var all [][2]float64
+	for _, part := range parts {
+		within := bus.between(part[0], part[1])
+		t, v := fit.OncePerRefresh(within.t, within.v, fit.Refresh(within.t, within.v, within.resolution))
+		finer := plateaus(t, v, math.Max(bus.resolution, 0.0001*bus.greatest()))
+		sound := len(finer) > 1
+		for _, f := range finer {
+			sound = sound && f[1]-f[0] > shortest
+		}
+		if sound {
+			all = append(all, finer...)
+		} else {
+			all = append(all, part)
+		}
+	}
+	return all
 }
 
 // plateaus splits a record where the mean of the next four samples differs from that of the last four by more than the
