@@ -1,9 +1,14 @@
 package desk
 
 import (
+	"fmt"
 	"os"
+	"slices"
+	"strings"
 	"testing"
+	"unicode/utf8"
 
+	"chargehand/commission/finding"
 	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/signal"
 	"chargehand/commission/site"
@@ -58,4 +63,46 @@ func TestWholeSites(t *testing.T) {
 			}
 		})
 	}
+}
+
+func TestCatalogueOrder(t *testing.T) {
+	var ids []string
+	for _, f := range Findings(load(t, "wagtail"), tenths{}) {
+		if !slices.Contains(ids, f.ID) {
+			ids = append(ids, f.ID)
+		}
+	}
+	if !slices.Equal(ids, IDs) {
+		t.Errorf("Findings = %v, want the catalogue %v", ids, IDs)
+	}
+}
+
+func TestTablesFit(t *testing.T) {
+	for _, name := range names {
+		sheet := Check(load(t, name), nil)
+		for _, width := range []int{0, 80, 100, 140} {
+			var b strings.Builder
+			if err := sheet.WriteTable(&b, finding.TableOptions{Width: width}); err != nil {
+				t.Fatal(err)
+			}
+			for line := range strings.Lines(b.String()) {
+				if n := utf8.RuneCountInString(strings.TrimSuffix(line, "\n")); n > max(width, 80) {
+					t.Errorf("%s at %d: %d columns in %q", name, width, n, line)
+				}
+			}
+		}
+	}
+}
+
+func ExampleCheck() {
+	text, _ := site.Example()
+	s, _, err := site.Read("example", []byte(text))
+	if err != nil {
+		fmt.Println(err)
+		return
+	}
+	for _, f := range Check(s, nil).Only("window.margin").Findings {
+		fmt.Printf("%s %s: %.1f V, at least %.1f V\n", f.ID, f.Verdict, f.Value.Low, *f.Limit.Low)
+	}
+	// Output: window.margin pass: 145.7 V, at least 49.1 V
 }

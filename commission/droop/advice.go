@@ -227,8 +227,11 @@ func settled(s site.Site) []finding.Change {
 				finding.Change{Key: "infeed.setpoint", Subject: infeed.Name, Unit: "V", Was: float64(infeed.Setpoint.Nominal), Value: setpoint},
 				finding.Change{Key: "infeed.droop", Subject: infeed.Name, Unit: "V/A", Was: float64(original[k].Droop), Value: droop})
 		}
-		if slices.Equal(before, changes) && a.Feasible && len(outsiders(changed, p, a)) == 0 {
-			return changes
+		if slices.Equal(before, changes) {
+			if a.Feasible && len(outsiders(changed, p, a)) == 0 {
+				return changes
+			}
+			return nil
 		}
 	}
 	return nil

@@ -95,26 +95,26 @@ func (r reaching) corners(low, high float64) []squares {
 		for h := range q {
 			q[h] = phasorSquare(c, h+1)
 		}
-		kept = keepGreatest(kept, q)
+		kept = keepGreatest(kept, q, 1e-12*float64(r.phases*r.phases)/(low*low))
 	}
 	return kept
 }
 
 // keepGreatest adds q unless one of the kept is at least as great in every harmonic, and drops those that q exceeds so.
-func keepGreatest(kept []squares, q squares) []squares {
+func keepGreatest(kept []squares, q squares, slack float64) []squares {
 	for _, k := range kept {
-		if k.covers(q) {
+		if k.covers(q, slack) {
 			return kept
 		}
 	}
-	kept = slices.DeleteFunc(kept, q.covers)
+	kept = slices.DeleteFunc(kept, func(k squares) bool { return q.covers(k, slack) })
 	return append(kept, q)
 }
 
 // covers allows for rounding, so that the rotations of one pattern count once.
-func (q squares) covers(other squares) bool {
+func (q squares) covers(other squares, slack float64) bool {
 	for h := range q {
-		if other[h] > q[h]*(1+1e-12)+1e-9 {
+		if other[h] > q[h]+slack {
 			return false
 		}
 	}

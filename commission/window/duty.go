@@ -47,6 +47,9 @@ func DutyRange(s site.Site) finding.Finding {
 	if len(missing) > 0 {
 		return f.Lacking(missing...)
 	}
+	if busLow.values.Low <= 0 {
+		return f.Without(finding.Fail, "the lowest steady bus voltage is not above 0 V")
+	}
 	mean := (s.Source.HighestRest() + s.Source.LowestRest()) / 2
 	f = f.Judged(finding.Value{
 		Low:     1 - high.values.High/busLow.values.Low,
