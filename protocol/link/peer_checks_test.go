@@ -1,14 +1,11 @@
 package link_test
 
 import (
-	"bytes"
 	"encoding/hex"
 	"errors"
-	"fmt"
 	"os"
 	"path/filepath"
 	"strings"
-	"sync"
 	"testing"
 
 	"chargehand/protocol/link"
@@ -77,19 +74,7 @@ func checkPeer(t *testing.T, l *link.Link) {
 
 // frames remembers what a server answers to what, without the transaction identifiers.
 type frames struct {
-	mu      sync.Mutex
 	answers map[string][]byte
-	order   []string
-}
-
-func (f *frames) keep(request, answer []byte) {
-	f.mu.Lock()
-	defer f.mu.Unlock()
-	key := hex.EncodeToString(request[2:])
-	if f.answers[key] == nil {
-		f.order = append(f.order, key)
-	}
-	f.answers[key] = append([]byte(nil), answer[2:]...)
 }
 
 func (f *frames) answer(request []byte) []byte {
@@ -98,15 +83,6 @@ func (f *frames) answer(request []byte) []byte {
 		return nil
 	}
 	return append(append([]byte(nil), request[:2]...), a...)
-}
-
-func (f *frames) text(head string) []byte {
-	var b bytes.Buffer
-	b.WriteString(head)
-	for _, k := range f.order {
-		fmt.Fprintf(&b, "%s %s\n", k, hex.EncodeToString(f.answers[k]))
-	}
-	return b.Bytes()
 }
 
 func readFrames(t *testing.T, name string) *frames {

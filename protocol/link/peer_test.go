@@ -4,14 +4,18 @@ package link_test
 
 import (
 	"bufio"
+	"bytes"
 	"encoding/binary"
+	"encoding/hex"
 	"flag"
+	"fmt"
 	"net"
 	"os"
 	"os/exec"
 	"path/filepath"
 	"strconv"
 	"strings"
+	"sync"
 	"testing"
 	"time"
 
@@ -46,6 +50,32 @@ func TestPymodbus(t *testing.T) {
 			"# go test -tags peer -run TestPymodbus ./protocol/link -update\n")
 }
 
+// recording is frames with the order they came in.
+type recording struct {
+	frames
+	mu    sync.Mutex
+	order []string
+}
+
+func (f *recording) keep(request, answer []byte) {
+	f.mu.Lock()
+	defer f.mu.Unlock()
+	key := hex.EncodeToString(request[2:])
+	if f.answers[key] == nil {
+		f.order = append(f.order, key)
+	}
+	f.answers[key] = append([]byte(nil), answer[2:]...)
+}
+
+func (f *recording) text(head string) []byte {
+	var b bytes.Buffer
+	b.WriteString(head)
+	for _, k := range f.order {
+		fmt.Fprintf(&b, "%s %s\n", k, hex.EncodeToString(f.answers[k]))
+	}
+	return b.Bytes()
+}
+
 // peer starts a server that prints its port, reads from it through a recording proxy, and compares the order of its checks.
 func peer(t *testing.T, server *exec.Cmd, stored, head string) {
 	t.Helper()
@@ -76,7 +106,7 @@ func peer(t *testing.T, server *exec.Cmd, stored, head string) {
 	checkPeer(t, l)
 	l.Close()
 
-	f := &frames{answers: map[string][]byte{}}
+	f := &recording{frames: frames{answers: map[string][]byte{}}}
 	conn, err := net.DialTimeout("tcp", address, 3*time.Second)
 	if err != nil {
 		t.Fatal(err)

@@ -181,7 +181,9 @@ func (l *Link) received(c *call, conn net.Conn, where Where, adu, reply []byte) 
 		l.count(func(s *Status) { s.Irregular++ })
 		return l.broken(&MalformedError{where, wrong})
 	}
-	l.lastReply = time.Now()
+	if l.options.Gap > 0 {
+		l.lastReply = time.Now()
+	}
 	l.answered(c.received.Sub(c.sent))
 	if code != 0 {
 		return &ExceptionError{where, code}

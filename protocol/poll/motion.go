@@ -25,7 +25,6 @@ const (
 // motion follows how a signal's words change, by real time.
 type motion struct {
 	words     []uint16
-	value     float64
 	seenAt    time.Time
 	changedAt time.Time
 	changes   int

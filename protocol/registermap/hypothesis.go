@@ -52,16 +52,14 @@ func (h Hypothesis) String() string {
 // has tells whether one of the changes is the given one.
 func (h Hypothesis) has(c Change) bool { return slices.Contains(h.Changes, c) }
 
-// mostChanges bounds a hypothesis: with three changes at once something fits nearly anything.
-const mostChanges = 2
-
 // scales are the usual mistakes of scale.
 var scales = []float64{10, 0.1, 100, 0.01, 1000, 0.001}
 
 // numberTypes are all types but the bit.
 var numberTypes = []Type{U16, I16, U32, I32, U64, I64, F32, F64}
 
-// hypotheses gives every way to read a signal that differs from the map in two lines at most: the neighbouring address (or up
+// hypotheses gives every way to read a signal that differs from the map in two lines at most (with three changes at once
+// something fits nearly anything): the neighbouring address (or up
 // to three away, if that is all), the sister table, the type, the orders, the scale, the sign; of a bit, its number.
 func hypotheses(p Point) []Hypothesis {
 	single := variations(p)
