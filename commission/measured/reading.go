@@ -259,13 +259,17 @@ func repeated(_ paper, c capture.Capture) []finding.Cause {
 	if analogue < 3 || len(c.Samples) < 20 {
 		return nil
 	}
-	var stands []float64 // lengths of the stretches in which all samples are the same
+	var stands, long []float64 // lengths of the stretches in which all samples are the same
 	from := c.Samples[0]
 	last := from
+	alike := 1 // samples in the stretch
+	var many []bool
 	for _, s := range c.Samples[1:] {
-		if !same(s, last) {
-			stands = append(stands, (last.At - from.At).Seconds())
-			from = s
+		if same(s, last) {
+			alike++
+		} else {
+			stands, many = append(stands, (last.At-from.At).Seconds()), append(many, alike >= 5)
+			from, alike = s, 1
 		}
 		last = s
 	}
@@ -274,13 +278,12 @@ func repeated(_ paper, c capture.Capture) []finding.Cause {
 	if len(stands) < 5 {
 		return nil
 	}
-	var long []float64
-	for _, d := range stands {
-		if d > 0.35 && d > 6*math.Max(usual, 0.02) {
+	for i, d := range stands {
+		if many[i] && d > 0.35 && d > 6*math.Max(usual, 0.02) {
 			long = append(long, d)
 		}
 	}
-	if lastStand > 0.6 && lastStand > 8*math.Max(usual, 0.02) && lastStand > 0.15*(last.At-c.Samples[0].At).Seconds() && len(long) == 0 {
+	if alike >= 8 && lastStand > 0.6 && lastStand > 8*math.Max(usual, 0.02) && lastStand > 0.15*(last.At-c.Samples[0].At).Seconds() && len(long) == 0 {
 		return []finding.Cause{because("readings-frozen", 0.9, fmt.Sprintf("all %d signals stand still for the last %s, noise included", analogue, number(lastStand, "s"))), because("gateway-repeats-old", 0.5)}
 	}
 	if len(long) == 0 {
