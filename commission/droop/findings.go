@@ -108,9 +108,13 @@ func workings(w *finding.Working, sources []Source, names []string, l Load, unit
 	w.Given("P", "constant power of the load, negative for regeneration", unit, float64(l.Power))
 	w.Step("G", sumOf(conductance), "A/V", g)
 	w.Step("A", sumOf(amperes), "A", a)
-	if g == 0 {
+	switch {
+	case g == 0 && a == 0:
+		w.Given("V0_highest", "highest no-load setpoint: nothing flows, and that infeed holds the bus", "V", float64(p.Bus))
+		w.Step("V", "V0_highest", "V", float64(p.Bus))
+	case g == 0:
 		w.Step("V", "P / A", "V", float64(p.Bus))
-	} else {
+	default:
 		w.Step("V", "(A + sqrt(A^2 - 4 * G * P)) / (2 * G)", "V", float64(p.Bus))
 	}
 	return float64(p.Bus)

@@ -40,11 +40,9 @@ func stability(s site.Site) finding.Finding {
 	}
 	f = f.Judged(value, limit, 1-wantedStability)
 	w := finding.Explain(f.Basis, "incremental resistance of constant-power loads, from memory", "static; inductance of the lines and the regulators' speed ask for more")
-	v := workings(w, p.sources, names(s), l, "W")
-	g := math.Inf(1)
+	workings(w, p.sources, names(s), l, "W")
 	if value.Nominal > 0 {
-		g = float64(l.Power) / (v * v) / value.Nominal
-		w.Step("ratio", "P / V^2 / G", "1", float64(l.Power)/(v*v)/g)
+		w.Step("ratio", "P / V^2 / G", "1", value.Nominal)
 	} else {
 		w.Step("ratio", "0 * P", "1", 0)
 	}

@@ -22,7 +22,9 @@ func (f Finding) Explained() string {
 	e := f.Explanation
 	if e == nil {
 		fmt.Fprintf(&b, "  basis     %s\n", f.Basis)
-		b.WriteString("  there is nothing to work out: it has no value here\n")
+		if f.State == None {
+			b.WriteString("  there is nothing to work out: it has no value here\n")
+		}
 		return b.String()
 	}
 	fmt.Fprintf(&b, "  formula   %s\n", e.Formula)

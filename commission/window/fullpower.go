@@ -56,7 +56,7 @@ func (d chokeDuty) leastRest(limit, saturation, resistance, choke float64) float
 		peak, _ := d.peak(e, resistance, choke)
 		return peak <= saturation
 	}
-	if fits(e) {
+	if e >= d.bus || fits(e) { // a rest voltage above the bus is no operating point, and says so by its size
 		return e
 	}
 	const steps = 200

@@ -1,0 +1,17 @@
+//go:build peer
+
+package droop
+
+import (
+	"os/exec"
+	"testing"
+)
+
+// The netlist is run again: the stored output is what ngspice gives.
+func TestSolveAgainstNgspice(t *testing.T) {
+	out, err := exec.Command("ngspice", "-b", "testdata/bus.cir").Output()
+	if err != nil {
+		t.Fatalf("run ngspice -b testdata/bus.cir: %v", err)
+	}
+	compareWithNetlist(t, voltages(t, string(out)))
+}
