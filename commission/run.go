@@ -28,6 +28,7 @@ type Options struct {
 	Channels  []capture.Channel         // every signal of the map with its scaling
 	MaxAge    time.Duration             // older readings are withdrawn
 	Registers droop.Registers           // the map, for findings that change; nil without one
+	Moved     func(*chlog.Writer)       // told when the log goes on in another file; nil where nobody asks
 	Speed     float64                   // how much faster a rehearsal waits; 1 on a real device
 }
 
@@ -67,9 +68,11 @@ type Run struct {
 	ended     chan struct{}
 }
 
+// submission is an event, or a place where the log goes on.
 type submission struct {
-	event walk.Event
-	reply chan answer
+	event  walk.Event
+	moveTo string
+	reply  chan answer
 }
 
 type answer struct {
@@ -96,7 +99,17 @@ func (r *Run) Wait() { <-r.ended }
 
 // Submit hands in an event and returns when its records are on disk, or says why there are none.
 func (r *Run) Submit(ctx context.Context, event walk.Event) (Recorded, error) {
-	s := submission{event, make(chan answer, 1)}
+	return r.hand(ctx, submission{event: event, reply: make(chan answer, 1)})
+}
+
+// MoveLog goes on with the log in another file, where its own place takes nothing more, and says so in it. What was
+// acknowledged is all there; what was refused meanwhile has to be done again.
+func (r *Run) MoveLog(ctx context.Context, path string) error {
+	_, err := r.hand(ctx, submission{moveTo: path, reply: make(chan answer, 1)})
+	return err
+}
+
+func (r *Run) hand(ctx context.Context, s submission) (Recorded, error) {
 	select {
 	case r.submits <- s:
 	case <-r.ended:
@@ -116,7 +129,7 @@ func (r *Run) loop(ctx context.Context) {
 		case <-ctx.Done():
 			return
 		case s := <-r.submits:
-			recorded, err := r.submit(s.event)
+			recorded, err := r.serve(s)
 			r.publish()
 			s.reply <- answer{recorded, err}
 		case b, ok := <-batches:
@@ -128,6 +141,26 @@ func (r *Run) loop(ctx context.Context) {
 			r.publish()
 		}
 	}
+}
+
+func (r *Run) serve(s submission) (Recorded, error) {
+	if s.event == nil {
+		return Recorded{State: r.state}, r.moveLog(s.moveTo)
+	}
+	return r.submit(s.event)
+}
+
+func (r *Run) moveLog(path string) error {
+	moved, err := r.opt.Log.MoveTo(path)
+	if err != nil {
+		return fmt.Errorf("go on with the log in %s: %w", path, err)
+	}
+	r.opt.Log, r.failure = moved, nil
+	r.state = r.state.With(walk.Line{Seq: moved.Acknowledged().Lines - 1, Body: record.Resumed{}}).Ready()
+	if r.opt.Moved != nil {
+		r.opt.Moved(moved)
+	}
+	return nil
 }
 
 // submit turns an event into records on disk.

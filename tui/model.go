@@ -2,12 +2,16 @@ package tui
 
 import (
 	"context"
+	"fmt"
+	"strings"
 
 	tea "github.com/charmbracelet/bubbletea"
 
 	"chargehand/commission"
 	"chargehand/commission/desk"
+	"chargehand/commission/site"
 	"chargehand/tui/deskview"
+	"chargehand/tui/linkview"
 	"chargehand/tui/start"
 	"chargehand/tui/theme"
 	"chargehand/tui/walkview"
@@ -20,7 +24,7 @@ type Host interface {
 	// Open opens what was chosen there.
 	Open(ctx context.Context, chosen start.Entry) (walkview.Session, error)
 	// Check calculates a site's desk findings; an empty path is the built-in example.
-	Check(ctx context.Context, siteFile string) (desk.Sheet, error)
+	Check(ctx context.Context, siteFile string) (site.Site, desk.Sheet, error)
 }
 
 // screen is which screen is shown.
@@ -30,6 +34,7 @@ const (
 	onStart screen = iota
 	onWalk
 	onDesk
+	onLink
 )
 
 // Model is the whole program.
@@ -43,6 +48,7 @@ type Model struct {
 	start   start.Model
 	walk    walkview.Model
 	desk    deskview.Model
+	link    linkview.Model
 	session *walkview.Session
 	only    bool // one walk was asked for: leaving it ends the program
 	opening *start.Entry
@@ -56,6 +62,7 @@ type (
 		err     error
 	}
 	checkedMsg struct {
+		site  site.Site
 		sheet desk.Sheet
 		err   error
 	}
@@ -104,8 +111,8 @@ func (m Model) open(e start.Entry) tea.Cmd {
 
 func (m Model) check(file string) tea.Cmd {
 	return func() tea.Msg {
-		sheet, err := m.host.Check(context.Background(), file)
-		return checkedMsg{sheet, err}
+		s, sheet, err := m.host.Check(context.Background(), file)
+		return checkedMsg{s, sheet, err}
 	}
 }
 
@@ -144,6 +151,13 @@ func (m Model) Update(msg tea.Msg) (tea.Model, tea.Cmd) {
 		return m.checked(msg), nil
 	case walkview.FindingsWanted:
 		return m.findings(), nil
+	case walkview.LinkWanted:
+		m.shown = onLink
+		m.link = linkview.New(m.session.Places, m.session.MaxAge, m.session.Pace, m.theme, m.width, m.height, m.walk.Snapshot())
+		return m, nil
+	case linkview.Left:
+		m.shown = onWalk
+		return m, nil
 	case walkview.Left:
 		return m.leave(m.only)
 	case deskview.Left:
@@ -167,6 +181,8 @@ func (m Model) pass(msg tea.Msg) (tea.Model, tea.Cmd) {
 		m.walk, cmd = m.walk.Update(msg)
 	case m.shown == onDesk:
 		m.desk, cmd = m.desk.Update(msg)
+	case m.shown == onLink:
+		m.link, cmd = m.link.Update(msg)
 	default:
 		m.start, cmd = m.start.Update(msg)
 	}
@@ -175,7 +191,8 @@ func (m Model) pass(msg tea.Msg) (tea.Model, tea.Cmd) {
 
 func (m Model) resized(width, height int) Model {
 	m.width, m.height = width, height
-	m.start, m.walk, m.desk = m.start.Resized(width, height), m.walk.Resized(width, height), m.desk.Resized(width, height)
+	m.start, m.walk = m.start.Resized(width, height), m.walk.Resized(width, height)
+	m.desk, m.link = m.desk.Resized(width, height), m.link.Resized(width, height)
 	return m
 }
 
@@ -205,6 +222,7 @@ func (m Model) snapshot(msg snapshotMsg) (tea.Model, tea.Cmd) {
 	}
 	var cmd tea.Cmd
 	m.walk, cmd = m.walk.WithSnapshot(msg.snapshot)
+	m.link = m.link.WithSnapshot(msg.snapshot)
 	return m, tea.Batch(cmd, await(msg.run))
 }
 
@@ -215,7 +233,7 @@ func (m Model) checked(msg checkedMsg) Model {
 	}
 	m.start = m.start.WithMessage("")
 	m.before, m.shown = m.shown, onDesk
-	m.desk = deskview.New(msg.sheet.Site, msg.sheet.Findings, m.theme, m.width, m.height)
+	m.desk = deskview.New(msg.site, msg.sheet.Findings, m.theme, m.width, m.height)
 	return m
 }
 
@@ -224,7 +242,7 @@ func (m Model) findings() Model {
 	state := m.walk.State()
 	all := append(state.Measured(""), state.Desk()...)
 	m.before, m.shown = onWalk, onDesk
-	m.desk = deskview.New(state.Site().Name, all, m.theme, m.width, m.height)
+	m.desk = deskview.New(state.Site(), all, m.theme, m.width, m.height)
 	return m
 }
 
@@ -238,13 +256,56 @@ func (m Model) leave(quit bool) (tea.Model, tea.Cmd) {
 	return m, func() tea.Msg { return closedMsg{session.Close()} }
 }
 
+// LeastWidth and LeastHeight are the smallest terminal that screens are drawn in.
+const (
+	LeastWidth  = 80
+	LeastHeight = 24
+)
+
 // View draws the screen shown.
 func (m Model) View() string {
+	switch {
+	case m.width <= 0 || m.height <= 0:
+		return ""
+	case m.width < LeastWidth || m.height < LeastHeight:
+		return m.tooSmall()
+	}
 	switch m.shown {
 	case onWalk:
 		return m.walk.View()
 	case onDesk:
 		return m.desk.View()
+	case onLink:
+		return m.link.View()
 	}
 	return m.start.View()
+}
+
+// tooSmall says what the screens need; an alarm of the walk is said all the same.
+func (m Model) tooSmall() string {
+	text := fmt.Sprintf("chargehand needs %d columns and %d rows; this terminal has %d and %d. Make it larger: nothing is lost.",
+		LeastWidth, LeastHeight, m.width, m.height)
+	if alarm := m.alarm(); alarm != "" {
+		text = alarm + " " + text
+	}
+	var rows []string
+	line := ""
+	for _, word := range strings.Fields(text) {
+		if line != "" && theme.Width(line)+1+theme.Width(word) > m.width {
+			rows, line = append(rows, line), ""
+		}
+		line = strings.TrimSpace(line + " " + word)
+	}
+	rows = append(rows, line)
+	for i := range rows {
+		rows[i] = m.theme.Clip(rows[i], m.width)
+	}
+	return strings.Join(rows[:min(len(rows), m.height)], "\n")
+}
+
+func (m Model) alarm() string {
+	if m.session == nil {
+		return ""
+	}
+	return m.walk.Alarm()
 }

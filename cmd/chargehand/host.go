@@ -6,13 +6,17 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"io/fs"
 	"os"
 	"path/filepath"
 	"slices"
+	"strings"
 
 	"chargehand/commission/chlog"
 	"chargehand/commission/desk"
+	"chargehand/commission/finding"
 	"chargehand/commission/record"
+	"chargehand/commission/signal"
 	"chargehand/commission/site"
 	"chargehand/commission/unattended"
 	"chargehand/tui/start"
@@ -146,21 +150,57 @@ func (h *host) session(s *session, notes []string) walkview.Session {
 	if s.operator != nil {
 		operator = s.operator
 	}
-	return walkview.Session{
-		Notes: notes, Run: s.run, Operator: operator, Log: s.log, MaxAge: s.maxAge, Pace: s.clock.Pace, Signed: s.signer != nil, Unsigned: s.unsigned,
-		Bell:   func() { fmt.Fprint(h.app.out, "\a") },
+	places := map[signal.Name]string{}
+	for _, p := range s.papers.registers.Points {
+		places[p.Name] = p.Place()
+	}
+	open := walkview.Session{
+		Notes: notes, Run: s.run, Operator: operator, Log: s.log, MaxAge: s.maxAge, Pace: s.clock.Pace, Unsigned: s.unsigned,
+		Bell: func() { fmt.Fprint(h.app.out, "\a") }, Places: places,
+		Check:  func(changed site.Site) []finding.Finding { return desk.Findings(changed, s.papers.registersOrNone()) },
+		Move:   s.move,
 		Finish: func(ctx context.Context) ([]string, error) { return s.finish(ctx, h.app) },
 		Close:  s.close,
 	}
+	if s.papers.file != "" {
+		open.KeepSite = func(text string) (string, error) { return h.app.keepRevision(s.papers.file, text) }
+	}
+	return open
+}
+
+// move goes on with the log in another file.
+func (s *session) move(path string) error {
+	if err := s.run.MoveLog(context.Background(), path); err != nil {
+		return err
+	}
+	s.log = path
+	return nil
+}
+
+// keepRevision writes a revised site file beside the old one, which is never touched: wagtail.site.toml becomes
+// wagtail.rev1.site.toml, then rev2.
+func (a *app) keepRevision(file, text string) (string, error) {
+	base, ending := strings.TrimSuffix(file, ".toml"), ".toml"
+	if before, ok := strings.CutSuffix(base, ".site"); ok {
+		base, ending = before, ".site.toml"
+	}
+	for n := 1; n < 1000; n++ {
+		path := fmt.Sprintf("%s.rev%d%s", base, n, ending)
+		err := writeNew(a.path(path), []byte(text))
+		if !errors.Is(err, fs.ErrExist) {
+			return path, err
+		}
+	}
+	return "", fmt.Errorf("%s has a thousand revisions; clear some away", file)
 }
 
 // Check calculates a site's desk findings.
-func (h *host) Check(_ context.Context, file string) (desk.Sheet, error) {
+func (h *host) Check(_ context.Context, file string) (site.Site, desk.Sheet, error) {
 	p, err := h.app.papers(file)
 	if err != nil {
-		return desk.Sheet{}, err
+		return site.Site{}, desk.Sheet{}, err
 	}
-	return desk.Check(p.site, p.registersOrNone()), nil
+	return p.site, desk.Check(p.site, p.registersOrNone()), nil
 }
 
 // glimpse is what a start screen says of a log.

@@ -278,6 +278,7 @@ func (s *session) start(ctx context.Context, a *app, o walkOptions, state walk.S
 		Channels:  channels(s.papers.registers),
 		MaxAge:    s.maxAge,
 		Registers: s.papers.registersOrNone(),
+		Moved:     func(w *chlog.Writer) { s.writer = w },
 		Speed:     o.speed,
 	})
 	return nil

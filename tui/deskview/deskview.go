@@ -13,6 +13,7 @@ import (
 
 	"chargehand/commission/finding"
 	"chargehand/commission/quantity"
+	"chargehand/commission/site"
 	"chargehand/tui/form"
 	"chargehand/tui/theme"
 )
@@ -25,15 +26,18 @@ type Model struct {
 	theme         theme.Theme
 	keys          form.Keys
 	width, height int
-	site          string
+	site          site.Site
 	findings      []finding.Finding
 	at, top       int
 	opened        bool // the calculation of the finding at is shown
+	window        bool // the window over the state of charge is shown
+	cursor        *float64
+	explain       bool
 	page          int
 }
 
 // New makes the screen of some findings, the gravest first; within a verdict they keep their order.
-func New(site string, findings []finding.Finding, t theme.Theme, width, height int) Model {
+func New(of site.Site, findings []finding.Finding, t theme.Theme, width, height int) Model {
 	sorted := slices.Clone(findings)
 	slices.SortStableFunc(sorted, func(a, b finding.Finding) int {
 		switch {
@@ -46,7 +50,7 @@ func New(site string, findings []finding.Finding, t theme.Theme, width, height i
 	})
 	k := form.DefaultKeys()
 	k.Open.SetHelp("Enter", "the calculation")
-	return Model{theme: t, keys: k, width: width, height: height, site: site, findings: sorted}
+	return Model{theme: t, keys: k, width: width, height: height, site: of, findings: sorted}
 }
 
 // Resized gives the screen a new size.
@@ -61,7 +65,19 @@ func (m Model) Update(msg tea.Msg) (Model, tea.Cmd) {
 	if !ok {
 		return m, nil
 	}
+	if m.explain {
+		m.explain = false
+		return m, nil
+	}
 	switch {
+	case key.Matches(press, m.keys.Explain):
+		m.explain = true
+	case press.String() == windowKey:
+		m.window, m.cursor = !m.window, nil
+	case m.window && key.Matches(press, m.keys.Back, m.keys.Open):
+		m.window = false
+	case m.window:
+		return m.read(press), nil
 	case key.Matches(press, m.keys.Back) && m.opened:
 		m.opened, m.page = false, 0
 	case key.Matches(press, m.keys.Back):
@@ -102,28 +118,67 @@ func (m Model) View() string {
 	if m.width <= 0 || m.height <= 0 {
 		return ""
 	}
-	rows := []string{" " + m.theme.Paint(theme.Title, theme.Clean(m.site)) + m.counts(),
+	rows := []string{" " + m.theme.Paint(theme.Title, theme.Clean(m.site.Name)) + m.counts(),
 		m.theme.Paint(theme.Wire, strings.Repeat(m.theme.Pick("─", "-"), m.width))}
-	if m.opened && m.at < len(m.findings) {
-		text := Explained(m.findings[m.at], m.theme, m.width-2)
-		first := min(m.page, max(0, len(text)-m.room()))
-		for _, l := range text[first:min(first+m.room(), len(text))] {
-			rows = append(rows, " "+l)
-		}
-	} else {
-		for i := m.top; i < min(m.top+m.room(), len(m.findings)); i++ {
-			rows = append(rows, m.row(m.findings[i], i == m.at))
-		}
-	}
+	rows = append(rows, m.body()...)
 	for len(rows) < m.height-1 {
 		rows = append(rows, "")
 	}
-	rows = append(rows[:m.height-1], " "+form.HelpLine(m.theme, max(m.width-2, 0), []key.Binding{m.keys.Open, m.keys.Up, m.keys.Down, m.keys.PageDown, m.keys.Back}))
+	rows = append(rows[:m.height-1], " "+form.HelpLine(m.theme, max(m.width-2, 0), m.shortHelp()))
 	for i := range rows {
 		rows[i] = m.theme.Clip(rows[i], m.width)
 	}
 	return strings.Join(rows, "\n")
 }
+
+// windowKey shows the window over the state of charge.
+const windowKey = "g"
+
+func (m Model) shortHelp() []key.Binding {
+	k := m.keys
+	graph := key.NewBinding(key.WithKeys(windowKey), key.WithHelp(windowKey, "window chart"))
+	switch {
+	case m.explain:
+		return []key.Binding{k.Back}
+	case m.window:
+		return []key.Binding{k.Back, k.CursorLeft, k.CursorRight}
+	case m.opened:
+		k.Open.SetHelp("Enter", "the list")
+		return []key.Binding{k.Open, k.Back, graph, k.Explain, k.PageDown, k.PageUp}
+	}
+	return []key.Binding{k.Open, k.Back, graph, k.Explain, k.Up, k.Down, k.PageDown}
+}
+
+func (m Model) body() []string {
+	switch {
+	case m.explain:
+		page := form.HelpPage(m.theme, m.width-2, m.height-3, "Desk findings", purpose, [][]key.Binding{m.shortListed()})
+		return strings.Split(page, "\n")
+	case m.window:
+		return strings.Split(m.windowChart().View(m.theme, m.width-1, m.height-3), "\n")
+	case m.opened && m.at < len(m.findings):
+		text := Explained(m.findings[m.at], m.theme, m.width-2)
+		first := min(m.page, max(0, len(text)-m.room()))
+		var rows []string
+		for _, l := range text[first:min(first+m.room(), len(text))] {
+			rows = append(rows, " "+l)
+		}
+		return rows
+	}
+	var rows []string
+	for i := m.top; i < min(m.top+m.room(), len(m.findings)); i++ {
+		rows = append(rows, m.row(m.findings[i], i == m.at))
+	}
+	return rows
+}
+
+func (m Model) shortListed() []key.Binding {
+	m.explain = false
+	return m.shortHelp()
+}
+
+const purpose = "Every calculation of this site, what needs attention first: its verdict, its range over all corners of the tolerances, " +
+	"and its limit. Enter shows the calculation with this site's numbers put in and what would make a failed one pass."
 
 func (m Model) counts() string {
 	counts := map[finding.Verdict]int{}

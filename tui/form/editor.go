@@ -57,8 +57,25 @@ func (e editor) update(msg tea.KeyMsg, keys KeyMap) (next editor, changed bool) 
 	return e, e.text != before
 }
 
-// insert puts text before the cursor. The whole is cleaned once more, since a mark may join the letter before it.
+// Blank stands in a prepared text for what is still to be written.
+const Blank = "__"
+
+// toBlank puts the cursor on the next blank from where it stands, or on the first; a text without one stays as it is.
+func (e editor) toBlank() editor {
+	if i := strings.Index(e.text[e.cursor:], Blank); i >= 0 {
+		e.cursor += i
+	} else if i := strings.Index(e.text, Blank); i >= 0 {
+		e.cursor = i
+	}
+	return e
+}
+
+// insert puts text before the cursor, in place of a blank that stands there. The whole is cleaned once more, since a mark
+// may join the letter before it.
 func (e editor) insert(text string) editor {
+	if strings.HasPrefix(e.text[e.cursor:], Blank) && strings.TrimSpace(text) != "" {
+		e = e.cut(e.cursor, e.cursor+len(Blank))
+	}
 	head := theme.Clean(e.text[:e.cursor] + text)
 	tail := e.text[e.cursor:]
 	if room := mostCharacters - len(tail); len(head) > room {

@@ -61,11 +61,17 @@ func (f Field) WithValue(text string) Field {
 	return f
 }
 
+// hasBlank tells whether something of a prepared text is still to be written.
+func (f Field) hasBlank() bool { return !f.IsChoice() && strings.Contains(f.editor.text, Blank) }
+
 // IsChoice tells whether the field offers options instead of taking text; letters then stay free for other keys.
 func (f Field) IsChoice() bool { return f.options != nil }
 
 // Verdict is what the check says to the present value.
 func (f Field) Verdict() (ok bool, message string) {
+	if f.hasBlank() {
+		return false, "write what stands for " + Blank
+	}
 	if f.Check == nil {
 		return true, ""
 	}

@@ -46,6 +46,8 @@ func (f Form) Update(msg tea.Msg) (Form, Outcome) {
 		return f.withKey(k), Editing
 	case key.Matches(k, f.Keys.Leave):
 		return f, Left
+	case key.Matches(k, f.Keys.Accept) && f.fields[f.focus].hasBlank():
+		return f.onBlank(), Editing
 	case key.Matches(k, f.Keys.Accept) && f.focus == len(f.fields)-1:
 		return f.accept()
 	case key.Matches(k, f.Keys.Next), key.Matches(k, f.Keys.Accept):
@@ -58,6 +60,13 @@ func (f Form) Update(msg tea.Msg) (Form, Outcome) {
 
 func (f Form) withKey(msg tea.KeyMsg) Form {
 	return f.with(f.focus, f.fields[f.focus].update(msg, f.Keys))
+}
+
+// onBlank puts the cursor on the focused field's next blank.
+func (f Form) onBlank() Form {
+	field := f.fields[f.focus]
+	field.editor, field.touched = field.editor.toBlank(), true
+	return f.with(f.focus, field)
 }
 
 // with replaces one field in a copy.
@@ -109,6 +118,17 @@ func (f Form) Field(id string) (Field, bool) {
 
 // Fields are the fields in order.
 func (f Form) Fields() []Field { return append([]Field(nil), f.fields...) }
+
+// Prepared is the form with a prepared text in one field, which gets the focus, on its first blank if it has one.
+func (f Form) Prepared(id, text string) Form {
+	f = f.WithValue(id, text).Focus(id)
+	if field, ok := f.Field(id); ok && field.hasBlank() {
+		field.editor.cursor = 0
+		f = f.with(f.focus, field)
+		return f.onBlank()
+	}
+	return f
+}
 
 // WithValue is the form with another text in one field.
 func (f Form) WithValue(id, text string) Form {

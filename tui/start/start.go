@@ -87,6 +87,10 @@ func (m Model) Update(msg tea.Msg) (Model, tea.Cmd) {
 		return m, nil
 	}
 	switch {
+	case key.Matches(press, m.keys.First):
+		m.at = 0
+	case key.Matches(press, m.keys.Last):
+		m.at = max(len(m.entries)-1, 0)
 	case key.Matches(press, m.keys.Up):
 		m.at = max(0, m.at-1)
 	case key.Matches(press, m.keys.Down):
@@ -126,27 +130,72 @@ func (m Model) rows() []string {
 		t.Paint(theme.Wire, strings.Repeat(t.Pick("─", "-"), m.width)),
 	}
 	if m.explain {
-		return append(rows, "", "  Choose with the arrows and press Enter. A rehearsal goes the whole walk on a simulated converter and dials nothing",
-			"  but this computer itself; a walk reads the device that the site file names, and only reads.",
-			"  Unfinished walks come first: they go on exactly where their log ends.", "",
-			"  `chargehand new my.site.toml` writes a site file to start from; `chargehand --help` lists the commands.")
+		page := form.HelpPage(t, m.width-4, m.height-3, "Where to begin", purpose, [][]key.Binding{{m.keys.Up, m.keys.Down, m.keys.Open, m.keys.Back}})
+		for _, l := range strings.Split(page, "\n") {
+			rows = append(rows, "  "+l)
+		}
+		return rows
 	}
+	list, from, to := m.list()
+	foot := m.foot()
+	room := max(m.height-1-len(rows)-len(foot), 1)
+	first := min(max(0, to-room), from, max(len(list)-room, 0))
+	list = list[first:min(first+room, len(list))]
+	rows = append(rows, list...)
+	return append(rows, foot...)
+}
+
+// list is all entries under their headings, and which rows of it the chosen one takes.
+func (m Model) list() (rows []string, from, to int) {
 	last := Kind("")
 	for i, e := range m.entries {
+		start := len(rows)
 		if heading := headings[e.Kind]; heading != headings[last] {
-			rows = append(rows, "", "  "+t.Paint(theme.Faint, heading))
+			rows = append(rows, "", "  "+m.theme.Paint(theme.Faint, heading))
 		}
 		last = e.Kind
 		rows = append(rows, m.entry(e, i == m.at)...)
+		if i == m.at {
+			from, to = start, len(rows)
+		}
 	}
-	rows = append(rows, "")
-	if m.message != "" {
-		rows = append(rows, "  "+t.Paint(theme.Abnormal, theme.Clean(m.message)))
-	}
-	return append(rows, "", "  "+t.Paint(theme.Faint, "It only reads the device, it assists and does not authorise. Local codes, the permit to work,"),
-		"  "+t.Paint(theme.Faint, "the makers' instructions and licensed practice prevail. A shown voltage never stands for"),
-		"  "+t.Paint(theme.Faint, "absence of voltage."))
+	return rows, from, to
 }
+
+// foot is what was said last, and what the program is not.
+func (m Model) foot() []string {
+	rows := []string{""}
+	if m.message != "" {
+		for _, l := range wrap(theme.Clean(m.message), m.width-4) {
+			rows = append(rows, "  "+m.theme.Paint(theme.Abnormal, l))
+		}
+		rows = append(rows, "")
+	}
+	const limits = "It only reads the device; it assists and does not authorise. Local codes, the permit to work, the makers' " +
+		"instructions and licensed practice prevail. A shown voltage never stands for absence of voltage."
+	for _, l := range wrap(limits, m.width-4) {
+		rows = append(rows, "  "+m.theme.Paint(theme.Faint, l))
+	}
+	return rows
+}
+
+// wrap breaks a text at blanks; a word that is longer than a line is cut when the line is clipped.
+func wrap(text string, width int) []string {
+	var rows []string
+	line := ""
+	for _, word := range strings.Fields(text) {
+		if line != "" && theme.Width(line)+1+theme.Width(word) > width {
+			rows, line = append(rows, line), ""
+		}
+		line = strings.TrimSpace(line + " " + word)
+	}
+	return append(rows, line)
+}
+
+const purpose = "Choose with the arrows and press Enter. A rehearsal goes the whole walk on a simulated converter and dials nothing but " +
+	"this computer itself; a walk reads the device that the site file names, and only reads. Unfinished walks come first: they go " +
+	"on exactly where their log ends. `chargehand new --guided my.site.toml` asks for the values of a new site; `chargehand " +
+	"--help` lists the commands."
 
 var headings = map[Kind]string{
 	Resume: "not finished", Walk: "walk at the switchboard", Rehearse: "rehearse on a simulated converter", Check: "desk checks",

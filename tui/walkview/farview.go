@@ -83,16 +83,8 @@ func (m Model) difference() far.Figure {
 
 func (m Model) limitOf(p walk.Point, name signal.Name) string {
 	for _, c := range p.Accept {
-		if c.What != string(name) {
-			continue
-		}
-		switch {
-		case c.Low != nil && c.High != nil:
-			return quantity.Engineering(*c.Low, c.Unit, 3) + " … " + quantity.Engineering(*c.High, c.Unit, 3)
-		case c.High != nil:
-			return "at most " + quantity.Engineering(*c.High, c.Unit, 3)
-		case c.Low != nil:
-			return "at least " + quantity.Engineering(*c.Low, c.Unit, 3)
+		if c.What == string(name) {
+			return limitWords(c)
 		}
 	}
 	return ""

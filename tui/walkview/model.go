@@ -3,15 +3,17 @@ package walkview
 import (
 	"context"
 	"fmt"
+	"maps"
+	"slices"
 	"strings"
 
 	"github.com/charmbracelet/bubbles/key"
 	tea "github.com/charmbracelet/bubbletea"
 
 	"chargehand/commission"
+	"chargehand/commission/capture"
 	"chargehand/commission/record"
 	"chargehand/commission/signal"
-	"chargehand/commission/unattended"
 	"chargehand/commission/walk"
 	"chargehand/tui/oneline"
 	"chargehand/tui/theme"
@@ -28,9 +30,12 @@ type Model struct {
 	plan     oneline.Plan
 	planOf   string // hash of the site file that plan was made from
 
-	point   string // id of the open point
-	page    int    // first line of the point's text
-	acts    int    // how many of the point's acts the simulated plant's hand has done
+	point   string                               // id of the open point
+	page    int                                  // first line of the point's text
+	acts    int                                  // how many of the point's acts the simulated plant's hand has done
+	kept    map[capture.Kind]commission.Progress // the last capture of each kind, as it ended; never changed, only replaced
+	noted   map[string]float64                   // read by hand before its point's turn; never changed, only replaced
+	words   bool                                 // the point's text is shown where its chart would be
 	prompt  *prompt
 	message string // what was recorded or refused last
 	refused bool
@@ -55,9 +60,16 @@ type (
 		err error
 	}
 	measuredMsg struct {
-		what  string
-		value float64
-		err   error
+		values  map[string]float64 // by what was measured, in its coherent unit
+		because []string           // why something has no value
+	}
+	keptMsg struct {
+		path string
+		err  error
+	}
+	movedMsg struct {
+		path string
+		err  error
 	}
 	finishedMsg struct {
 		lines []string
@@ -67,6 +79,9 @@ type (
 
 // FindingsWanted asks the root to show the findings of the walk's site.
 type FindingsWanted struct{}
+
+// LinkWanted asks the root to show every signal of the device.
+type LinkWanted struct{}
 
 // Left says that the screen was left; the walk goes on in its log.
 type Left struct{}
@@ -87,12 +102,24 @@ func (m Model) Resized(width, height int) Model {
 // WithSnapshot takes what the walk's owner published.
 func (m Model) WithSnapshot(s commission.Snapshot) (Model, tea.Cmd) {
 	before := m.snapshot
+	if ended := before.Capture; ended != nil && (s.Capture == nil || s.Capture.Point != ended.Point) && ended.Phase == commission.Running {
+		m = m.keep(*ended)
+	}
 	m = m.withSnapshot(s)
 	if because := ring(before, s); because != "" && !m.silent {
 		m.rung = because
 		return m, m.bell()
 	}
 	return m, nil
+}
+
+// keep keeps a capture that has ended, for its points to show.
+func (m Model) keep(ended commission.Progress) Model {
+	kept := map[capture.Kind]commission.Progress{}
+	maps.Copy(kept, m.kept)
+	kept[ended.Kind] = ended
+	m.kept = kept
+	return m
 }
 
 func (m Model) withSnapshot(s commission.Snapshot) Model {
@@ -127,7 +154,7 @@ func (m Model) bell() tea.Cmd {
 }
 
 // ring says why the bell rings between two snapshots, or nothing: the link is lost, the pre-charge must be opened, the
-// closing difference is reached.
+// closing difference is reached, a limit of the open bus is passed.
 func ring(before, now commission.Snapshot) string {
 	switch {
 	case before.Link.Up && !now.Link.Up:
@@ -163,7 +190,22 @@ func (m Model) Update(msg tea.Msg) (Model, tea.Cmd) {
 	case operatedMsg:
 		return m.operated(msg), nil
 	case measuredMsg:
+		if m.prompt == nil {
+			return m.metered(msg)
+		}
 		return m.measured(msg), nil
+	case keptMsg:
+		if msg.err != nil {
+			return m.refuse("the revised site file stands in the log only: " + msg.err.Error()), nil
+		}
+		return m.say("revised site file written: " + msg.path), nil
+	case movedMsg:
+		m.busy = false
+		if msg.err != nil {
+			return m.refuse(msg.err.Error()), nil
+		}
+		m.session.Log = msg.path
+		return m.say("the log goes on in " + msg.path), nil
 	case finishedMsg:
 		return m.finished(msg), nil
 	}
@@ -207,6 +249,10 @@ func (m Model) pressed(msg tea.KeyMsg) (Model, tea.Cmd) {
 		return m.cursorBy(-1), nil
 	case key.Matches(msg, k.Findings):
 		return m, func() tea.Msg { return FindingsWanted{} }
+	case key.Matches(msg, k.Link):
+		return m, func() tea.Msg { return LinkWanted{} }
+	case key.Matches(msg, k.NextPane):
+		m.words, m.page = !m.words, 0
 	case key.Matches(msg, k.Back):
 		if m.far || m.cursor != nil {
 			m.far, m.cursor = false, nil
@@ -230,20 +276,84 @@ func (m Model) pressedAtPoint(msg tea.KeyMsg) (Model, tea.Cmd) {
 	case key.Matches(msg, k.Again):
 		return m.again(p)
 	case key.Matches(msg, k.Fail):
-		return m.ask(askFail(p)), nil
+		return m.ask(m.askFail(p)), nil
 	case key.Matches(msg, k.NotApplicable):
-		return m.ask(askOmit(p)), nil
+		if !p.MayOmit {
+			return m.refuse(p.ID + " cannot be left out; fail it with a deviation instead"), nil
+		}
+		return m.ask(m.askOmit(p)), nil
 	case key.Matches(msg, k.Note):
 		return m.ask(askNote()), nil
 	case key.Matches(msg, k.Punch):
-		return m.ask(askPunch(p)), nil
+		return m.ask(m.askPunch(p)), nil
+	case key.Matches(msg, k.Clear):
+		if open := openPunches(m.snapshot.State); len(open) > 0 {
+			return m.ask(askClear(open)), nil
+		}
+		return m.refuse("no punch item is open"), nil
 	case key.Matches(msg, k.Deviate):
 		return m.ask(askDeviation(p, m.snapshot.State.People())), nil
-	case key.Matches(msg, k.Typed) && len(p.Hand) > 0:
-		return m.do(action{step: stepMeasure, hand: p.Hand[0]}, p)
+	case key.Matches(msg, k.Witness):
+		return m.ask(m.askWitness(p)), nil
+	case key.Matches(msg, k.Instrument):
+		return m.ask(askInstrument()), nil
+	case key.Matches(msg, k.Change):
+		return m.ask(m.askChange(p)), nil
+	case key.Matches(msg, k.Hasten):
+		return m.hasten()
+	case key.Matches(msg, k.Place) && m.snapshot.Failure != nil:
+		return m.ask(askPlace(m.session.Log + ".moved.chlog")), nil
+	case key.Matches(msg, k.Typed):
+		return m.measure(p)
+	default:
+		return m.refuse("no key of this screen; ? shows them"), nil
 	}
-	return m, nil
 }
+
+func openPunches(state walk.State) []record.Punch {
+	return slices.DeleteFunc(slices.Clone(state.Punches()), func(k record.Punch) bool { return k.Event != "raised" })
+}
+
+// askWitness asks who takes part, or at a point with a result who signs it beside the first.
+func (m Model) askWitness(p walk.Point) *prompt {
+	st := m.snapshot.State.Status(p.ID)
+	people := m.snapshot.State.People()
+	if len(people) == 0 {
+		return askPerson(true)
+	}
+	if st.Result == walk.Open {
+		return askPerson(false)
+	}
+	others := slices.DeleteFunc(slices.Clone(people), func(person record.Person) bool { return slices.Contains(st.Signed, person.ID) })
+	return askSignature(p, others, m.session.Unsigned)
+}
+
+// measure asks for an instrument's reading: the point's own, or during a pre-charge the one at the open bypass.
+func (m Model) measure(p walk.Point) (Model, tea.Cmd) {
+	if c := m.snapshot.Capture; c != nil && c.Kind == capture.Precharge && len(p.Hand) == 0 {
+		p, _ = m.snapshot.State.Point(differencePoint)
+	}
+	if len(p.Hand) == 0 {
+		return m.refuse("nothing is read by instrument at " + p.ID), nil
+	}
+	return m.ask(m.askMeasure(p)), nil
+}
+
+// hasten lets a rehearsal's cool-down pass faster.
+func (m Model) hasten() (Model, tea.Cmd) {
+	state := m.snapshot.State
+	switch {
+	case !state.IsRehearsal():
+		return m.refuse("a wait on a real plant is not shortened"), nil
+	case state.CoolsFor(m.snapshot.Now) == 0 || state.Opened().Speed <= 1:
+		return m.refuse("there is no wait to shorten"), nil
+	}
+	return m.submit("cool-down hastened", walk.Hastened{Hastened: record.Hastened{What: "cool-down", Factor: state.Opened().Speed}})
+}
+
+// refuse and say put a line under the screen.
+func (m Model) refuse(because string) Model { m.message, m.refused = because, true; return m }
+func (m Model) say(what string) Model       { m.message, m.refused = what, false; return m }
 
 // again takes a point's readings once more, or opens a point that has its result.
 func (m Model) again(p walk.Point) (Model, tea.Cmd) {
@@ -253,12 +363,12 @@ func (m Model) again(p walk.Point) (Model, tea.Cmd) {
 	switch {
 	case p.Capture != "":
 		return m.do(nextArm(m.snapshot, p), p)
-	case len(p.Hand) > 0 && has(m.snapshot.State, p, record.FromDevice, ""):
-		return m.do(action{step: stepMeasure, hand: p.Hand[0]}, p)
 	case p.Wants(walk.Live):
-		return m.submit("live readings taken", walk.TakeLive{Point: p.ID})
+		return m.submit("live readings", walk.TakeLive{Point: p.ID})
+	case len(p.Hand) > 0:
+		return m.ask(m.askMeasure(p)), nil
 	}
-	return m.ask(askSeen(p)), nil
+	return m.ask(m.askSeen(p)), nil
 }
 
 // enter does the next thing.
@@ -270,42 +380,63 @@ func (m Model) enter() (Model, tea.Cmd) {
 func (m Model) do(a action, p walk.Point) (Model, tea.Cmd) {
 	switch a.step {
 	case stepPerson:
-		return m.ask(askPerson()), nil
+		return m.ask(askPerson(true)), nil
 	case stepGo:
 		return m.at(a.point), nil
 	case stepEnter:
 		return m.submit(fmt.Sprintf("stage %d entered", p.Stage), walk.Enter{Stage: p.Stage})
 	case stepArm:
 		m.acts = 0
-		return m.submit("capture armed", walk.Arm{Point: p.ID})
+		return m.submit("capture armed", walk.Arm{Point: a.point})
 	case stepCause:
-		return m.ask(askCause()), nil
+		return m.ask(m.askCause()), nil
 	case stepOverride:
 		m.acts = 0
 		return m.ask(askOverride(p, a.reason)), nil
 	case stepLive:
-		return m.submit("live readings taken", walk.TakeLive{Point: p.ID})
+		return m.submit("live readings", walk.TakeLive{Point: p.ID})
 	case stepMeasure:
-		return m.ask(askMeasure(p, a.hand, m.instruments(), m.session.Operator != nil)), nil
+		return m.ask(m.askMeasure(p)), nil
 	case stepSeen:
-		return m.ask(askSeen(p)), nil
+		return m.ask(m.askSeen(p)), nil
 	case stepPass:
-		return m.submit(p.ID+" passed", walk.Judge{Point: p.ID, Result: walk.Passed})
+		return m.judge(p, walk.Passed, "")
 	case stepFail:
 		if m.snapshot.State.Status(p.ID).Result == walk.Failed {
-			return m.ask(askPunch(p)), nil
+			return m.ask(m.askPunch(p)), nil
 		}
-		return m.ask(askFail(p)), nil
+		return m.ask(m.askFail(p)), nil
 	case stepSign:
-		return m.submit(p.ID+" signed", walk.Sign{Point: p.ID, Person: m.person(), UnsignedBecause: m.session.Unsigned})
+		return m.submit(p.ID+" signed", m.signature(p))
 	case stepSeal:
 		return m.ask(askSeal()), nil
+	case stepNothing:
+		if a.reason != "" {
+			return m.refuse(a.reason), nil
+		}
 	}
 	return m, nil
 }
 
+// judge gives a point's result, with the signature of whoever goes the walk where it is a hold.
+func (m Model) judge(p walk.Point, result walk.Result, note string) (Model, tea.Cmd) {
+	events := []walk.Event{walk.Judge{Point: p.ID, Result: result, Note: note}}
+	word := map[walk.Result]string{walk.Passed: " passed", walk.NotApplicable: " not applicable"}[result]
+	if p.Kind == walk.Hold {
+		events, word = append(events, m.signature(p)), word+" and signed"
+	}
+	return m.submit(p.ID+word, events...)
+}
+
+func (m Model) signature(p walk.Point) walk.Event {
+	return walk.Sign{Point: p.ID, Person: m.person(), UnsignedBecause: m.session.Unsigned}
+}
+
 // submit hands events to the walk's owner in order; what came of them comes back as one message.
 func (m Model) submit(what string, events ...walk.Event) (Model, tea.Cmd) {
+	if m.busy {
+		return m, nil // a key pressed twice is not meant twice
+	}
 	m.busy = true
 	run := m.session.Run
 	return m, func() tea.Msg {
@@ -313,7 +444,8 @@ func (m Model) submit(what string, events ...walk.Event) (Model, tea.Cmd) {
 		for _, event := range events {
 			recorded, err := run.Submit(context.Background(), event)
 			if err != nil {
-				return recordedMsg{what, recorded, err}
+				all.State = recorded.State
+				return recordedMsg{what, all, err}
 			}
 			all.Seqs, all.State = append(all.Seqs, recorded.Seqs...), recorded.State
 		}
@@ -323,14 +455,15 @@ func (m Model) submit(what string, events ...walk.Event) (Model, tea.Cmd) {
 
 func (m Model) recorded(msg recordedMsg) (Model, tea.Cmd) {
 	m.busy, m.refused = false, msg.err != nil
-	if msg.err != nil {
-		m.message = msg.err.Error()
-		return m, nil
+	if msg.recorded.State.NextSeq() > m.snapshot.State.NextSeq() {
+		m.snapshot.State = msg.recorded.State
 	}
-	m.snapshot.State = msg.recorded.State
+	if msg.err != nil {
+		return m.refuse(msg.err.Error()), nil
+	}
 	m.message = msg.what
 	if n := len(msg.recorded.Seqs); n > 0 {
-		m.message = fmt.Sprintf("recorded as %d: %s", msg.recorded.Seqs[n-1], msg.what)
+		m.message = fmt.Sprintf("record %d on disk: %s", msg.recorded.Seqs[n-1], msg.what)
 	}
 	if m.snapshot.State.Sealed() != nil && m.done == nil {
 		finish := m.session.Finish
@@ -365,7 +498,10 @@ func (m Model) finished(msg finishedMsg) Model {
 
 // at opens a point.
 func (m Model) at(point string) Model {
-	m.point, m.page, m.acts, m.cursor = point, 0, 0, nil
+	if point != m.point {
+		m.acts = 0
+	}
+	m.point, m.page, m.cursor, m.words = point, 0, nil, false
 	return m
 }
 
@@ -392,33 +528,6 @@ func (m Model) turned(by int) Model {
 	return m.at(in[0].ID)
 }
 
-// operate has the simulated plant's hand do the next act of the open point.
-func (m Model) operate() (Model, tea.Cmd) {
-	if m.session.Operator == nil {
-		m.message, m.refused = "whoever operates the plant does so with its own controls", true
-		return m, nil
-	}
-	acts := unattended.Acts(m.point)
-	if m.acts >= len(acts) {
-		m.message, m.refused = "nothing to operate at "+m.point, true
-		return m, nil
-	}
-	act, operator := acts[m.acts], m.session.Operator
-	m.acts++
-	m.message, m.refused = "the plant's hand: "+act, false
-	return m, func() tea.Msg { return operatedMsg{act, operator.Do(context.Background(), act)} }
-}
-
-func (m Model) operated(msg operatedMsg) Model {
-	if msg.err != nil {
-		m.message, m.refused = msg.err.Error(), true
-		m.acts = max(0, m.acts-1)
-		return m
-	}
-	m.message, m.refused = "done by the plant's hand: "+msg.act, false
-	return m
-}
-
 // person is who signs: the one who goes the walk.
 func (m Model) person() string {
 	if people := m.snapshot.State.People(); len(people) > 0 {
@@ -431,8 +540,8 @@ func (m Model) instruments() []record.Instrument { return m.snapshot.State.Instr
 
 // cursorBy moves the chart's cursor by a fiftieth of the trace, or puts it on the last sample.
 func (m Model) cursorBy(direction float64) Model {
-	c := m.snapshot.Capture
-	if c == nil || len(c.X) < 2 {
+	c, ok := m.chartAt(m.current())
+	if !ok || len(c.X) < 2 {
 		return m
 	}
 	low, high := c.X[0], c.X[len(c.X)-1]
@@ -446,3 +555,17 @@ func (m Model) cursorBy(direction float64) Model {
 
 // State is the walk's state as last seen.
 func (m Model) State() walk.State { return m.snapshot.State }
+
+// Snapshot is what the walk's owner published last.
+func (m Model) Snapshot() commission.Snapshot { return m.snapshot }
+
+// Alarm is what must be done at once, whatever is shown; empty where nothing is.
+func (m Model) Alarm() string {
+	switch c := m.snapshot.Capture; {
+	case c != nil && c.OpenNow != "":
+		return "OPEN THE PRE-CHARGE NOW."
+	case m.snapshot.Failure != nil:
+		return "NOTHING IS RECORDED."
+	}
+	return ""
+}

@@ -2,6 +2,8 @@ package walkview
 
 import (
 	"fmt"
+	"slices"
+	"strings"
 
 	"chargehand/commission"
 	"chargehand/commission/capture"
@@ -33,9 +35,8 @@ const (
 type action struct {
 	step   step
 	label  string
-	point  string           // where it leads
-	hand   walk.HandReading // what to measure
-	reason string           // why it is in the way
+	point  string // where it leads
+	reason string // why it is in the way
 }
 
 // next is what Enter does at point p now.
@@ -48,10 +49,10 @@ func next(s commission.Snapshot, p walk.Point) action {
 		return action{label: "the log is sealed"}
 	}
 	if s.Capture != nil && s.Capture.Point == p.ID {
-		return action{label: "capture " + string(s.Capture.Phase) + ", s stops it"}
+		return whileCapturing(*s.Capture)
 	}
 	if hold, held := state.HeldBy(p); held {
-		return action{step: stepGo, point: hold.ID, label: "go to hold point " + hold.ID, reason: "closed until " + hold.ID + " is signed"}
+		return action{step: stepGo, point: hold.ID, label: "go to hold " + hold.ID, reason: "closed until " + hold.ID + " is signed"}
 	}
 	st := state.Status(p.ID)
 	switch {
@@ -60,11 +61,22 @@ func next(s commission.Snapshot, p walk.Point) action {
 	case st.Result == walk.Open:
 		return nextReading(s, p)
 	case st.Result == walk.Failed && st.Accepted == nil && !hasPunch(state, p.ID):
-		return action{step: stepFail, point: p.ID, label: "enter a punch item (d: deviation)"}
+		return action{step: stepFail, point: p.ID, label: "raise a punch item (d deviation)"}
 	case p.Kind == walk.Hold:
 		return action{step: stepSign, point: p.ID, label: "sign " + p.ID}
 	}
 	return afterDone(state)
+}
+
+// whileCapturing is what is waited for while the point's capture is on.
+func whileCapturing(c commission.Progress) action {
+	switch {
+	case c.Phase == commission.Armed:
+		return action{label: "waits for the plant", reason: "armed: it begins by itself when the plant acts; s stops it"}
+	case c.Kind == capture.Droop:
+		return action{label: "counts load steps", reason: "s ends the capture when the steps are done"}
+	}
+	return action{label: "capture runs", reason: "it ends by itself; s stops it"}
 }
 
 func hasPunch(state walk.State, point string) bool {
@@ -87,10 +99,13 @@ func afterDone(state walk.State) action {
 func nextReading(s commission.Snapshot, p walk.Point) action {
 	state := s.State
 	if state.Stage() < p.Stage {
-		return action{step: stepEnter, point: p.ID, label: fmt.Sprintf("enter stage %d, %s", p.Stage, walk.StageTitles[p.Stage-1])}
+		return action{step: stepEnter, point: p.ID, label: fmt.Sprintf("enter stage %d", p.Stage)}
 	}
 	if p.Capture != "" && !captured(state, p) {
 		return nextArm(s, p)
+	}
+	if q, ok := state.CaptureOf(capture.Discharge); ok && p.ID == "down.order" && s.Capture == nil && !captured(state, q) {
+		return nextArm(s, q)
 	}
 	if p.Wants(walk.Live) && p.Capture == "" && !has(state, p, record.FromDevice, "") && anyMapped(s, p) {
 		return action{step: stepLive, point: p.ID, label: "take the live readings"}
@@ -98,19 +113,42 @@ func nextReading(s commission.Snapshot, p walk.Point) action {
 	if p.Wants(walk.Instrument) {
 		for _, h := range p.Hand {
 			if !has(state, p, record.FromInstrument, h.What) {
-				return action{step: stepMeasure, point: p.ID, hand: h, label: "enter the instrument's reading: " + h.What}
+				return action{step: stepMeasure, point: p.ID, label: "enter the instrument's reading"}
 			}
 		}
 	}
 	if (p.Wants(walk.Observation) || p.Wants(walk.Document)) && !has(state, p, record.Observed, "") {
-		return action{step: stepSeen, point: p.ID, label: "enter what was seen"}
+		return action{step: stepSeen, point: p.ID, label: enterWhat(p)}
 	}
-	if assessed := state.Assess(p); assessed.Result == walk.Failed {
-		return action{step: stepFail, point: p.ID, label: "not met: fail it (a: take again)", reason: because(assessed)}
-	} else if assessed.Result == walk.Open {
+	switch assessed := state.Assess(p); {
+	case assessed.Result == walk.Failed:
+		return action{step: stepFail, point: p.ID, label: "not met: fail it (r read again)", reason: because(assessed)}
+	case assessed.Result == walk.Open && comparesFirst(assessed):
+		return action{step: stepPass, point: p.ID, label: "compare and pass"}
+	case assessed.Result == walk.Open && p.MayOmit:
+		return action{step: stepPass, point: p.ID, label: "pass (x not applicable)", reason: because(assessed)}
+	case assessed.Result == walk.Open:
 		return action{step: stepPass, point: p.ID, label: "pass (something is missing)", reason: because(assessed)}
+	case p.Kind == walk.Hold:
+		return action{step: stepPass, point: p.ID, label: "pass and sign"}
 	}
-	return action{step: stepPass, point: p.ID, label: "pass " + p.ID}
+	return action{step: stepPass, point: p.ID, label: "pass"}
+}
+
+// comparesFirst tells whether all that is missing are findings that the verdict itself makes of the readings.
+func comparesFirst(a walk.Assessment) bool {
+	made := []string{"measured.sensor", "measured.window", "measured.setpoint", "measured.current-mode"}
+	return !slices.ContainsFunc(a.Because, func(because string) bool {
+		id, isMissing := strings.CutPrefix(because, "no finding ")
+		return !isMissing || !slices.Contains(made, id)
+	})
+}
+
+func enterWhat(p walk.Point) string {
+	if p.Wants(walk.Document) {
+		return "enter the document"
+	}
+	return "enter what was seen"
 }
 
 func because(a walk.Assessment) string {
@@ -126,7 +164,7 @@ func nextArm(s commission.Snapshot, p walk.Point) action {
 	}
 	if p.Capture == capture.Precharge {
 		if s.State.CauseIsMissing() {
-			return action{step: stepCause, point: p.ID, label: "enter the cause of the last attempt"}
+			return action{step: stepCause, point: p.ID, label: "enter the last attempt's cause"}
 		}
 		if wait := s.State.NotBefore(s.Now); wait != "" {
 			return action{step: stepOverride, point: p.ID, label: "wait, or give a reason", reason: wait}

@@ -2,15 +2,15 @@ package walkview
 
 import (
 	"fmt"
+	"slices"
 	"strings"
 
 	"chargehand/commission"
-	"chargehand/commission/capture"
 	"chargehand/commission/finding"
 	"chargehand/commission/quantity"
 	"chargehand/commission/record"
 	"chargehand/commission/walk"
-	"chargehand/tui/chart"
+	"chargehand/tui/far"
 	"chargehand/tui/theme"
 )
 
@@ -21,22 +21,56 @@ func (m Model) panel(width, height int) []string {
 	if m.prompt != nil {
 		return append(head, m.promptRows(width, height-len(head))...)
 	}
-	if c := m.snapshot.Capture; c != nil && (c.Point == p.ID || c.Kind == p.Capture || p.Stage == m.stageOf(c.Point)) {
-		return append(head, m.captureRows(*c, width, height-len(head))...)
+	height -= len(head)
+	if c, ok := m.chartAt(p); ok && m.showsChart(p, c, height) {
+		return append(head, m.chartRows(p, c, width, height)...)
 	}
-	rows := m.text(p, width)
-	room := height - len(head)
+	return append(head, m.paged(m.text(p, width), height)...)
+}
+
+// showsChart tells whether a point's chart is shown or its text: the running capture always first, one that has ended where
+// there is room for the caution beside it. Tab shows the other.
+func (m Model) showsChart(p walk.Point, c commission.Progress, height int) bool {
+	return (m.isRunning(c) || !p.IsHazardous() || height >= roomForBoth) != m.words
+}
+
+const roomForBoth = 20
+
+// chartRows is a capture's chart; where there is room its point's text stands below it.
+func (m Model) chartRows(p walk.Point, c commission.Progress, width, height int) []string {
+	rows := m.actRows(width)
+	below := m.under(p, width)
+	chartHeight := min(max(height-len(rows)-len(below), height/2, leastChart), height-len(rows))
+	rows = append(rows, m.captureRows(c, width, chartHeight)...)
+	return append(rows, m.paged(below, height-len(rows))...)
+}
+
+const leastChart = 10
+
+// under is what stands under a chart: the findings of a capture that has ended, then what is wanted.
+func (m Model) under(p walk.Point, width int) []string {
+	var rows []string
+	if p.IsHazardous() && m.snapshot.Capture == nil {
+		rows = append(rows, m.cautionRows(p, width)...)
+	}
+	rows = append(rows, m.reasonRows(p, width)...)
+	rows = append(rows, m.findingRows(p, width)...)
+	if m.snapshot.Capture == nil {
+		rows = append(rows, m.labelled("do", p.Do, width)...)
+		rows = append(rows, m.labelled("wanted", p.Expect, width)...)
+		rows = append(rows, m.liveRows(p, width)...)
+	}
+	return append(rows, m.takenRows(p, width)...)
+}
+
+// paged shows a part of the rows, and that there is more.
+func (m Model) paged(rows []string, room int) []string {
 	first := min(m.page, max(0, len(rows)-room))
 	shown := cut(rows[first:], room)
 	if first+room < len(rows) && len(shown) > 0 {
-		shown[len(shown)-1] = m.theme.Paint(theme.Faint, m.theme.Pick("… PgDn", "... PgDn"))
+		shown = append(slices.Clone(shown[:len(shown)-1]), m.theme.Paint(theme.Faint, m.theme.Pick("… more: PgDn", "... more: PgDn")))
 	}
-	return append(head, shown...)
-}
-
-func (m Model) stageOf(point string) int {
-	p, _ := m.snapshot.State.Point(point)
-	return p.Stage
+	return shown
 }
 
 // head is the point's name, its kind and its result.
@@ -67,22 +101,16 @@ func (m Model) statusWords(p walk.Point) string {
 
 // text is everything that is said of a point.
 func (m Model) text(p walk.Point, width int) []string {
-	var rows []string
-	if p.IsHazardous() {
-		for _, l := range wrap(theme.Clean(p.Caution), width-3) {
-			rows = append(rows, m.theme.Caution(l))
-		}
-	}
-	if a := next(m.snapshot, p); a.reason != "" {
-		rows = append(rows, m.painted(theme.Abnormal, a.reason, width)...)
-	}
+	rows := m.cautionRows(p, width)
+	rows = append(rows, m.reasonRows(p, width)...)
+	rows = append(rows, m.actRows(width)...)
 	rows = append(rows, m.labelled("do", p.Do, width)...)
 	rows = append(rows, m.labelled("wanted", p.Expect, width)...)
 	rows = append(rows, m.liveRows(p, width)...)
 	rows = append(rows, m.takenRows(p, width)...)
 	rows = append(rows, m.findingRows(p, width)...)
-	if a := m.snapshot.State.Assess(p); a.Result != walk.Passed && m.snapshot.State.Status(p.ID).Result == walk.Open {
-		for _, because := range a.Because {
+	if a := next(m.snapshot, p); a.step != stepPass && a.step != stepFail && m.snapshot.State.Status(p.ID).Result == walk.Open {
+		for _, because := range m.snapshot.State.Assess(p).Because {
 			rows = append(rows, m.painted(theme.Faint, m.theme.Pick("○ ", "o ")+because, width)...)
 		}
 	}
@@ -90,10 +118,61 @@ func (m Model) text(p walk.Point, width int) []string {
 	return append(rows, m.labelled("basis", p.Basis, width)...)
 }
 
+func (m Model) cautionRows(p walk.Point, width int) []string {
+	var rows []string
+	if p.IsHazardous() {
+		for _, l := range wrap(theme.Clean(p.Caution), width-4) {
+			rows = append(rows, m.theme.Caution(m.theme.Plain(m.theme.Fit(l, width-4))))
+		}
+	}
+	return rows
+}
+
+// reasonRows say what is in the way, and how long a wait still takes.
+func (m Model) reasonRows(p walk.Point, width int) []string {
+	var rows []string
+	switch a := next(m.snapshot, p); {
+	case m.snapshot.State.Status(p.ID).Result == walk.Open && (a.step == stepPass || a.step == stepFail):
+		for _, because := range m.snapshot.State.Assess(p).Because {
+			rows = append(rows, m.painted(theme.Abnormal, m.theme.Pick("○ ", "o ")+because, width)...)
+		}
+	case a.reason != "" && a.step != stepNothing:
+		rows = append(rows, m.painted(theme.Abnormal, a.reason, width)...)
+	}
+	if left := m.snapshot.State.CoolsFor(m.snapshot.Now); left > 0 && p.Stage == 5 && m.snapshot.Capture == nil {
+		words := "resistor cools: next attempt in " + far.Clock(left)
+		if m.session.Operator != nil {
+			words += ", h hastens it"
+		}
+		rows = append(rows, m.painted(theme.Mandatory, words, width)...)
+	}
+	return rows
+}
+
+// actRows say what the plant's hand does next.
+func (m Model) actRows(width int) []string {
+	act, wait := m.nextAct()
+	if act == "" {
+		return nil
+	}
+	words := "o: " + actWords(act)
+	if wait != "" {
+		words = wait + ", then o: " + actWords(act)
+	}
+	if acts := actsAt(m.point); m.acts < len(acts) && acts[m.acts] == act {
+		words += fmt.Sprintf(" (%d/%d)", m.acts+1, len(acts))
+	}
+	var rows []string
+	for i, l := range wrap(words, width-9) {
+		rows = append(rows, m.theme.Paint(theme.Faint, m.theme.Fit(map[bool]string{true: "plant"}[i == 0], 8))+m.theme.Paint(theme.Mandatory, m.theme.Plain(l)))
+	}
+	return rows
+}
+
 func (m Model) painted(role theme.Role, text string, width int) []string {
 	var rows []string
 	for _, l := range wrap(theme.Clean(text), width-1) {
-		rows = append(rows, m.theme.Paint(role, l))
+		rows = append(rows, m.theme.Paint(role, m.theme.Plain(l)))
 	}
 	return rows
 }
@@ -134,10 +213,23 @@ func (m Model) liveRows(p walk.Point, width int) []string {
 // flow sets parts side by side, as many to a row as fit.
 func flow(label string, parts []string, width int, t theme.Theme) []string {
 	const indent = 8
+	rows := beside(parts, width-indent-1)
+	for i := range rows {
+		lead := strings.Repeat(" ", indent)
+		if i == 0 {
+			lead = t.Paint(theme.Faint, t.Fit(label, indent))
+		}
+		rows[i] = lead + rows[i]
+	}
+	return rows
+}
+
+// beside sets parts side by side, as many to a row of a width as fit.
+func beside(parts []string, width int) []string {
 	var rows []string
 	row := ""
 	for _, part := range parts {
-		if row != "" && theme.Width(row)+2+theme.Width(part) > width-indent-1 {
+		if row != "" && theme.Width(row)+2+theme.Width(part) > width {
 			rows, row = append(rows, row), ""
 		}
 		if row != "" {
@@ -147,13 +239,6 @@ func flow(label string, parts []string, width int, t theme.Theme) []string {
 	}
 	if row != "" {
 		rows = append(rows, row)
-	}
-	for i := range rows {
-		lead := strings.Repeat(" ", indent)
-		if i == 0 {
-			lead = t.Paint(theme.Faint, t.Fit(label, indent))
-		}
-		rows[i] = lead + rows[i]
 	}
 	return rows
 }
@@ -207,97 +292,48 @@ func (m Model) findingRows(p walk.Point, width int) []string {
 	return rows
 }
 
-// captureRows is the chart of a capture and what can be said already.
-func (m Model) captureRows(c commission.Progress, width, height int) []string {
-	words := m.captureWords(c, width)
-	chartHeight := height - len(words)
-	if chartHeight < chart.LeastHeight {
-		return cut(words, height)
-	}
-	return append(strings.Split(m.chartOf(c).View(m.theme, width-1, chartHeight), "\n"), words...)
-}
-
-func (m Model) captureWords(c commission.Progress, width int) []string {
-	lead := fmt.Sprintf("%s %.1f s", c.Phase, c.Elapsed.Seconds())
-	if c.Attempt > 0 {
-		lead = fmt.Sprintf("attempt %d %s", c.Attempt, lead)
-	}
-	if c.Phase == commission.Armed {
-		lead += ", waits for the plant"
-	}
-	parts := append([]string{lead}, c.SoFar...)
-	if r := c.Rise; r != nil {
-		check := fmt.Sprintf("rise at %.2f s at least %.0f V", r.At.Seconds(), r.AtLeast)
-		if r.Seen != nil {
-			check += fmt.Sprintf(": %.0f V", *r.Seen)
-		}
-		parts = append(parts, check)
-	}
-	if c.Line != nil {
-		parts = append(parts, fmt.Sprintf("%d steps, no load %.1f V, droop %s", len(c.Steps), c.Line.NoLoad, quantity.Engineering(c.Line.Droop, "V/A", 3)))
-	}
-	return flow("", parts, width+8, m.theme)
-}
-
-// chartOf is a capture as a chart.
-func (m Model) chartOf(c commission.Progress) chart.Chart {
-	picture := chart.Chart{Y: chart.Scale{Label: "bus", Unit: "V"}, X: chart.Scale{Label: "time", Unit: "s"}, Cursor: m.cursor}
-	if len(c.Band.X) > 0 {
-		picture.Bands = []chart.Band{{Name: "predicted", X: c.Band.X, Low: c.Band.Low, High: c.Band.High}}
-		picture.Nominal = []chart.Series{{Name: "nominal", X: c.Band.X, Y: c.Band.Nominal}}
-	}
-	if c.Kind == capture.Droop {
-		return m.droopChart(picture, c)
-	}
-	picture.Traces = []chart.Series{{Name: "measured", X: c.X, Y: c.Y, MaxStep: gapOf(c.X)}}
-	if r := c.Rise; r != nil && r.Seen == nil {
-		picture.Markers = append(picture.Markers, chart.Marker{Label: "half rise", At: r.At.Seconds(), Upright: true})
-	}
-	return picture
-}
-
-func (m Model) droopChart(picture chart.Chart, c commission.Progress) chart.Chart {
-	picture.X = chart.Scale{Label: "bus current", Unit: "A"}
-	picture.Points = []chart.Series{{Name: "measured", X: c.X, Y: c.Y}}
-	if c.Line == nil || len(c.Steps) < 3 {
-		return picture
-	}
-	low, high := c.Steps[0].Current, c.Steps[0].Current
-	for _, s := range c.Steps {
-		low, high = min(low, s.Current), max(high, s.Current)
-	}
-	line := chart.Series{Name: "fitted"}
-	confidence := chart.Band{Name: "confidence"}
-	for i := range 21 {
-		x := low + (high-low)*float64(i)/20
-		line.X, line.Y = append(line.X, x), append(line.Y, c.Line.At(x))
-		u := 2 * c.Line.StandardErrorAt(x)
-		confidence.X = append(confidence.X, x)
-		confidence.Low, confidence.High = append(confidence.Low, c.Line.At(x)-u), append(confidence.High, c.Line.At(x)+u)
-	}
-	picture.Fitted, picture.Bands = []chart.Series{line}, append(picture.Bands, confidence)
-	return picture
-}
-
-// gapOf is the step between samples beyond which a trace is broken: five times the usual one.
-func gapOf(x []float64) float64 {
-	if len(x) < 3 {
-		return 0
-	}
-	return 5 * (x[len(x)-1] - x[0]) / float64(len(x)-1)
-}
-
-// promptRows are the fields to type, and below them what the point wants.
+// promptRows are the fields to type, what they would move, and below them what the point wants.
 func (m Model) promptRows(width, height int) []string {
-	rows := append([]string{""}, m.painted(theme.Title, m.prompt.title, width)...)
+	p := m.prompt
+	rows := m.painted(theme.Title, p.title, width)
 	rows = append(rows, "")
-	rows = append(rows, strings.Split(m.prompt.form.View(m.theme, width-1, max(height-len(rows), 0)), "\n")...)
-	if m.prompt.meter != "" {
-		rows = append(rows, "", m.theme.Paint(theme.Faint, "Ctrl+T fills in what the simulated plant's meter shows"))
+	rows = append(rows, strings.Split(strings.TrimRight(p.form.View(m.theme, width-1, max(height-len(rows), 0)), "\n"), "\n")...)
+	rows = append(rows, "")
+	for _, moved := range p.previewed {
+		rows = append(rows, m.painted(theme.Abnormal, moved, width)...)
 	}
-	if p := m.current(); p.Expect != "" {
-		rows = append(rows, "")
-		rows = append(rows, m.labelled("wanted", p.Expect, width)...)
+	rows = append(rows, m.helpRows(width)...)
+	if point := m.current(); len(p.previewed) == 0 {
+		rows = append(rows, m.labelled("do", point.Do, width)...)
+		rows = append(rows, m.labelled("wanted", point.Expect, width)...)
 	}
 	return cut(rows, height)
+}
+
+// helpRows say how a prompt is filled in quickly.
+func (m Model) helpRows(width int) []string {
+	p := m.prompt
+	var rows []string
+	if len(p.phrases) > 0 {
+		rows = append(rows, m.hanging("Ctrl+N", "begin with: "+p.phrases[p.phrase%len(p.phrases)], width)...)
+	}
+	switch {
+	case len(p.meters) > 0 && p.rehearsed == "":
+		rows = append(rows, m.hanging("Ctrl+T", "read the simulated plant's meter", width)...)
+	case p.canFill():
+		rows = append(rows, m.hanging("Ctrl+T", "fill in for the rehearsal", width)...)
+	}
+	return rows
+}
+
+func (m Model) hanging(label, text string, width int) []string {
+	var rows []string
+	for i, l := range wrap(theme.Clean(text), width-9) {
+		lead := strings.Repeat(" ", 8)
+		if i == 0 {
+			lead = m.theme.Paint(theme.Key, m.theme.Fit(label, 8))
+		}
+		rows = append(rows, lead+m.theme.Paint(theme.Faint, m.theme.Plain(l)))
+	}
+	return rows
 }

@@ -3,15 +3,12 @@ package walkview
 import (
 	"context"
 	"fmt"
-	"slices"
 	"strings"
 	"time"
 
 	tea "github.com/charmbracelet/bubbletea"
 
 	"chargehand/commission/quantity"
-	"chargehand/commission/record"
-	"chargehand/commission/signal"
 	"chargehand/commission/walk"
 	"chargehand/tui/form"
 )
@@ -20,27 +17,52 @@ import (
 type prompt struct {
 	title  string
 	form   form.Form
-	meter  string // what the simulated plant's meter can fill into the field "value"; empty where there is none
 	submit func(m Model, f form.Form) (Model, tea.Cmd)
+
+	phrases   []string // texts to begin with, one after the other
+	phrase    int      // how many of them have been used
+	phraseFor string   // the field that they are for
+
+	meters    []walk.HandReading // fields that the simulated plant's meter can fill in, by what they are
+	rehearsed string             // what a rehearsal may put into the field phraseFor; empty where this is none
+
+	preview     func(f form.Form) []string // what the typed values would do; nil where nothing is shown
+	previewed   []string
+	previewedOf string
 }
 
 func asking(title string, submit func(Model, form.Form) (Model, tea.Cmd), fields ...form.Field) *prompt {
 	return &prompt{title: title, form: form.New(form.DefaultKeyMap(), fields...), submit: submit}
 }
 
+// offering gives the prompt texts to begin with.
+func (p *prompt) offering(field string, phrases ...string) *prompt {
+	p.phraseFor, p.phrases = field, phrases
+	return p
+}
+
 func (m Model) ask(p *prompt) Model {
-	m.prompt = p
+	m.prompt, m.message = p, ""
 	return m
 }
 
-// meterKey fills in what the simulated plant's meter shows.
-const meterKey = "ctrl+t"
+// The keys of a prompt beside those of its form.
+const (
+	meterKey  = "ctrl+t" // fill in what the simulated plant's meter shows
+	phraseKey = "ctrl+n" // begin with a prepared text, then with the next
+)
 
 // typed takes a key while a prompt is open.
 func (m Model) typed(msg tea.KeyMsg) (Model, tea.Cmd) {
 	p := *m.prompt
-	if msg.String() == meterKey && p.meter != "" {
-		return m.askMeter(p.meter)
+	switch {
+	case msg.String() == meterKey && !msg.Paste && p.canFill():
+		return m.fill(p)
+	case msg.String() == phraseKey && !msg.Paste && len(p.phrases) > 0:
+		p.form = p.form.Prepared(p.phraseFor, p.phrases[p.phrase%len(p.phrases)])
+		p.phrase++
+		m.prompt = p.looked()
+		return m, nil
 	}
 	var outcome form.Outcome
 	p.form, outcome = p.form.Update(msg)
@@ -53,33 +75,79 @@ func (m Model) typed(msg tea.KeyMsg) (Model, tea.Cmd) {
 		m.message, m.refused = "nothing entered", false
 		return m, nil
 	}
-	m.prompt = &p
+	m.prompt = p.looked()
 	return m, nil
 }
 
-// askMeter reads the simulated plant's meter into the open field.
-func (m Model) askMeter(what string) (Model, tea.Cmd) {
+// looked is the prompt with its preview brought up to what is typed.
+func (p prompt) looked() *prompt {
+	if p.preview == nil {
+		return &p
+	}
+	var typed strings.Builder
+	for _, f := range p.form.Fields() {
+		typed.WriteString(f.Value() + "\x00")
+	}
+	if of := typed.String(); of != p.previewedOf {
+		p.previewed, p.previewedOf = p.preview(p.form), of
+	}
+	return &p
+}
+
+func (p prompt) canFill() bool { return len(p.meters) > 0 || p.rehearsed != "" }
+
+// fill reads the simulated plant's meter into the open fields.
+func (m Model) fill(p prompt) (Model, tea.Cmd) {
+	if p.rehearsed != "" {
+		p.form = p.form.WithValue(p.phraseFor, p.rehearsed).Focus(p.phraseFor)
+	}
+	m.prompt = &p
+	if len(p.meters) == 0 {
+		return m, nil
+	}
+	return m, m.readMeter(p.meters)
+}
+
+// readMeter reads the simulated plant's meter at several places.
+func (m Model) readMeter(places []walk.HandReading) tea.Cmd {
 	operator := m.session.Operator
-	return m, func() tea.Msg {
-		value, _, err := operator.Measure(context.Background(), what)
-		return measuredMsg{what, value, err}
+	return func() tea.Msg {
+		msg := measuredMsg{values: map[string]float64{}}
+		for _, h := range places {
+			v, _, err := operator.Measure(context.Background(), h.What)
+			if err != nil {
+				msg.because = append(msg.because, err.Error())
+				continue
+			}
+			msg.values[h.What] = v
+		}
+		return msg
 	}
 }
 
+// measured puts the meter's values into the open prompt's fields; the last field gets the focus, so that Enter takes all.
 func (m Model) measured(msg measuredMsg) Model {
-	if m.prompt == nil || m.prompt.meter != msg.what {
-		return m
-	}
-	if msg.err != nil {
-		m.message, m.refused = msg.err.Error(), true
+	if m.prompt == nil {
 		return m
 	}
 	p := *m.prompt
-	field, _ := p.form.Field("value")
-	p.form = p.form.WithValue("value", strings.TrimSpace(fmt.Sprintf("%.5g %s", msg.value, field.Unit)))
-	m.prompt = &p
+	for _, h := range p.meters {
+		if v, ok := msg.values[h.What]; ok {
+			p.form = p.form.WithValue(h.What, strings.TrimSpace(meterText(v)+" "+h.Unit))
+		}
+	}
+	if fields := p.form.Fields(); len(msg.values) > 0 && len(fields) > 0 {
+		p.form = p.form.Focus(fields[len(fields)-1].ID)
+	}
+	m.prompt = p.looked()
+	if len(msg.values) == 0 && len(msg.because) > 0 {
+		m.message, m.refused = msg.because[0], true
+	}
 	return m
 }
+
+// meterText writes a value with the four and a half digits of a hand meter.
+func meterText(v float64) string { return fmt.Sprintf("%.5g", v) }
 
 func filled(what string) form.Check {
 	return func(text string) (bool, string) {
@@ -97,162 +165,43 @@ func dated(text string) (bool, string) {
 	return true, ""
 }
 
-// valued checks a value with its unit as it is typed.
-func valued(unit string) form.Check {
+// valued checks a value with its unit as it is typed, and holds it against the point's limits.
+func valued(unit string, limits []walk.Criterion) form.Check {
 	return func(text string) (bool, string) {
-		if _, err := parse(text, unit); err != nil {
+		v, err := parse(text, unit)
+		if err != nil {
 			return false, err.Error()
+		}
+		for _, c := range limits {
+			if !c.Holds(v) {
+				return true, "outside " + limitWords(c)
+			}
 		}
 		return true, ""
 	}
 }
 
-func askPerson() *prompt {
-	return asking("Who goes this walk?", func(m Model, f form.Form) (Model, tea.Cmd) {
-		return m.submit(f.Value("name")+" entered", walk.AddPerson{Name: f.Value("name"), Role: f.Value("role"), Organisation: f.Value("organisation")})
-	},
-		form.Input("name", "name", "", filled("a name, as it stands under the signatures")),
-		form.Choice("role", "role", "technician", "witness", "surveyor", "owner"),
-		form.Note("organisation", "organisation"))
-}
-
-// askSeen asks what was seen. Where the point proves signals by the device's own display, each of them has a field.
-func askSeen(p walk.Point) *prompt {
-	var fields []form.Field
-	if !p.Wants(walk.Instrument) {
-		for _, name := range p.Proves {
-			fields = append(fields, form.Input(string(name), string(name), name.Unit(), optional(valued(name.Unit()))))
-		}
-	}
-	fields = append(fields, form.Input("seen", "seen", "", filled("no tick without a value: what was seen, or the document's number")))
-	return asking(p.Title, func(m Model, f form.Form) (Model, tea.Cmd) { return m.seen(p, f) }, fields...)
-}
-
 func optional(check form.Check) form.Check {
 	return func(text string) (bool, string) {
 		if strings.TrimSpace(text) == "" {
-			return true, "as the device's display shows; empty: not shown"
+			return true, "may stay empty"
 		}
 		return check(text)
 	}
 }
 
-// seen enters what was seen, the device's displays first.
-func (m Model) seen(p walk.Point, f form.Form) (Model, tea.Cmd) {
-	var events []walk.Event
-	for _, name := range p.Proves {
-		text := f.Value(string(name))
-		value, err := parse(text, name.Unit())
-		if text == "" || err != nil {
-			continue
-		}
-		events = append(events, walk.Take{Reading: record.Reading{Point: p.ID, Signal: string(name), Value: &value, Unit: name.Unit(),
-			Source: record.Observed, Quality: string(signal.Good), Text: "as the device's display shows"}})
+// limitWords is a criterion in words.
+func limitWords(c walk.Criterion) string {
+	show := func(v float64) string { return quantity.Engineering(v, c.Unit, 3) }
+	switch {
+	case c.Low != nil && c.High != nil:
+		return show(*c.Low) + " … " + show(*c.High)
+	case c.High != nil:
+		return "at most " + show(*c.High)
+	case c.Low != nil:
+		return "at least " + show(*c.Low)
 	}
-	events = append(events, walk.Take{Reading: record.Reading{Point: p.ID, Signal: "seen", Source: record.Observed,
-		Quality: string(signal.Good), Text: f.Value("seen")}})
-	return m.submit("entered", events...)
-}
-
-func askMeasure(p walk.Point, h walk.HandReading, instruments []record.Instrument, simulated bool) *prompt {
-	names := make([]string, len(instruments))
-	for i, instrument := range instruments {
-		names[i] = instrument.ID + " " + instrument.Name + " " + instrument.Serial
-	}
-	ask := asking("Instrument: "+h.What, func(m Model, f form.Form) (Model, tea.Cmd) {
-		value, err := parse(f.Value("value"), h.Unit)
-		i := slices.Index(names, f.Value("instrument"))
-		if err != nil || i < 0 {
-			m.message, m.refused = "enter an instrument first: the site file lists them under [[instrument]]", true
-			return m, nil
-		}
-		return m.submit(h.What+" entered", walk.Take{Reading: record.Reading{Point: p.ID, Signal: h.What, Value: &value, Unit: h.Unit,
-			Source: record.FromInstrument, Instrument: &instruments[i].ID, Quality: string(signal.Good)}})
-	},
-		form.Input("value", "value", h.Unit, valued(h.Unit)),
-		form.Choice("instrument", "instrument", names...))
-	if simulated {
-		ask.meter = h.What
-	}
-	return ask
-}
-
-// reasoned asks for one line that stands in the log.
-func reasoned(title, label, want string, submit func(m Model, reason string) (Model, tea.Cmd)) *prompt {
-	return asking(title, func(m Model, f form.Form) (Model, tea.Cmd) { return submit(m, f.Value("reason")) },
-		form.Input("reason", label, "", filled(want)))
-}
-
-func askFail(p walk.Point) *prompt {
-	return reasoned("Fail "+p.ID, "why", "say why; it stands in the log", func(m Model, why string) (Model, tea.Cmd) {
-		return m.submit(p.ID+" failed", walk.Judge{Point: p.ID, Result: walk.Failed, Note: why})
-	})
-}
-
-func askOmit(p walk.Point) *prompt {
-	return reasoned(p.ID+" is not applicable", "because", "say why; it stands in the log", func(m Model, why string) (Model, tea.Cmd) {
-		return m.submit(p.ID+" not applicable", walk.Judge{Point: p.ID, Result: walk.NotApplicable, Note: why})
-	})
-}
-
-func askNote() *prompt {
-	return reasoned("Note", "text", "a note", func(m Model, text string) (Model, tea.Cmd) {
-		return m.submit("note", walk.AddNote{Text: text})
-	})
-}
-
-func askReopen(p walk.Point) *prompt {
-	return reasoned("Open "+p.ID+" again; what rests on it opens too", "why", "say why; it stands in the log", func(m Model, why string) (Model, tea.Cmd) {
-		return m.submit(p.ID+" reopened", walk.Reopen{Point: p.ID, Why: why})
-	})
-}
-
-func askCause() *prompt {
-	return reasoned("What did the last attempt fail of? No further attempt before it is known", "cause", "the cause, and how it was found",
-		func(m Model, cause string) (Model, tea.Cmd) { return m.submit("cause", walk.EnterCause{Cause: cause}) })
-}
-
-func askOverride(p walk.Point, because string) *prompt {
-	return reasoned(because+"; Esc waits", "reason", "a reason for coming before its time", func(m Model, reason string) (Model, tea.Cmd) {
-		return m.submit("capture armed", walk.Arm{Point: p.ID, Override: reason})
-	})
-}
-
-func askPunch(p walk.Point) *prompt {
-	return asking("Punch item", func(m Model, f form.Form) (Model, tea.Cmd) {
-		return m.submit("punch item", walk.RaisePunch{What: f.Value("what"), Severity: f.Value("severity")[:1], Owner: f.Value("owner"),
-			Due: f.Value("due"), Point: p.ID})
-	},
-		form.Input("what", "what is open", "", filled("what is open")).WithValue(p.ID+": "),
-		form.Choice("severity", "severity", "B before handover", "A before energising", "C later"),
-		form.Input("owner", "owner", "", filled("who closes it")),
-		form.Input("due", "due", "", dated))
-}
-
-func askDeviation(p walk.Point, people []record.Person) *prompt {
-	names := make([]string, len(people))
-	for i, person := range people {
-		names[i] = person.ID + " " + person.Name
-	}
-	return asking("Deviation at "+p.ID, func(m Model, f form.Form) (Model, tea.Cmd) {
-		i := slices.Index(names, f.Value("by"))
-		if i < 0 {
-			m.message, m.refused = "enter who accepts it first", true
-			return m, nil
-		}
-		return m.submit("deviation", walk.Deviate{Point: p.ID, Reason: f.Value("reason"), AcceptedBy: people[i].ID})
-	},
-		form.Input("reason", "reason", "", filled("why it is accepted")),
-		form.Choice("by", "accepted by", names...))
-}
-
-func askSeal() *prompt {
-	return asking("Seal the log? Nothing is appended after it", func(m Model, f form.Form) (Model, tea.Cmd) {
-		if f.Value("seal") != "seal it" {
-			return m, nil
-		}
-		return m.submit("sealed", walk.Seal{Person: m.person(), UnsignedBecause: m.session.Unsigned})
-	}, form.Choice("seal", "seal", "not yet", "seal it"))
+	return ""
 }
 
 // parse reads a typed value with its unit, in the coherent unit. A typed nil must not become an error.

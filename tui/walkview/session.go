@@ -5,6 +5,9 @@ import (
 	"time"
 
 	"chargehand/commission"
+	"chargehand/commission/finding"
+	"chargehand/commission/signal"
+	"chargehand/commission/site"
 	"chargehand/commission/unattended"
 )
 
@@ -14,11 +17,18 @@ type Session struct {
 	Operator unattended.Operator // the hand at a simulated plant; nil on a real one
 	Log      string              // path of the log
 	MaxAge   time.Duration
-	Pace     func() float64 // how fast the plant's clock runs; 1 on a real plant
-	Signed   bool           // sign-offs get a signature
-	Unsigned string         // why not
-	Notes    []string       // worth knowing before the walk
-	Bell     func()         // rings the terminal's bell; nil where there is none
+	Pace     func() float64         // how fast the plant's clock runs; 1 on a real plant
+	Unsigned string                 // why sign-offs get no signature; empty where they do
+	Notes    []string               // worth knowing before the walk
+	Bell     func()                 // rings the terminal's bell; nil where there is none
+	Places   map[signal.Name]string // where the map reads each signal, in both notations
+
+	// Check calculates the desk findings of a site with this walk's register map. It is pure and quick.
+	Check func(site.Site) []finding.Finding
+	// KeepSite writes a revised site file beside the old one and says where; nil where there is no file.
+	KeepSite func(text string) (path string, err error)
+	// Move goes on with the log in another file.
+	Move func(path string) error
 	// Finish signs the sealed log and writes the report; it says in lines what was written.
 	Finish func(ctx context.Context) ([]string, error)
 	// Close ends the walk; the log stays as it is.

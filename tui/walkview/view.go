@@ -14,12 +14,6 @@ import (
 	"chargehand/tui/theme"
 )
 
-// LeastWidth and LeastHeight are the smallest terminal the screen is drawn in.
-const (
-	LeastWidth  = 80
-	LeastHeight = 24
-)
-
 // stagesWidth is the column of the stages; in a wide terminal it has room for their titles in full.
 const (
 	stagesNarrow = 22
@@ -32,8 +26,6 @@ func (m Model) View() string {
 	switch {
 	case m.width <= 0 || m.height <= 0:
 		return ""
-	case m.width < LeastWidth || m.height < LeastHeight:
-		return m.tooSmall()
 	case m.explain:
 		return m.frame(m.explanation())
 	case m.done != nil:
@@ -42,11 +34,6 @@ func (m Model) View() string {
 		return m.farView()
 	}
 	return m.frame(m.body())
-}
-
-func (m Model) tooSmall() string {
-	text := fmt.Sprintf("this screen needs %d columns and %d rows, the terminal has %d and %d; nothing is lost", LeastWidth, LeastHeight, m.width, m.height)
-	return strings.Join(cut(wrap(text, m.width), m.height), "\n")
 }
 
 // frame puts a body between the title line and the key line.
@@ -221,7 +208,7 @@ func (m Model) stageRow(stage int, open bool) string {
 		sign = m.theme.Pick("✓", "+")
 	}
 	row := fmt.Sprintf("%s%2d %s", lead, stage, title)
-	row = m.theme.Fit(row, m.stagesWidth()-len(count)-3) + sign + count
+	row = m.theme.Fit(row, m.stagesWidth()-len(count)-2) + sign + count
 	switch {
 	case open:
 		return m.theme.Paint(theme.Title, row)
@@ -232,10 +219,11 @@ func (m Model) stageRow(stage int, open bool) string {
 }
 
 func (m Model) pointRow(p walk.Point) string {
-	row := "    " + m.pointSign(p) + " " + p.ID
+	name := p.ID
 	if m.stagesWidth() == stagesWide {
-		row = "    " + m.pointSign(p) + " " + p.Title
+		name = theme.Clean(p.Title)
 	}
+	row := "    " + m.pointSign(p) + " " + name
 	row = m.theme.Fit(row, m.stagesWidth()-1)
 	if p.ID == m.point {
 		return m.theme.Paint(theme.Selected, row)
@@ -258,10 +246,10 @@ func (m Model) pointSign(p walk.Point) string {
 	return m.theme.Pick("·", ".")
 }
 
-// messageLine is what was recorded or refused last, or what Enter does next.
+// messageLine is what was recorded or refused last; an alarm stands before all.
 func (m Model) messageLine() string {
 	if m.snapshot.Failure != nil {
-		return m.theme.Paint(theme.Alarm, " NOTHING IS RECORDED: "+theme.Clean(m.snapshot.Failure.Error())+" ")
+		return m.theme.Paint(theme.Alarm, " NOTHING IS RECORDED (g: go on elsewhere): "+theme.Clean(m.snapshot.Failure.Error())+" ")
 	}
 	if c := m.snapshot.Capture; c != nil && c.OpenNow != "" {
 		return m.theme.Paint(theme.Alarm, " OPEN THE PRE-CHARGE NOW: "+theme.Clean(c.OpenNow)+" ")
@@ -269,34 +257,86 @@ func (m Model) messageLine() string {
 	if m.message == "" {
 		return m.rule()
 	}
-	role := theme.Normal
+	role, sign := theme.Normal, m.theme.Pick("✓ ", "+ ")
 	if m.refused {
-		role = theme.Abnormal
+		role, sign = theme.Abnormal, m.theme.Pick("✗ ", "X ")
 	}
-	return m.theme.Paint(role, " "+theme.Clean(m.message))
+	return " " + m.theme.Paint(role, sign+m.theme.Plain(theme.Clean(m.message)))
 }
 
-// keyLine is the keys that work here, the next thing first.
+// keyLine is the keys that work here: what Enter does first, and at the right what works everywhere.
 func (m Model) keyLine() string {
-	if m.prompt != nil {
-		return m.hints("Enter", "on", "Up Down", "other field", "Esc", "nothing entered")
+	switch {
+	case m.prompt != nil:
+		return m.promptKeys()
+	case m.done != nil:
+		return m.hints("Esc", "leave")
+	case m.explain:
+		return m.hints("any key", "back")
 	}
-	if m.explain || m.done != nil {
-		return m.hints("Esc", "back")
-	}
-	line := m.hints("Enter", next(m.snapshot, m.current()).label)
 	k := m.keys
-	k.Stop.SetEnabled(m.snapshot.Capture != nil)
-	k.Operate.SetEnabled(m.session.Operator != nil)
-	rest := form.HelpLine(m.theme, max(m.width-theme.Width(line)-1, 0), []key.Binding{k.Stop, k.Operate, k.Far, k.Explain, k.Again, k.Note, k.Punch, k.Findings, k.Back})
-	return line + " " + rest
+	always := m.hinted(k.Far, k.Explain, k.Back)
+	line := m.hints("Enter", m.theme.Plain(next(m.snapshot, m.current()).label))
+	var here []key.Binding
+	if m.snapshot.Capture != nil {
+		here = append(here, k.Stop)
+	}
+	if act, _ := m.nextAct(); act != "" {
+		here = append(here, k.Operate)
+	}
+	if m.session.Operator != nil && m.snapshot.Capture == nil &&
+		m.snapshot.State.CoolsFor(m.snapshot.Now) > 0 && m.current().Stage == 5 {
+		here = append(here, k.Hasten)
+	}
+	if _, ok := m.chartAt(m.current()); ok {
+		here = append(here, k.NextPane)
+	}
+	more := []key.Binding{k.Typed, k.Note, k.Punch, k.Findings, k.Link, k.Change}
+	if len(m.current().Hand) == 0 {
+		more = more[1:]
+	}
+	room := m.width - theme.Width(always)
+	line = m.theme.Clip(line, room)
+	for _, b := range append(here, more...) {
+		if hint := m.hinted(b); theme.Width(line)+theme.Width(hint) <= room {
+			line += hint
+		}
+	}
+	return m.theme.Fit(line, room) + always
+}
+
+func (m Model) promptKeys() string {
+	p := m.prompt
+	pairs := []string{"Enter", "on"}
+	if len(p.form.Fields()) > 1 {
+		pairs = append(pairs, m.theme.Pick("↑ ↓", "Up Down"), "field")
+	}
+	if f, ok := p.form.Field(p.form.Focused()); ok && f.IsChoice() {
+		pairs = append(pairs, m.theme.Pick("← →", "Left Right"), "choose")
+	}
+	if len(p.phrases) > 0 {
+		pairs = append(pairs, "Ctrl+N", "prepared text")
+	}
+	if p.canFill() {
+		pairs = append(pairs, "Ctrl+T", "fill in")
+	}
+	return m.hints(append(pairs, "Esc", "nothing entered")...)
+}
+
+// hinted writes key bindings as hints.
+func (m Model) hinted(keys ...key.Binding) string {
+	var pairs []string
+	for _, k := range keys {
+		pairs = append(pairs, k.Help().Key, k.Help().Desc)
+	}
+	return m.hints(pairs...)
 }
 
 // hints writes pairs of key and what it does.
 func (m Model) hints(pairs ...string) string {
 	var b strings.Builder
 	for i := 0; i+1 < len(pairs); i += 2 {
-		b.WriteString(" " + m.theme.Paint(theme.Key, pairs[i]) + " " + pairs[i+1] + " ")
+		b.WriteString(" " + m.theme.Paint(theme.Key, pairs[i]) + " " + m.theme.Paint(theme.Faint, pairs[i+1]) + " ")
 	}
 	return b.String()
 }
