@@ -20,6 +20,7 @@ import (
 	"chargehand/commission/droop"
 	"chargehand/commission/finding"
 	"chargehand/commission/site"
+	"chargehand/commission/window"
 	"chargehand/protocol/registermap"
 	"chargehand/tui/theme"
 )
@@ -208,7 +209,7 @@ func (a *app) printChecked(r checked, o checkOptions, first bool) error {
 	case o.csv:
 		return sheet.WriteCSV(a.out, first)
 	case o.table == "window":
-		return writeWindow(a.out, r.site)
+		return window.WriteRows(a.out, window.Table(r.site))
 	}
 	t, err := a.theme(a.out)
 	if err != nil {
