@@ -177,6 +177,9 @@ func Dwell(r quantity.Resistance, filter quantity.Capacitance, emf, difference q
 
 func (b *bypass) needsLoop(m *finding.Missing) {
 	c := b.site.Converter
+	precharge.NeedHighest(b.site.Source, m)
+	m.Need("bus.capacitance", b.axes[axisBanks].Low > 0)
+	m.Need("source.internal_resistance", b.site.Source.InternalResistance.IsGiven())
 	m.Need("source.inductance", b.site.Source.Inductance.IsGiven())
 	m.Need("converter.phases", c != nil && c.Phases > 0)
 	m.Need("converter.choke", c != nil && c.Choke.IsGiven())
@@ -200,6 +203,7 @@ func (b *bypass) needsFilter(m *finding.Missing) {
 }
 
 func (b *bypass) needsErrors(m *finding.Missing) {
+	m.Need("precharge.closing_difference", b.site.Precharge.ClosingDifference.IsGiven())
 	m.Need("source.measurement_error", b.site.Source.MeasurementError.IsGiven())
 	m.Need("bus.measurement_error", b.site.Bus.MeasurementError.IsGiven())
 }

@@ -80,6 +80,8 @@ func (a *assessment) inrush() finding.Finding {
 func (a *assessment) filterInrush() finding.Finding {
 	f := finding.Finding{ID: "closing.inrush", Subject: "filter", Title: "Source switch closing on the empty filter", Unit: "A", Basis: basisLoop}
 	if m := missing(a.needsFilter, func(m *finding.Missing) {
+		precharge.NeedHighest(a.site.Source, m)
+		m.Need("source.internal_resistance", a.site.Source.InternalResistance.IsGiven())
 		m.Need("source.inductance", a.site.Source.Inductance.IsGiven())
 	}); m != nil {
 		return f.Lacking(m...)
@@ -145,6 +147,7 @@ func (a *assessment) threshold() finding.Finding {
 }
 
 func (a *assessment) needsAuxiliary(m *finding.Missing) {
+	m.Need("precharge.resistance", a.site.Precharge.Resistance.IsGiven())
 	if x := a.site.Bus.Auxiliary; x != nil {
 		m.Need("bus.auxiliary.power", x.Power.IsGiven())
 		m.Need("bus.auxiliary.starts_at", x.StartsAt.IsGiven())
@@ -168,6 +171,10 @@ func (a *assessment) liveBus() finding.Finding {
 	}
 	p := a.site.Precharge
 	if m := missing(func(m *finding.Missing) {
+		precharge.NeedHighest(a.site.Source, m)
+		m.Need("source.internal_resistance", a.site.Source.InternalResistance.IsGiven())
+		m.Need("precharge.resistance", p.Resistance.IsGiven())
+		m.Need("precharge.closing_difference", p.ClosingDifference.IsGiven())
 		m.Need("converter.filter.capacitance", a.filter.Capacitance.IsGiven())
 		m.Need("precharge.compares", p.Compares != "")
 		m.Need("precharge.minimum_time", p.MinimumTime.IsGiven())

@@ -114,7 +114,15 @@ func Highest(s site.Site) quantity.Voltage {
 	return s.Bus.Nominal.Nominal
 }
 
-func (a *assessment) needsFilter(m *finding.Missing) {
+func (a *assessment) needsBus(m *finding.Missing) {
+	m.Need("bus.nominal", Highest(a.site) > 0)
+	for _, b := range a.site.Bus.Capacitances {
+		m.Need("bus.capacitance", b.Value.IsGiven())
+	}
+	m.Need("bus.capacitance", len(a.site.Bus.Capacitances) > 0)
+	for _, b := range a.site.Bus.Bleeders {
+		m.Need("bus.bleeder", b.Value.IsGiven())
+	}
 	if f := starFilter(a.site); f != nil {
 		m.Need("converter.filter.capacitance", f.Capacitance.IsGiven())
 	}
@@ -127,7 +135,7 @@ func valueOf(s corner.Spread) finding.Value {
 func (a *assessment) energy() finding.Finding {
 	f := finding.Finding{ID: "discharge.energy", Title: "Energy stored in the bus", Unit: "J", Basis: basisEnergy}
 	var m finding.Missing
-	if a.needsFilter(&m); m != nil {
+	if a.needsBus(&m); m != nil {
 		return f.Lacking(m...)
 	}
 	f = f.Stated(valueOf(a.spreads[ofEnergy]))
@@ -139,7 +147,10 @@ func (a *assessment) touchSafe() finding.Finding {
 	f := finding.Finding{ID: "discharge.touch-safe", Title: "Time to the touch-safe voltage", Unit: "s", Basis: basisTime}
 	t := a.site.Bus.TouchSafe
 	var m finding.Missing
-	a.needsFilter(&m)
+	a.needsBus(&m)
+	if starFilter(a.site) != nil && a.site.Source.HighestRest() <= 0 {
+		m.Add("source.max_voltage")
+	}
 	m.Need("bus.touch_safe", t != nil)
 	if t != nil {
 		m.Need("bus.touch_safe.voltage", t.Voltage.IsGiven())

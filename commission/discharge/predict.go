@@ -49,7 +49,7 @@ const (
 func Predict(s site.Site, v0 quantity.Spread[quantity.Voltage]) Prediction {
 	a := &assessment{site: s}
 	var missing finding.Missing
-	a.needsFilter(&missing)
+	a.needsBus(&missing)
 	t := s.Bus.TouchSafe
 	missing.Need("bus.touch_safe.voltage", t != nil && t.Voltage.IsGiven())
 	if x := s.Bus.Auxiliary; x != nil {

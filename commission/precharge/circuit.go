@@ -67,7 +67,9 @@ func (c Circuit) solve() solution {
 }
 
 // isCoupled tells that source and link both move under a load: no static equilibrium, no closed form.
-func (c Circuit) isCoupled() bool { return c.Source > 0 && (c.Bleeder > 0 || c.Auxiliary > 0) }
+func (c Circuit) isCoupled() bool {
+	return c.Source > 0 && c.Capacitance > 0 && (c.Bleeder > 0 || c.Auxiliary > 0)
+}
 
 // TimeConstant is τ = (R ∥ R_b)·C, with a supercapacitor's own capacitance in series.
 func (c Circuit) TimeConstant() quantity.Seconds { return quantity.Seconds(c.solve().tau) }

@@ -10,6 +10,9 @@ import (
 // closed form with constant power. Fourth-order Runge-Kutta in steps of a twentieth of the time constant, the steps cut
 // where the auxiliary supply starts or stops and where the difference is reached.
 
+// longest is how many time constants are followed step by step.
+const longest = 200
+
 // drawn is what such a charge came to.
 type drawn struct {
 	closedAt     float64 // infinite when the difference never came
@@ -28,7 +31,7 @@ func (c Circuit) draw(gap, until float64) drawn {
 	x := pair{e: s.e, v: s.v0}
 	on := s.load > 0 && s.v0 >= s.vOn
 	for t := 0.0; ; {
-		if until < 0 && (c.rate(s, x, on).v <= 0 || t > 200*s.tau) {
+		if until < 0 && (c.rate(s, x, on).v <= 0 || t > longest*s.tau) {
 			return c.ended(s, x, on)
 		}
 		step := s.tau / 20
@@ -42,6 +45,10 @@ func (c Circuit) draw(gap, until float64) drawn {
 			return drawn{closedAt: t + part, energy: next.w, link: next.v, source: next.e, settled: next.v}
 		}
 		x, on, t = next, stayed, t+took
+		if until > t && t > longest*s.tau { // nothing moves any more but the slow sag: the power of now is the bound of later
+			x.w += c.rate(s, x, on).w * (until - t)
+			t = until
+		}
 		if until >= 0 && t >= until {
 			return drawn{closedAt: math.Inf(1), energy: x.w, link: x.v, source: x.e}
 		}

@@ -30,6 +30,9 @@ func Findings(s site.Site) []finding.Finding { return assess(s, true).findings()
 
 func assess(s site.Site, remedies bool) *assessment {
 	a := &assessment{path: pathOf(s), remedies: remedies}
+	if a.missing(a.needsLoop) != nil {
+		return a
+	}
 	a.charge = a.charges()
 	a.closeAxes, a.closing = a.closes()
 	return a
@@ -154,7 +157,7 @@ func (a *assessment) energy() finding.Finding {
 
 // needsEnergy asks for the time-out where a charge may never close.
 func (a *assessment) needsEnergy(m *finding.Missing) {
-	m.Need("precharge.timeout", !math.IsNaN(a.charge[ofEnergy].High))
+	m.Need("precharge.timeout", a.charge == nil || !math.IsNaN(a.charge[ofEnergy].High))
 }
 
 func (a *assessment) pulse() finding.Finding {

@@ -49,7 +49,7 @@ func pathOf(s site.Site) path {
 	p.sum(axisLink, linkMembers(s))
 	p.axes[axisBleeder], p.members[axisBleeder] = bleeders(s.Bus.Bleeders)
 	p.axes[axisAuxiliary] = corner.Exact("bus.auxiliary.power", 0)
-	if a := s.Bus.Auxiliary; a != nil {
+	if a := s.Bus.Auxiliary; a != nil && a.Power.IsGiven() && a.StartsAt.IsGiven() && a.StopsAt.IsGiven() {
 		p.axes[axisAuxiliary] = corner.Axis{Name: "bus.auxiliary.power", Nominal: float64(a.Power.Nominal), High: float64(a.Power.High)}
 		p.axes[axisStartsAt] = corner.Of("bus.auxiliary.starts_at", a.StartsAt)
 		p.axes[axisStopsAt] = corner.Of("bus.auxiliary.stops_at", a.StopsAt)
@@ -175,12 +175,28 @@ func (p *path) nominal() []float64 {
 
 func (p *path) needsLoop(m *finding.Missing) {
 	c := p.site.Converter
+	m.Need("source.internal_resistance", p.site.Source.InternalResistance.IsGiven())
+	m.Need("precharge.resistance", p.axes[axisResistor].Nominal > 0)
+	NeedHighest(p.site.Source, m)
 	m.Need("converter.phases", c != nil && c.Phases > 0)
 	m.Need("converter.choke_resistance", c != nil && c.ChokeResistance.IsGiven())
 }
 
+// NeedHighest notes the keys of the highest rest voltage where it is not known.
+func NeedHighest(s site.Source, m *finding.Missing) {
+	switch {
+	case s.HighestRest() > 0:
+	case s.CellsInSeries > 0:
+		m.Add("source.cell_max")
+	default:
+		m.Add("source.cells_in_series", "source.max_voltage")
+	}
+}
+
 func (p *path) needsCircuit(m *finding.Missing) {
 	p.needsLoop(m)
+	m.Need("bus.capacitance", p.axes[axisLink].Low > 0)
+	m.Need("precharge.closing_difference", p.site.Precharge.ClosingDifference.IsGiven())
 	if a := p.site.Bus.Auxiliary; a != nil {
 		m.Need("bus.auxiliary.power", a.Power.IsGiven())
 		m.Need("bus.auxiliary.starts_at", a.StartsAt.IsGiven())

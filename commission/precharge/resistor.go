@@ -131,7 +131,8 @@ func (c choice) leastWithWindow() (float64, bool) {
 		return h.standsPulse() && aboveSlowestCharge*h.slowest < h.withstand/belowLeastWithstand
 	}
 	last := 0.0
-	for r := c.present() / reach; r <= c.present()*reach*(1+1e-9); r *= 1.1 {
+	r := c.present() / reach
+	for range 97 { // 1.1⁹⁷ is just above reach²
 		if fits(r) {
 			if last == 0 {
 				return r, true
@@ -139,6 +140,7 @@ func (c choice) leastWithWindow() (float64, bool) {
 			return edge(last, r, fits), true
 		}
 		last = r
+		r *= 1.1
 	}
 	return 0, false
 }

@@ -41,6 +41,7 @@ func shortCircuit(s site.Site) finding.Finding {
 	f := finding.Finding{ID: "source.short-circuit", Title: "Prospective short circuit at the source", Unit: unitAmpere, Basis: basisShort, Guards: true}
 	fuse, highest := s.Source.Fuse, s.Source.HighestRest()
 	var m finding.Missing
+	needsSource(s, &m)
 	m.Need("source.fuse", fuse != nil)
 	if fuse != nil {
 		m.Need("source.fuse.breaking_capacity", fuse.BreakingCapacity.IsGiven())
@@ -75,6 +76,13 @@ func shortCircuit(s site.Site) finding.Finding {
 	return withRemedy(f, changes)
 }
 
+func needsSource(s site.Site, m *finding.Missing) {
+	m.Need(keyInternal, s.Source.InternalResistance.IsGiven())
+	if s.Source.HighestRest() <= 0 {
+		m.Add("source.max_voltage")
+	}
+}
+
 // withRemedy asks for at least the figures in changes.
 func withRemedy(f finding.Finding, changes []finding.Change) finding.Finding {
 	if len(changes) > 0 {
@@ -91,6 +99,7 @@ func isolation(s site.Site) finding.Finding {
 	f := finding.Finding{ID: "source.isolation", Title: "Isolation of the source", Unit: "1", Basis: basisIsolate, Guards: true}
 	isolator, highest := s.Source.Switch, s.Source.HighestRest()
 	var m finding.Missing
+	needsSource(s, &m)
 	m.Need("source.switch", isolator != nil)
 	if isolator != nil {
 		m.Need("source.switch.poles", isolator.Poles > 0)
@@ -144,8 +153,11 @@ func isolation(s site.Site) finding.Finding {
 func faultEnergy(s site.Site) finding.Finding {
 	f := finding.Finding{ID: "source.fault-energy", Title: "Energy released until the fuse pre-arcs", Unit: "J", Basis: basisFault}
 	fuse := s.Source.Fuse
-	if fuse == nil || !fuse.PreArcingI2t.IsGiven() {
-		return f.Lacking(keyPreArcing)
+	var m finding.Missing
+	needsSource(s, &m)
+	m.Need(keyPreArcing, fuse != nil && fuse.PreArcingI2t.IsGiven())
+	if m != nil {
+		return f.Lacking(m...)
 	}
 	axes := []corner.Axis{corner.Of(keyInternal, s.Source.InternalResistance), corner.Of(keyPreArcing, fuse.PreArcingI2t)}
 	over := corner.Over(axes, func(x []float64) float64 {
