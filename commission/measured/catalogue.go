@@ -101,3 +101,13 @@ func together(score float64, parted string, evidence []string, ids ...string) []
 	}
 	return group
 }
+
+// lowered puts causes behind those that explain the numbers themselves.
+func lowered(causes []finding.Cause) []finding.Cause {
+	var out []finding.Cause
+	for _, c := range causes {
+		c.Score *= 0.3
+		out = append(out, c)
+	}
+	return out
+}

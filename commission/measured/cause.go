@@ -344,6 +344,9 @@ func (f *charge) differences() []finding.Cause {
 		found = append(found, f.withoutCurrent()...)
 	}
 	if len(found) == 0 {
+		found = f.withinTolerances()
+	}
+	if len(found) == 0 {
 		found = append(found, because(notKnown, 0.5, f.summary()))
 	}
 	return ranked(found)
@@ -426,6 +429,40 @@ func (f *charge) withCurrent(ohms measurement) []finding.Cause {
 		found = append(found, because("bank-missing", 0.91, append(evidence, f.bankWords(farads.value))...))
 	}
 	return found
+}
+
+// withinTolerances: the time constant proves a fault, and resistance and capacitance, known less well, both lie within what
+// they may be. The one that uses up its tolerance is named; where both do, both are.
+func (f *charge) withinTolerances() []finding.Cause {
+	ohms, haveOhms := f.ohmsOfResistor()
+	farads, haveFarads := f.farads()
+	tau := measurement{value: f.fit.Tau, u: f.fit.TauSE, freedom: f.fit.Freedom}
+	off := outside(tau, f.tau())
+	if !haveOhms || !haveFarads || off == 0 {
+		return nil
+	}
+	used := func(v float64, b band) float64 {
+		if off < 0 {
+			return (b.nominal - v) / (b.nominal - b.low)
+		}
+		return (v - b.nominal) / (b.high - b.nominal)
+	}
+	r, c := used(ohms.value, f.rp), used(farads.value, f.c)
+	resistor, bank := "resistor-low", "bank-missing"
+	if off > 0 {
+		resistor, bank = "resistor-high", "bank-added"
+	}
+	evidence := []string{fmt.Sprintf("time constant %+.0f %%, resistance %+.1f %%, capacitance %+.1f %%", 100*(f.fit.Tau/f.tau().nominal-1), 100*(ohms.value/f.rp.nominal-1),
+		100*(farads.value/f.c.nominal-1)), f.bankWords(farads.value)}
+	switch {
+	case c > 0.8 && c > r+0.15:
+		return []finding.Cause{because(bank, 0.8, evidence...), because(resistor, 0.4, evidence...)}
+	case r > 0.8 && r > c+0.15:
+		return []finding.Cause{because(resistor, 0.8, evidence...), because(bank, 0.4, evidence...)}
+	case r > 0.5 && c > 0.5:
+		return together(0.7, "the resistor cold, four-wire, and each bank's capacitance", evidence, bank, resistor)
+	}
+	return nil
 }
 
 // outside is how far a measurement lies beyond a band and its own uncertainty: negative below, positive above, 0 where it

@@ -97,7 +97,7 @@ func (l *line) hunting() []finding.Cause {
 		swing = math.Min(swing, float64(st.Swing))
 	}
 	allowed := float64(l.site.Bus.Ripple.Nominal)/2 + 0.002*float64(l.site.Bus.Nominal.Nominal)
-	if len(l.on)+len(l.off) < 2 || swing < allowed {
+	if len(l.on)+len(l.off) < 1 || swing < allowed {
 		return nil
 	}
 	return []finding.Cause{because("bus-hunts", 0.9, fmt.Sprintf("the bus swings by ± %s at every load, ± %s allowed", number(swing, "V"), number(allowed, "V")))}

@@ -21,10 +21,10 @@ type loaded struct {
 func (f *charge) kindOfLoad(evidence []string) []finding.Cause {
 	resistive := f.asResistance()
 	late, at := f.asLatePower(), 0.0
-	if late.ssr < 0.4*resistive.ssr {
+	if late.ssr < 0.65*resistive.ssr {
 		at = late.from
 	}
-	if at < 0.1*f.scale() {
+	if at < 0.3*f.scale() { // lower down a power and a resistance make the same curve
 		return []finding.Cause{because("load-left-on", 0.93, evidence...)}
 	}
 	evidence = append(evidence, fmt.Sprintf("until %s the curve is that of an unloaded bus, from there about %s are drawn", number(at, "V"), number(late.power, "W")))

@@ -266,6 +266,9 @@ func (f *fall) judged(out finding.Finding) finding.Finding {
 		out.Cause = ranked(append(out.Cause, f.slopeCauses()...))
 	}
 	if dropped {
+		if len(out.Cause) > 0 {
+			read = lowered(read)
+		}
 		out.Verdict, out.Cause = finding.Worst(out.Verdict, weight(read)), ranked(append(out.Cause, read...))
 		out.Because = append(out.Because, read[0].Evidence...)
 	}
@@ -405,7 +408,8 @@ func (f *fall) filterGone() bool {
 	}
 	wanted := f.paper.filter.low / f.link.high
 	const zeroError = 0.015 // what the bus sensor's offset may make of the share
-	return wanted > 0.04 && f.filter.value+fit.Coverage(f.filter.freedom)*f.filter.u+zeroError < 0.7*wanted
+	U := fit.Coverage(f.filter.freedom)*f.filter.u + zeroError
+	return wanted > 0.04 && U < 0.5*wanted && math.Abs(f.filter.value) < 0.6*wanted && f.filter.value+U < 0.7*wanted
 }
 
 func (f *fall) filterWords() string {

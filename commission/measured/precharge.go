@@ -60,12 +60,13 @@ func (f *charge) judged(out finding.Finding) finding.Finding {
 		return out
 	}
 	out = f.compared(out)
+	failed := out.Verdict == finding.Fail
 	if len(causes) > 0 && out.Verdict != finding.Fail {
 		out.Verdict = finding.Worst(out.Verdict, weight(causes))
 		out.Because = append(out.Because, causes[0].Evidence...)
 	}
-	if out.Verdict == finding.Fail && len(causes) == 0 {
-		causes = f.differences()
+	if failed && (len(causes) == 0 || causes[0].ID == "link-drops") {
+		causes = ranked(append(f.differences(), lowered(causes)...))
 	}
 	out.Cause = causes
 	return out

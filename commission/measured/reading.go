@@ -384,8 +384,12 @@ func dropped(_ paper, c capture.Capture) []finding.Cause {
 		steps = append(steps, t[i]-t[i-1])
 	}
 	usual := fit.Median(steps)
+	least := 0.35
+	if c.Kind == capture.Discharge { // slow: a gap counts where the curve goes on meanwhile
+		least = 0.02 * (t[len(t)-1] - t[0])
+	}
 	for _, d := range steps {
-		if d > 0.35 && d > 5*usual {
+		if d > least && d > 5*usual {
 			total, n, longest = total+d, n+1, math.Max(longest, d)
 		}
 	}

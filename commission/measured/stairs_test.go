@@ -93,7 +93,7 @@ func (p *stairs) climb() capture.Capture {
 			k := 1 - math.Exp(-dt/p.lag)
 			v, i = v+k*(bus-v), i+k*(current-i)
 			hunt := p.hunting * math.Sin(2*math.Pi*1.7*t)
-			shown := v + hunt
+			shown, i := v+hunt, i+0.6*hunt/(p.otherDroop+0.05)
 			source := shown * i / 0.97 / p.emf
 			values := []float64{shown + p.offsetV + noise(p.noise), p.emf - p.ri*source + noise(p.noise), p.gainI*source + noise(0.1), p.gainI*i + noise(0.1),
 				p.gainI*i*shown + noise(30), math.Floor(t * 10)}

@@ -97,20 +97,21 @@ func atLimitSplit(parts [][2]float64, bus trace) [][2]float64 {
 	return all
 }
 
-// plateaus splits a record where the mean of the next four samples differs from that of the last four by more than the
-// scatter within both explains.
+// plateaus splits a record where the mean of the next 0.6 s differs from that of the last by more than the scatter within
+// both explains. A bus that hunts swings several times in that time and is not split for it.
 func plateaus(t, v []float64, resolution float64) [][2]float64 {
-	const width = 4
-	if len(t) < 2*width {
+	if len(t) < 8 {
 		return nil
 	}
+	width := int(math.Round(0.6 * float64(len(t)-1) / math.Max(t[len(t)-1]-t[0], 1e-9)))
+	width = min(max(width, 4), 40, len(t)/2)
 	span := trace{t: t, v: v, ok: true}.span()
 	least := math.Max(8*resolution, 0.03*span)
 	var parts [][2]float64
 	start := t[0]
 	for i := width; i+width <= len(t); i++ {
 		a, b := fit.Average(v[i-width:i]), fit.Average(v[i:i+width])
-		if math.Abs(a.Mean-b.Mean) < least+2*(a.SD+b.SD)/math.Sqrt(width) {
+		if math.Abs(a.Mean-b.Mean) < least+2*(a.SD+b.SD)/math.Sqrt(float64(width)) {
 			continue
 		}
 		// the edge is where the difference is greatest
