@@ -34,13 +34,15 @@ func (p *path) charges() []corner.Spread {
 	return corner.OverAll(p.axes[:], chargeResults, func(x, out []float64) {
 		c := p.circuit(x)
 		settled, _ := c.Settled()
-		out[ofTau], out[ofFinal] = float64(c.TimeConstant()), float64(settled)
-		out[ofCurrent], out[ofPower] = float64(c.PeakCurrent()), float64(c.PeakPower())
+		s := c.solve()
+		peak := quantity.Power(s.rp * s.current0 * s.current0)
 		heat := p.heat(c)
+		out[ofTau], out[ofFinal] = s.tau, float64(settled)
+		out[ofCurrent], out[ofPower] = s.current0, float64(peak)
 		out[ofEnergy] = float64(heat.Energy())
-		out[ofPulse] = p.utilisation(c, heat, quantity.Temperature(x[axisAmbient]))
+		out[ofPulse] = p.utilisation(peak, heat, quantity.Temperature(x[axisAmbient]))
 		out[ofRepeat] = p.hottestOf(heat, x)
-		out[ofWithstand] = p.withstand(c, heat, x)
+		out[ofWithstand] = p.withstand(peak, heat, x)
 		p.cool[[axisEMF]float64(x)] = p.coolDown(heat, x)
 	})
 }
@@ -87,9 +89,8 @@ func PulseTime(tau quantity.Seconds, energy quantity.Energy, peak quantity.Power
 	return max(tau/2, quantity.Seconds(float64(energy)/float64(peak)))
 }
 
-func (p *path) utilisation(c Circuit, heat Heat, ambient quantity.Temperature) float64 {
-	peak := c.PeakPower()
-	return float64(peak / p.rating.Permissible(PulseTime(c.TimeConstant(), heat.Energy(), peak), ambient))
+func (p *path) utilisation(peak quantity.Power, heat Heat, ambient quantity.Temperature) float64 {
+	return float64(peak / p.rating.Permissible(PulseTime(heat.TimeConstant, heat.Energy(), peak), ambient))
 }
 
 func (p *path) bodyAt(x []float64) Body {
@@ -111,8 +112,7 @@ func (p *path) hottestOf(heat Heat, x []float64) float64 {
 func (p *path) period(heat Heat) quantity.Seconds { return max(p.interval(), heat.On) }
 
 // withstand is how long the resistor stands the full source voltage, as hot as before the last permitted attempt.
-func (p *path) withstand(c Circuit, heat Heat, x []float64) float64 {
-	power := c.PeakPower()
+func (p *path) withstand(power quantity.Power, heat Heat, x []float64) float64 {
 	if !p.hasThermal() {
 		return float64(p.rating.Withstand(power, quantity.Temperature(x[axisAmbient])))
 	}

@@ -41,8 +41,8 @@ func (c choice) inCorners(r float64) hardest {
 	slowest := with(c.a.closing[ofTimeToClose].AtHigh)
 	atPulse, atWithstand := c.a.circuit(pulse), c.a.circuit(withstand)
 	return hardest{
-		pulse:     c.a.utilisation(atPulse, c.a.heat(atPulse), quantity.Temperature(pulse[axisAmbient])),
-		withstand: c.a.withstand(atWithstand, c.a.heat(atWithstand), withstand),
+		pulse:     c.a.utilisation(atPulse.PeakPower(), c.a.heat(atPulse), quantity.Temperature(pulse[axisAmbient])),
+		withstand: c.a.withstand(atWithstand.PeakPower(), c.a.heat(atWithstand), withstand),
 		slowest:   float64(c.a.circuit(slowest).TimeToClose(c.a.difference + quantity.Voltage(slowest[axisError]))),
 	}
 }
