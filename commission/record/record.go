@@ -58,6 +58,7 @@ type Instrument struct {
 	Calibrated string             `json:"calibrated"` // date, or ""
 	Due        string             `json:"due"`
 	Accuracy   InstrumentAccuracy `json:"accuracy"`
+	MaxVoltage float64            `json:"max_voltage,omitempty"` // V; 0: not stated
 }
 
 // InstrumentAccuracy is the error of an instrument: of_reading (a fraction) of the reading plus a constant in volts.

@@ -20,7 +20,7 @@ func Acts(point string) []string {
 		return []string{LoadShare(50), InfeedsOff, InfeedsOn}
 	case "share.regeneration":
 		return []string{LoadOff, Regenerate, LoadOff}
-	case "power.sign":
+	case "power.keyed":
 		return []string{LoadShare(50), PowerMode, PowerReference(20e3)}
 	case "down.order", "down.discharge":
 		return []string{LoadOff, EverythingOff}

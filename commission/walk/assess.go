@@ -4,6 +4,7 @@ import (
 	"crypto/sha256"
 	"encoding/hex"
 	"fmt"
+	"math"
 	"slices"
 	"strconv"
 	"strings"
@@ -33,6 +34,8 @@ func (s State) Assess(p Point) Assessment {
 	for _, c := range p.Accept {
 		r, ok := taken.of(c.What)
 		switch {
+		case c.Low == nil && c.High == nil:
+			missing = append(missing, "nothing limits "+c.What+": the site file lacks "+c.From)
 		case !ok || r.Value == nil:
 			missing = append(missing, "no reading of "+c.What)
 		case !c.Holds(*r.Value):
@@ -41,6 +44,11 @@ func (s State) Assess(p Point) Assessment {
 	}
 	if names := s.unproved(p, taken); len(names) > 0 {
 		missing = append(missing, join(names)+" not proved yet: compare with a known value that is not zero")
+	}
+	for _, name := range p.Proves {
+		if because := s.disagreement(name, taken); because != "" {
+			outside = append(outside, because)
+		}
 	}
 	for _, id := range p.Findings {
 		m, o := s.bind(id)
@@ -53,6 +61,19 @@ func (s State) Assess(p Point) Assessment {
 		return Assessment{Open, missing}
 	}
 	return Assessment{Passed, nil}
+}
+
+// disagreement says that the device and whatever else read the signal here do not agree.
+func (s State) disagreement(name signal.Name, taken readings) string {
+	device, seen := taken.from(record.FromDevice, string(name))
+	known, held := taken.known(string(name))
+	if !seen || !held || device.Value == nil || known.Value == nil {
+		return ""
+	}
+	if off := math.Abs(*device.Value - *known.Value); off > s.proofTolerance(name, known) {
+		return fmt.Sprintf("%s: the device reads %s, %s %s", name, show(*device.Value, name.Unit()), known.Source, show(*known.Value, name.Unit()))
+	}
+	return ""
 }
 
 func (s State) bind(id string) (missing, outside []string) {
@@ -163,6 +184,14 @@ func (rs readings) of(what string) (record.Reading, bool) {
 		return r, true
 	}
 	return rs.from("", what)
+}
+
+// known is the newest reading of what that did not come from the device.
+func (rs readings) known(what string) (record.Reading, bool) {
+	if r, ok := rs.from(record.FromInstrument, what); ok {
+		return r, true
+	}
+	return rs.from(record.Observed, what)
 }
 
 // from is the newest reading from a source; an empty source or what stands for any.

@@ -138,6 +138,49 @@ func known[Q quantity.Scalar](e quantity.Entered[Q], v Q) *float64 {
 	return &f
 }
 
+// by is how a value is read that the site file gives a range for, or only looked at where it gives none.
+func (n numbers) by(ranged bool) []By {
+	if ranged {
+		return []By{Instrument, Observation}
+	}
+	return []By{Observation}
+}
+
+// readingsOf are the readings that criteria ask for.
+func readingsOf(criteria []Criterion) []HandReading {
+	var hand []HandReading
+	for _, c := range criteria {
+		hand = append(hand, HandReading{c.What, c.Unit})
+	}
+	return hand
+}
+
+// chokes are the inductances of the phases, each within its tolerance.
+func (n numbers) chokes() []Criterion {
+	c := n.site.Converter
+	if c == nil || !c.Choke.IsGiven() {
+		return nil
+	}
+	low, high := float64(c.Choke.Low), float64(c.Choke.High)
+	var all []Criterion
+	for phase := range c.Phases {
+		all = append(all, within(fmt.Sprintf("choke %d", phase+1), "H", &low, &high, "converter.choke"))
+	}
+	return all
+}
+
+// bleeders is the resistance of all bleeders in parallel over their tolerances.
+func (n numbers) bleeders() []Criterion {
+	low, high := 0.0, 0.0 // conductances at the upper and the lower resistances
+	for _, b := range n.site.Bus.Bleeders {
+		low, high = low+1/float64(b.Value.High), high+1/float64(b.Value.Low)
+	}
+	if high == 0 {
+		return nil
+	}
+	return []Criterion{within("bleeder resistance", "Ω", number(1/high), number(1/low), "bus.bleeder")}
+}
+
 // touchSafe is the touch-safe voltage as a bound, or nil.
 func (n numbers) touchSafe() *float64 {
 	if n.site.Bus.TouchSafe == nil {
@@ -191,5 +234,10 @@ func keysOf(s site.Site) map[string]string {
 		banks = append(banks, b.Name+" "+b.Value.Text)
 	}
 	keys["bus.capacitance"] = strings.Join(banks, ", ")
+	var bleeders []string
+	for _, b := range s.Bus.Bleeders {
+		bleeders = append(bleeders, b.Name+" "+b.Value.Text)
+	}
+	keys["bus.bleeder"] = strings.Join(bleeders, ", ")
 	return keys
 }

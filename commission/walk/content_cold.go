@@ -93,6 +93,7 @@ func deadPoints(n numbers) []Point {
 		low, high := float64(r.Low), float64(r.High)
 		resistance = []Criterion{within("pre-charge resistance", "Ω", &low, &high, "precharge.resistance")}
 	}
+	chokes, bleeders := n.chokes(), n.bleeders()
 	repair := []string{"dead.bus", "dead.insulation", "dead.ready", "charge.*"}
 	return []Point{
 		{ID: "dead.joints", Kind: Witness, By: []By{Observation}, Title: "Joints and bonding",
@@ -104,9 +105,10 @@ func deadPoints(n numbers) []Point {
 			Do:        "Trace and ring plus and minus: source to bypass, star point, bus, every infeed to the bus.",
 			Expect:    "Plus is plus everywhere.",
 			Otherwise: "stop; correct the wiring, then begin the dead checks again", Basis: "common practice", Reopens: repair},
-		{ID: "dead.chokes", Kind: Check, By: []By{Observation}, Title: "Three separate chokes",
-			Do:        "No common core. Enter inductance and resistance of each.",
-			Expect:    "Each {key:converter.choke} and {key:converter.choke_resistance}, alike.",
+		{ID: "dead.chokes", Kind: Check, By: n.by(len(chokes) > 0), Title: "Separate chokes",
+			Do:     "No common core. Measure the inductance of each; resistances alike.",
+			Expect: "Each {key:converter.choke} and {key:converter.choke_resistance}, alike.",
+			Hand:   readingsOf(chokes), Accept: chokes,
 			Otherwise: "unequal chokes: the source sees ripple at the switching frequency, see boost.ripple", Basis: "nameplates"},
 		{ID: "dead.bridge", Kind: Check, By: []By{Observation}, Title: "Bridge diode test",
 			Caution:   "A shorted upper switch lets the bus drive the source: never close on it.",
@@ -128,9 +130,10 @@ func deadPoints(n numbers) []Point {
 			Do:        "Move pre-charge and bypass contactor by hand; measure across the open bypass.",
 			Expect:    "Free, open; auxiliary contacts follow the main contacts.",
 			Otherwise: "replace; a welded bypass makes every later reading a lie", Basis: "common practice", Reopens: repair},
-		{ID: "dead.discharge", Kind: Check, By: []By{Observation}, Title: "Bleeders",
-			Do:        "Measure each bleeder; it is wired to its bank without a switch between.",
-			Expect:    "Within tolerance; rated to stand {window.bus-high} continuously.",
+		{ID: "dead.discharge", Kind: Check, By: n.by(len(bleeders) > 0), Title: "Bleeders",
+			Do:   "Measure the bleeders, plus to minus once the banks have charged from the meter; each is wired to its bank without a switch between.",
+			Hand: readingsOf(bleeders), Accept: bleeders,
+			Expect:    "Within tolerance, all in parallel {key:bus.bleeder}; rated to stand {window.bus-high} continuously.",
 			Otherwise: "change the site file; the waiting time moves", Basis: "circuit of the bus", Reopens: []string{"paper.findings", "down.label"}},
 		{ID: "dead.insulation", Kind: Hold, By: []By{Observation}, Title: "Insulation of each pole",
 			Caution:   "The test voltage charges the bank: discharge and prove after. Never on a connected battery.",

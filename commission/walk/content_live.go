@@ -38,7 +38,7 @@ func chargePoints(n numbers) []Point {
 			Do:        "Arm the capture, then have the pre-charge closed, with the bypass locked out where the plant can.",
 			Expect:    "At 0.3 time constants at least half of the predicted rise.",
 			Otherwise: "the cause is known before any second attempt", Basis: "formulas of the pre-charge circuit", Unproved: true,
-			Signals: []signal.Name{signal.BusVoltage}, Capture: capture.Precharge,
+			Signals: []signal.Name{signal.BusVoltage}, Capture: capture.Precharge, Attempt: true, MayOmit: true, OmitWhen: BusLive,
 			Accept: []Criterion{within("rise", "1", number(1), nil, "half of the predicted rise at 0.3 time constants")}},
 		{ID: "charge.difference", Kind: Witness, By: []By{Live, Instrument}, Title: "Settled difference",
 			Caution:   "Live work: the leads were put on dead.",
@@ -48,17 +48,17 @@ func chargePoints(n numbers) []Point {
 			Signals: []signal.Name{signal.BusVoltage, signal.SourceVoltage, signal.StarPointVoltage}, Proves: []signal.Name{signal.BusVoltage, signal.StarPointVoltage},
 			Hand:    []HandReading{{bus, "V"}, {"difference across the bypass", "V"}},
 			Accept:  []Criterion{within("difference across the bypass", "V", nil, n.closingLimit(), "precharge.closing_difference less both errors")},
-			MayOmit: true},
+			MayOmit: true, OmitWhen: BusLive},
 		{ID: "charge.curve", Kind: Witness, By: []By{Live}, Title: "Time constant and final voltage",
 			Do:        "Compare the measured curve with the band.",
 			Expect:    "Time constant {precharge.time-constant:low} … {precharge.time-constant:high}, final voltage in the predicted band.",
 			Otherwise: "look into the ranked causes; enter the one that is found", Basis: "precharge.time-constant, precharge.final-voltage",
-			Signals: []signal.Name{signal.BusVoltage}, Findings: []string{"measured.precharge"}, MayOmit: true},
+			Signals: []signal.Name{signal.BusVoltage}, Findings: []string{"measured.precharge"}, MayOmit: true, OmitWhen: BusLive},
 		{ID: "charge.live-bus", Kind: Hold, By: []By{Live, Instrument}, Title: "Closing on a live bus",
 			Caution:   "Source below bus is no proof of a charged filter capacitor: closing at once makes {closing.without-precharge}. Star point at bus voltage: an upper switch is shorted, go no further.",
 			Do:        "Where the bus can be live: the pre-charge stays in for at least {closing.live-bus}; measure star point against source across the open bypass before it closes. Not applicable where the bus cannot be live yet: say why.",
 			Expect:    "Difference below {key:precharge.closing_difference}; no current after closing.",
-			Otherwise: "do not close", Basis: "closing.live-bus", MayOmit: true,
+			Otherwise: "do not close", Basis: "closing.live-bus", MayOmit: true, OmitWhen: BusDead,
 			Signals: []signal.Name{signal.StarPointVoltage, signal.SourceVoltage}, Proves: []signal.Name{signal.StarPointVoltage, signal.SourceVoltage},
 			Hand:   []HandReading{{"difference across the bypass", "V"}},
 			Accept: []Criterion{within("difference across the bypass", "V", nil, n.closingLimit(), "precharge.closing_difference less both errors")}},
@@ -207,19 +207,26 @@ func sharePoints(n numbers) []Point {
 func powerPoints(n numbers) []Point {
 	current := string(signal.SourceCurrent)
 	return []Point{
+		{ID: "power.keyed", Kind: Check, By: []By{Live, Observation}, Title: "Power reference keyed",
+			Caution:   "The source's current follows at once.",
+			Do:        "Whoever operates the plant goes over to current mode with the smallest power from source to bus. Take the live readings; enter the reference as the device's own display shows it.",
+			Expect:    "Display and signal agree, and are not zero.",
+			Otherwise: "correct the map line that `chargehand link` names", Basis: "common practice", Unproved: true,
+			Signals: []signal.Name{signal.PowerReference}, Proves: []signal.Name{signal.PowerReference}},
 		{ID: "power.sign", Kind: Hold, By: []By{Live, Instrument}, Title: "Direction of power",
 			Caution:   "A wrong sign turns charging into discharging: stop.",
 			Do:        "Smallest power setpoint from source to bus; read the source current with a clamp meter, plus towards the bus, and take the live readings; then the other way.",
 			Expect:    "Signal, clamp meter and battery manager agree on the direction in words.",
 			Otherwise: "stop; correct sign_reversed in the map or the wiring of the sensor", Basis: "design of the plant",
-			Signals: []signal.Name{signal.SourceCurrent, signal.Power}, Proves: []signal.Name{signal.SourceCurrent},
-			Hand: []HandReading{{current, "A"}}, Unproved: true},
+			Signals: []signal.Name{signal.SourceCurrent, signal.Power, signal.BusVoltage, signal.BusCurrent},
+			Proves:  []signal.Name{signal.SourceCurrent, signal.Power},
+			Hand:    []HandReading{{current, "A"}}, Unproved: true},
 		{ID: "power.accuracy", Kind: Witness, By: []By{Live}, Title: "Power and current against the setpoint",
 			Do:        "Three levels each way; take the live readings at each.",
 			Expect:    "Power as set; losses plausible against {key:converter.efficiency}.",
 			Otherwise: "look at sensors and calibration", Basis: "converter.efficiency", MayOmit: true,
 			Signals:  []signal.Name{signal.Power, signal.SourceCurrent, signal.SourceVoltage, signal.PowerReference, signal.BusVoltage, signal.BusCurrent},
-			Unproved: true, Findings: []string{"measured.current-mode"}},
+			Findings: []string{"measured.current-mode"}},
 		{ID: "power.window", Kind: Witness, By: []By{Live}, Title: "Source under current",
 			Do:        "Take source voltage and current at the highest level allowed today.",
 			Expect:    "Terminal voltage inside {window.source-low:low} … {window.source-high:high}; current at the bottom of the window {window.current}.",
@@ -240,43 +247,50 @@ func powerPoints(n numbers) []Point {
 }
 
 func tripPoints(n numbers) []Point {
-	trip := func(id, title string, by []By, caution, do, expect, basis string, signals ...signal.Name) Point {
-		return Point{ID: id, Kind: Witness, By: by, Title: title, Caution: caution, Do: do, Expect: expect,
-			Otherwise: "a trip that does not act forbids operation: correct it, then repeat", Basis: basis, Unproved: true, MayOmit: true, Signals: signals}
+	trip := func(id, title string, findings []string, caution, do, expect, basis string, signals ...signal.Name) Point {
+		return Point{ID: id, Kind: Witness, By: []By{Live, Observation}, Title: title, Caution: caution,
+			Do: "Arm the capture, then: " + do + " Enter what was seen; where the map lacks the signals, the response time by stopwatch.", Expect: expect,
+			Otherwise: "a trip that does not act forbids operation: correct it, then repeat", Basis: basis, Unproved: true, MayOmit: true,
+			Signals: signals, Capture: capture.Step, Findings: findings, Reopens: []string{"leave.settings"}}
 	}
-	both := []By{Live, Observation}
 	return []Point{
-		trip("trip.stop", "Emergency stop, live", both,
+		trip("trip.stop", "Emergency stop, live", tripFindings(EmergencyStop),
 			"Full-load opening only if the contactor's DC breaking rating allows it.",
-			"At small power. Enter the response seen and its time.", "Pulses, then contactors; state shown; no restart on reset.",
+			"press the emergency stop at small power.", "Pulses, then contactors; state shown; no restart on reset.",
 			"IEC 60204-1, 9.2", signal.Running, signal.BypassClosed, signal.BusVoltage),
-		trip("trip.time-out", "Pre-charge time-out", both,
+		trip("trip.time-out", "Pre-charge time-out", tripFindings(TimeOut),
 			"On a healthy bus only, never provoked with a short. It counts as an attempt.",
-			"Withhold the bypass. Enter the time seen.", "The pre-charge opens within {key:precharge.timeout}.",
-			"precharge.timeout", signal.PrechargeClosed, signal.Fault, signal.FaultCode),
-		trip("trip.bypass-lost", "Bypass report lost", both,
+			"withhold the bypass and close the pre-charge.", "The pre-charge opens within {key:precharge.timeout}.",
+			"precharge.timeout", signal.PrechargeClosed, signal.Fault, signal.FaultCode).asAttempt(),
+		trip("trip.bypass-lost", "Bypass report lost", tripFindings(BypassLost),
 			"At small power only.",
-			"Take the bypass report away. Enter the response seen and its time.", "Pulses blocked at once; the resistor is not loaded.",
+			"take the bypass report away.", "Pulses blocked at once; the resistor is not loaded.",
 			"circuit diagrams of the plant", signal.Running, signal.BypassClosed, signal.ResistorTemperature),
-		trip("trip.voltage", "Under- and over-voltage", both,
+		trip("trip.voltage", "Over- and under-voltage", tripFindings(OverVoltage, UnderVoltage),
 			"Move the threshold, not the bus; note the change for leave.settings.",
-			"Each by its threshold. Enter order and times seen; thresholds are put back and read back.",
+			"move the over-voltage threshold to the bus; then, with a capture of its own, the under-voltage threshold. Put both back and read them back.",
 			"Chopper {key:chopper.on} before over-voltage {key:bus.over_voltage_trip}; under-voltage {key:bus.under_voltage_trip}.",
 			"window.thresholds", signal.BusVoltage, signal.ChopperActive, signal.Fault, signal.FaultCode),
-		trip("trip.source", "Battery manager withdraws", both,
+		trip("trip.source", "Battery manager withdraws", tripFindings(SourceWithdrawn),
 			"At small power only.",
-			"The battery manager withdraws its permission. Enter the order seen.", "Power to zero before its contactor opens.",
-			"maker's data of the source", signal.SourceCurrent, signal.Running),
-		trip("trip.earth", "Earth fault alarm", []By{Observation},
+			"have the battery manager withdraw its permission.", "Power to zero before its contactor opens.",
+			"maker's data of the source", signal.SourceCurrent, signal.Running, signal.BypassClosed),
+		trip("trip.earth", "Earth fault alarm", tripFindings(EarthFault),
 			"Test resistor rated for the bus voltage.",
-			"Test resistor or test button on each pole. Enter value and pole.", "Alarm at the set value, the right pole.",
-			"IEC 61557-8"),
+			"test resistor or test button on each pole.", "Alarm at the set value, the right pole.",
+			"IEC 61557-8", signal.InsulationResistance, signal.Fault),
 		{ID: "trip.control-loss", Kind: Check, By: []By{Observation}, Title: "Control link and supply lost",
 			Caution:   "One at a time, at small power.",
 			Do:        "Take the control link away, then the control supply. Enter what was seen.",
 			Expect:    "Safe state; no bypass opening under current.",
 			Otherwise: "a loss that is not safe forbids operation", Basis: "circuit diagrams of the plant", MayOmit: true},
 	}
+}
+
+// asAttempt makes a point's capture count as a pre-charge attempt.
+func (p Point) asAttempt() Point {
+	p.Attempt = true
+	return p
 }
 
 func downPoints(n numbers) []Point {

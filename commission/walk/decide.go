@@ -77,8 +77,8 @@ func (s State) Decide(e Event, now time.Time) ([]record.Body, error) {
 		return s.decideSeal(e)
 	case LinkChanged:
 		return one(e.Link), nil
-	case ClockStepped:
-		return one(e.Clock), nil
+	case Return:
+		return s.decideReturn(now)
 	case Hastened:
 		if !s.IsRehearsal() {
 			return nil, refuse("a wait on a real plant is not shortened", "only a rehearsal has a simulated clock", "")
@@ -101,9 +101,29 @@ func (s State) decideEnter(e Enter) ([]record.Body, error) {
 	}
 	var records []record.Body
 	if s.stage > 0 && s.stage != e.Stage {
+		if absent := s.unwitnessed(s.stage); len(absent) > 0 {
+			records = append(records, record.Note{Text: "went on without a witness's signature: " + strings.Join(absent, ", ")})
+		}
 		records = append(records, record.Stage{Stage: stageName(s.stage), Event: record.Left, Invalidates: []int64{}})
 	}
 	return append(records, record.Stage{Stage: stageName(e.Stage), Event: record.Entered, Invalidates: []int64{}}), nil
+}
+
+// unwitnessed are a stage's witness points that have a result and that nobody but the technician has signed: the witness was
+// invited, and the walk went on.
+func (s State) unwitnessed(stage int) []string {
+	var ids []string
+	for _, p := range s.InStage(stage) {
+		st := s.Status(p.ID)
+		if p.Kind == Witness && st.Result != Open && !slices.ContainsFunc(st.Signed, s.isWitness) {
+			ids = append(ids, p.ID)
+		}
+	}
+	return ids
+}
+
+func (s State) isWitness(person string) bool {
+	return slices.ContainsFunc(s.people, func(p record.Person) bool { return p.ID == person && p.Role != "technician" })
 }
 
 var roles = []string{"technician", "witness", "surveyor", "owner"}
@@ -124,12 +144,15 @@ func (s State) decidePerson(e AddPerson) ([]record.Body, error) {
 
 func (s State) decideTake(e Take, now time.Time) ([]record.Body, error) {
 	r := e.Reading
-	p, ok := s.Point(r.Point)
-	if !ok {
-		return nil, refuse("point "+strconv.Quote(r.Point), "the walk has no such point", "")
+	p, err := s.reach(r.Point)
+	if err != nil {
+		return nil, err
 	}
-	if hold, held := s.HeldBy(p); held {
-		return nil, refuse(p.ID+" stays closed", "hold point "+hold.ID+" is not signed", "finish it first")
+	if s.Status(p.ID).Result != Open {
+		return nil, refuse(p.ID+" has its result", "a reading would stand under it unseen", "reopen the point first")
+	}
+	if !slices.Contains([]string{record.FromDevice, record.FromInstrument, record.Observed}, r.Source) {
+		return nil, refuse("the reading has no source", "it comes from the device, an instrument or was observed", "")
 	}
 	if r.Value != nil && (math.IsNaN(*r.Value) || math.IsInf(*r.Value, 0)) {
 		return nil, refuse("the reading is no number", "not a number or infinite", "leave it out and say why")
@@ -151,17 +174,29 @@ func (s State) decideTake(e Take, now time.Time) ([]record.Body, error) {
 	return one(r), nil
 }
 
+// reach gives a point that the holds before it leave open.
+func (s State) reach(id string) (Point, error) {
+	p, ok := s.Point(id)
+	if !ok {
+		return p, refuse("point "+strconv.Quote(id), "the walk has no such point", "")
+	}
+	if hold, held := s.HeldBy(p); held {
+		return p, refuse(p.ID+" stays closed", "hold point "+hold.ID+" is not signed", "finish it first")
+	}
+	return p, nil
+}
+
 // fitness refuses an instrument that is unknown, overdue or too small, unless a deviation at the point accepts it.
 func (s State) fitness(r record.Reading, now time.Time) error {
 	if r.Instrument == nil {
 		return refuse("the reading names no instrument", "no tick without a value and its instrument", "choose the instrument")
 	}
-	if s.Status(r.Point).Accepted != nil {
-		return nil
-	}
 	for _, i := range s.instruments {
 		if i.ID != *r.Instrument {
 			continue
+		}
+		if s.Status(r.Point).Granted != nil {
+			return nil
 		}
 		if i.Due == "" {
 			return refuse("instrument "+i.Name, "its calibration date is not known", "use another, or accept it by a deviation")
@@ -169,16 +204,29 @@ func (s State) fitness(r record.Reading, now time.Time) error {
 		if due, err := time.Parse(time.DateOnly, i.Due); err != nil || now.After(due.AddDate(0, 0, 1)) {
 			return refuse("instrument "+i.Name, "its calibration was due "+i.Due, "use another, or accept it by a deviation")
 		}
-		if v := s.rangeOf(i); r.Unit == "V" && r.Value != nil && v > 0 && math.Abs(*r.Value) > v {
-			return refuse("instrument "+i.Name, fmt.Sprintf("its range ends at %.0f V", v), "use another, or accept it by a deviation")
+		if v, least := s.rangeOf(i), s.rangeFor(r); r.Unit == "V" && v > 0 && v < least {
+			return refuse("instrument "+i.Name, fmt.Sprintf("its range ends at %.0f V, %.0f V are wanted here", v, least),
+				"use another, or accept it by a deviation")
 		}
 		return nil
 	}
 	return refuse("instrument "+*r.Instrument, "nobody entered it", "enter it with serial and calibration date")
 }
 
-// rangeOf is the greatest voltage an instrument is made for, by the site file; 0 where that does not say.
+// rangeFor is what an instrument must be made for: what it reads, and what the bus can reach before its over-voltage trip.
+func (s State) rangeFor(r record.Reading) float64 {
+	least := float64(s.site.Bus.OverVoltageTrip.Nominal)
+	if r.Value != nil {
+		least = math.Max(least, math.Abs(*r.Value))
+	}
+	return least
+}
+
+// rangeOf is the greatest voltage an instrument is made for, by its record or the site file; 0 where neither says.
 func (s State) rangeOf(i record.Instrument) float64 {
+	if i.MaxVoltage > 0 {
+		return i.MaxVoltage
+	}
 	for _, known := range s.site.Instruments {
 		if known.Serial == i.Serial && known.Name == i.Name {
 			return float64(known.MaxVoltage.Nominal)
@@ -188,17 +236,17 @@ func (s State) rangeOf(i record.Instrument) float64 {
 }
 
 func (s State) decideJudge(e Judge) ([]record.Body, error) {
-	p, ok := s.Point(e.Point)
-	if !ok {
-		return nil, refuse("point "+strconv.Quote(e.Point), "the walk has no such point", "")
+	p, err := s.reach(e.Point)
+	if err != nil {
+		return nil, err
 	}
-	if hold, held := s.HeldBy(p); held {
-		return nil, refuse(p.ID+" stays closed", "hold point "+hold.ID+" is not signed", "finish it first")
+	if s.Status(p.ID).Result != Open {
+		return nil, refuse(p.ID+" has its result", "a result is not written over", "reopen the point first")
 	}
 	switch e.Result {
 	case NotApplicable:
-		if !p.MayOmit || strings.TrimSpace(e.Note) == "" {
-			return nil, refuse(p.ID+" cannot be left out", "only an optional point may be, with a reason", "fail it with a deviation instead")
+		if err := s.omissible(p, e.Note); err != nil {
+			return nil, err
 		}
 	case Failed:
 	case Passed:
@@ -210,7 +258,7 @@ func (s State) decideJudge(e Judge) ([]record.Body, error) {
 	}
 	st := s.Status(p.ID)
 	records := one(record.Point{ID: p.ID, Result: string(e.Result), Readings: orEmpty(st.Readings), Note: e.Note})
-	if e.Result == Failed {
+	if e.Result == Failed || p.ID == "share.keyed" && s.settingsMoved(p) {
 		if reopened := s.invalidatedBy(p); len(reopened) > 0 {
 			records = append(records, record.Stage{Stage: stageName(p.Stage), Event: record.Reopened, Invalidates: reopened})
 		}
@@ -218,10 +266,34 @@ func (s State) decideJudge(e Judge) ([]record.Body, error) {
 	return records, nil
 }
 
+// omissible refuses to leave a point out that is not optional, or whose case has come about.
+func (s State) omissible(p Point, note string) error {
+	if !p.MayOmit || strings.TrimSpace(note) == "" {
+		return refuse(p.ID+" cannot be left out", "only an optional point may be, with a reason", "fail it with a deviation instead")
+	}
+	if found := s.BusBefore(); p.OmitWhen != "" && found != "" && found != p.OmitWhen {
+		return refuse(p.ID+" cannot be left out", "the bus was found "+string(found)+" at charge.bus-state", "")
+	}
+	return nil
+}
+
+// settingsMoved tells whether a setting read back at the point differs from the same setting as found: what was measured
+// with the old one is open again.
+func (s State) settingsMoved(p Point) bool {
+	taken := s.latest(p.ID)
+	for _, k := range s.settings {
+		r, ok := taken.from(record.FromDevice, k.Name)
+		if ok && k.When == "as-found" && r.Value != nil && *r.Value != k.Value {
+			return true
+		}
+	}
+	return false
+}
+
 func (s State) decideSign(e Sign) ([]record.Body, error) {
-	p, ok := s.Point(e.Point)
-	if !ok {
-		return nil, refuse("point "+strconv.Quote(e.Point), "the walk has no such point", "")
+	p, err := s.reach(e.Point)
+	if err != nil {
+		return nil, err
 	}
 	if !s.knowsPerson(e.Person) {
 		return nil, refuse("person "+strconv.Quote(e.Person), "nobody entered them", "enter name and role first")
@@ -309,22 +381,52 @@ func (s State) decideReopen(e Reopen) ([]record.Body, error) {
 	}, nil
 }
 
-// invalidatedBy are the results that rest on p and stand now.
+// invalidatedBy are the results that rest on p and stand now: those it reopens, and those that these reopen in turn.
 func (s State) invalidatedBy(p Point) []int64 {
+	reopened := map[string]bool{p.ID: true}
 	var seqs []int64
-	for _, q := range s.Points() {
-		if q.ID == p.ID || s.Status(q.ID).Result == Open {
-			continue
-		}
-		for _, pattern := range p.Reopens {
-			if matches(pattern, q.ID) {
-				seqs = append(seqs, s.Status(q.ID).Seq)
-				break
+	for queue := []Point{p}; len(queue) > 0; queue = queue[1:] {
+		for _, q := range s.Points() {
+			if reopened[q.ID] || s.Status(q.ID).Result == Open || !queue[0].reopens(q.ID) {
+				continue
 			}
+			reopened[q.ID] = true
+			seqs = append(seqs, s.Status(q.ID).Seq)
+			queue = append(queue, q)
 		}
 	}
 	slices.Sort(seqs)
 	return seqs
+}
+
+func (p Point) reopens(id string) bool {
+	return slices.ContainsFunc(p.Reopens, func(pattern string) bool { return matches(pattern, id) })
+}
+
+// decideReturn opens again what a night undoes. Once the source is on, the dead plant cannot be shown any more without
+// shutting down, so only the emergency stop is shown anew then.
+func (s State) decideReturn(now time.Time) ([]record.Body, error) {
+	if s.lastAt.IsZero() || s.lastAt.In(now.Location()).Format(time.DateOnly) == now.Format(time.DateOnly) {
+		return nil, nil
+	}
+	ids := []string{"safe.dead", "safe.stop"}
+	if s.Status("charge.source").Result != Open {
+		ids = ids[1:]
+	}
+	var invalid []int64
+	for _, id := range ids {
+		if st := s.Status(id); st.Result != Open {
+			invalid = append(invalid, st.Seq)
+		}
+	}
+	if len(invalid) == 0 {
+		return nil, nil
+	}
+	slices.Sort(invalid)
+	return []record.Body{
+		record.Stage{Stage: stageName(1), Event: record.Reopened, Invalidates: invalid},
+		record.Note{Text: "a new day: " + strings.Join(ids, " and ") + " again"},
+	}, nil
 }
 
 func matches(pattern, id string) bool {
@@ -336,9 +438,14 @@ func matches(pattern, id string) bool {
 
 func (s State) decideKeep(e Keep) ([]record.Body, error) {
 	w := e.Setting
-	if w.When == "as-left" && !slices.ContainsFunc(s.settings, func(k record.Setting) bool {
-		return k.Name == w.Name && k.When == "as-found"
-	}) {
+	found := func(k record.Setting) bool { return k.Name == w.Name && k.When == "as-found" }
+	switch {
+	case w.When != "as-found" && w.When != "as-left":
+		return nil, refuse(w.Name, "a setting is kept as-found or as-left", "")
+	case w.When == "as-found" && slices.ContainsFunc(s.settings, found):
+		return nil, refuse(w.Name+" as found", "it is recorded already", "record it as left")
+	}
+	if w.When == "as-left" && !slices.ContainsFunc(s.settings, found) {
 		return nil, refuse(w.Name+" as left", "it was never recorded as found", "record it as found first")
 	}
 	if math.IsNaN(w.Value) || math.IsInf(w.Value, 0) {
@@ -355,7 +462,10 @@ func (s State) decideArm(e Arm, now time.Time) ([]record.Body, error) {
 	if hold, held := s.HeldBy(p); held && !e.Observing {
 		return nil, refuse("no capture at "+p.ID, "hold point "+hold.ID+" is not signed", "finish it first")
 	}
-	if p.Capture != capture.Precharge {
+	if s.Status(p.ID).Result != Open && !e.Observing {
+		return nil, refuse("no capture at "+p.ID, "the point has its result", "reopen it first")
+	}
+	if p.Capture != capture.Precharge && !p.Attempt {
 		return nil, nil
 	}
 	if e.Observing {
@@ -429,15 +539,12 @@ func (s State) CauseIsMissing() bool {
 	if len(s.attempts) == 0 || s.attempts[len(s.attempts)-1].Cause != "" {
 		return false
 	}
-	if !s.attemptRan {
-		return true
-	}
-	for _, f := range append(s.Measured("measured.precharge"), s.Measured("measured.closing")...) {
-		if f.Verdict == finding.Fail {
+	for _, verdict := range s.attempted {
+		if verdict == finding.Fail {
 			return true
 		}
 	}
-	return false
+	return len(s.attempted) == 0 // broken off
 }
 
 func (s State) decideCause(e EnterCause) ([]record.Body, error) {
@@ -459,12 +566,9 @@ func (s State) decideChange(e ChangeSite) ([]record.Body, error) {
 	replaces := s.siteHash
 	records := one(record.File{Role: "site", Name: e.Name, SHA256: hashOf(e.Text), Text: e.Text, Replaces: &replaces, Why: e.Why})
 	var invalid []int64
-	for _, p := range s.Points() {
-		for _, pattern := range siteRests {
-			if st := s.Status(p.ID); st.Result != Open && matches(pattern, p.ID) {
-				invalid = append(invalid, st.Seq)
-				break
-			}
+	for _, id := range siteRests {
+		if st := s.Status(id); st.Result != Open {
+			invalid = append(invalid, st.Seq)
 		}
 	}
 	if len(invalid) > 0 {

@@ -70,10 +70,12 @@ type (
 		Readings []record.Reading
 		Findings []finding.Finding
 	}
-	// LinkChanged, ClockStepped and Hastened are facts that only need writing down.
-	LinkChanged  struct{ Link record.Link }
-	ClockStepped struct{ Clock record.Clock }
-	Hastened     struct{ Hastened record.Hastened }
+	// LinkChanged and Hastened are facts that only need writing down. A clock that was set is written down by the log itself.
+	LinkChanged struct{ Link record.Link }
+	Hastened    struct{ Hastened record.Hastened }
+	// Return says that somebody is back at a walk that was left: after a night, absence of voltage and the emergency stop are
+	// proved anew.
+	Return struct{}
 )
 
 func (Enter) isEvent()         {}
@@ -96,7 +98,7 @@ func (ChangeSite) isEvent()    {}
 func (Seal) isEvent()          {}
 func (Captured) isEvent()      {}
 func (LinkChanged) isEvent()   {}
-func (ClockStepped) isEvent()  {}
+func (Return) isEvent()        {}
 func (Hastened) isEvent()      {}
 
 // Result is what a point came to.

@@ -53,13 +53,24 @@ type Point struct {
 	Signals  []signal.Name // live readings that are shown and taken here
 	Hand     []HandReading // readings to enter from an instrument
 	Accept   []Criterion   // numeric acceptance; every reading named here is judged
-	Findings []string      // findings whose verdict binds the point
+	Findings []string      // findings whose verdict binds the point; "precharge." is a family, "measured.trip:time-out" one subject
 	Capture  capture.Kind  // the capture that is armed here; empty where none is
 	Unproved bool          // may be judged by a signal that is not proved yet, because nothing else can be seen so early
 	Proves   []signal.Name // signals proved here by comparing device and instrument
 	Reopens  []string      // points that are open again when this one is reopened or failed; "x.*" is a whole stage's family
 	MayOmit  bool          // may be not applicable, with a reason
+	OmitWhen BusState      // and then only where the bus was so before the charge; empty: any
+	Attempt  bool          // its capture counts as a pre-charge attempt
 }
+
+// BusState is what the bus was found to be before the charge.
+type BusState string
+
+// The states of the bus before the charge.
+const (
+	BusDead BusState = "dead"
+	BusLive BusState = "live" // held above the source by another infeed
+)
 
 // HandReading is a value to be read from a hand instrument.
 type HandReading struct {

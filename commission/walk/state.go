@@ -3,6 +3,7 @@ package walk
 import (
 	"encoding/json"
 	"maps"
+	"math"
 	"slices"
 	"strings"
 	"time"
@@ -37,13 +38,15 @@ type State struct {
 	readAt     map[int64]time.Time
 	proved     map[signal.Name]int64
 	captures   []string
+	captured   map[capture.Kind][]record.Capture // parts of the latest of each kind
 	attempts   []record.Attempt
-	attemptRan bool // the last attempt has its finding
+	attempted  map[string]finding.Verdict // what the last attempt's findings came to
 	settings   []record.Setting
 	punches    []record.Punch
 	deviations []record.Deviation
 
 	nextSeq int64
+	lastAt  time.Time // of the last record
 	seal    *record.Seal
 }
 
@@ -53,15 +56,16 @@ type Status struct {
 	Seq      int64   // of the record that gave the result
 	Readings []int64 // taken since the point was opened
 	Note     string
-	Signed   []string // ids of the persons who signed
-	Unsigned string   // why a sign-off has no signature
-	Accepted *record.Deviation
-	Reopened int // how often
+	Signed   []string          // ids of the persons who signed
+	Unsigned string            // why a sign-off has no signature
+	Accepted *record.Deviation // of the failed result
+	Granted  *record.Deviation // entered before there was a result: an instrument that is not fit may be used
+	Reopened int               // how often
 }
 
 // With takes one record that is on disk into the state.
 func (s State) With(line Line) State {
-	s.nextSeq = line.Seq + 1
+	s.nextSeq, s.lastAt = line.Seq+1, line.At
 	switch b := line.Body.(type) {
 	case record.Opened:
 		s.opened = b
@@ -74,22 +78,26 @@ func (s State) With(line Line) State {
 	case record.Reading:
 		s = s.withReading(line, b)
 	case record.Capture:
-		if b.Part == b.Parts {
-			s.captures = append(slices.Clip(s.captures), b.ID)
-		}
+		s = s.withCapture(b)
 	case record.Finding:
 		s = s.withFinding(b)
 	case record.Stage:
 		s = s.withStage(b)
 	case record.Point:
 		s = s.withStatus(b.ID, func(st *Status) {
-			st.Result, st.Seq, st.Note = Result(b.Result), line.Seq, b.Note
+			st.Result, st.Seq, st.Note, st.Accepted = Result(b.Result), line.Seq, b.Note, nil
 		})
 	case record.Attempt:
 		s = s.withAttempt(b)
 	case record.Deviation:
 		s.deviations = append(slices.Clip(s.deviations), b)
-		s = s.withStatus(b.Point, func(st *Status) { st.Accepted = &b })
+		s = s.withStatus(b.Point, func(st *Status) {
+			if st.Result == Failed {
+				st.Accepted = &b
+				return
+			}
+			st.Granted = &b
+		})
 	case record.Punch:
 		s = s.withPunch(b)
 	case record.Setting:
@@ -134,9 +142,34 @@ func (s State) withFinding(r record.Finding) State {
 	if s.measured == nil {
 		s.measured = map[string]finding.Finding{}
 	}
-	s.measured[f.ID+"\x00"+f.Subject] = f
-	if f.ID == "measured.precharge" {
-		s.attemptRan = true
+	s.measured[f.ID+":"+f.Subject] = f
+	switch {
+	case names("measured.precharge", f), names("measured.closing", f), names("measured.trip:"+TimeOut, f):
+		s.attempted = maps.Clone(s.attempted)
+		if s.attempted == nil {
+			s.attempted = map[string]finding.Verdict{}
+		}
+		s.attempted[f.ID] = f.Verdict
+	case f.ID == "measured.sensor" && f.Verdict == finding.Fail:
+		s.proved = maps.Clone(s.proved)
+		delete(s.proved, signal.Name(f.Subject))
+	}
+	return s
+}
+
+// withCapture keeps the parts of the latest capture of each kind, so that it can be judged anew when the site file changes.
+func (s State) withCapture(c record.Capture) State {
+	s.captured = maps.Clone(s.captured)
+	if s.captured == nil {
+		s.captured = map[capture.Kind][]record.Capture{}
+	}
+	kind := capture.Kind(c.What)
+	if c.Part == 1 {
+		s.captured[kind] = nil
+	}
+	s.captured[kind] = append(slices.Clip(s.captured[kind]), c)
+	if c.Part == c.Parts {
+		s.captures = append(slices.Clip(s.captures), c.ID)
 	}
 	return s
 }
@@ -158,6 +191,7 @@ func (s State) withProof(seq int64, r record.Reading) State {
 	if !name.IsKnown() || r.Value == nil {
 		return s
 	}
+	s = s.withDerivedProof(seq, r)
 	for _, other := range s.Status(r.Point).Readings {
 		o := s.readings[other]
 		if o.Signal != r.Signal || o.Value == nil || (o.Source == record.FromDevice) == (r.Source == record.FromDevice) {
@@ -168,13 +202,36 @@ func (s State) withProof(seq int64, r record.Reading) State {
 			device, known = r, o
 		}
 		if provesEachOther(name, *device.Value, *known.Value, s.proofTolerance(name, known)) {
-			s.proved = maps.Clone(s.proved)
-			if s.proved == nil {
-				s.proved = map[signal.Name]int64{}
-			}
-			s.proved[name] = seq
+			s = s.withProved(name, seq)
 		}
 	}
+	return s
+}
+
+// withDerivedProof marks the power as proved when it equals the product of bus voltage and bus current, both proved, read at
+// the same point: within 5 % (common practice for readings that are not taken at one instant).
+func (s State) withDerivedProof(seq int64, r record.Reading) State {
+	taken := s.latest(r.Point)
+	power, ok := taken.from(record.FromDevice, string(signal.Power))
+	u, hasU := taken.from(record.FromDevice, string(signal.BusVoltage))
+	i, hasI := taken.from(record.FromDevice, string(signal.BusCurrent))
+	if !ok || !hasU || !hasI || power.Value == nil || u.Value == nil || i.Value == nil ||
+		!s.IsProved(signal.BusVoltage) || !s.IsProved(signal.BusCurrent) {
+		return s
+	}
+	product := *u.Value * *i.Value
+	if product == 0 || math.Abs(*power.Value-product) > 0.05*math.Abs(product) {
+		return s
+	}
+	return s.withProved(signal.Power, seq)
+}
+
+func (s State) withProved(name signal.Name, seq int64) State {
+	s.proved = maps.Clone(s.proved)
+	if s.proved == nil {
+		s.proved = map[signal.Name]int64{}
+	}
+	s.proved[name] = seq
 	return s
 }
 
@@ -186,10 +243,30 @@ func (s State) withStage(b record.Stage) State {
 	for _, seq := range b.Invalidates {
 		for id, st := range s.status {
 			if st.Seq == seq && st.Result != Open {
-				s = s.withStatus(id, func(st *Status) { *st = Status{Reopened: st.Reopened + 1} })
+				s = s.withReopened(id)
 			}
 		}
 	}
+	return s
+}
+
+// withReopened opens a point again: what was read, proved and concluded at it counts no more.
+func (s State) withReopened(id string) State {
+	s = s.withStatus(id, func(st *Status) { *st = Status{Reopened: st.Reopened + 1} })
+	s.proved = maps.Clone(s.proved)
+	maps.DeleteFunc(s.proved, func(_ signal.Name, seq int64) bool { return s.readings[seq].Point == id })
+	p, ok := s.Point(id)
+	if !ok {
+		return s
+	}
+	if p.Capture != "" {
+		s.captured = maps.Clone(s.captured)
+		delete(s.captured, p.Capture)
+	}
+	s.measured = maps.Clone(s.measured)
+	maps.DeleteFunc(s.measured, func(_ string, f finding.Finding) bool {
+		return slices.ContainsFunc(p.Findings, func(id string) bool { return names(id, f) })
+	})
 	return s
 }
 
@@ -200,13 +277,16 @@ func (s State) withAttempt(a record.Attempt) State {
 		return s
 	}
 	s.attempts = append(s.attempts, a)
-	s.attemptRan = false
+	s.attempted = nil
 	s.measured = maps.Clone(s.measured)
 	maps.DeleteFunc(s.measured, func(_ string, f finding.Finding) bool {
-		return f.ID == "measured.precharge" || f.ID == "measured.closing"
+		return s.stage <= chargeStage && (f.ID == "measured.precharge" || f.ID == "measured.closing")
 	})
 	return s
 }
+
+// chargeStage is the stage of the pre-charge. A time-out provoked in a later stage leaves the charge's own findings standing.
+const chargeStage = 5
 
 func (s State) withPunch(p record.Punch) State {
 	s.punches = slices.Clone(s.punches)
@@ -301,16 +381,25 @@ func (s State) Point(id string) (Point, bool) {
 	return Point{}, false
 }
 
-// Measured gives the latest measured finding of an id.
+// Measured gives the latest measured findings of an id, or the one of "id:subject"; all of them for an empty id.
 func (s State) Measured(id string) []finding.Finding {
 	var found []finding.Finding
 	for _, key := range slices.Sorted(maps.Keys(s.measured)) {
-		if f := s.measured[key]; f.ID == id || id == "" {
+		if f := s.measured[key]; id == "" || names(id, f) {
 			found = append(found, f)
 		}
 	}
 	return found
 }
+
+// names tells whether a point's "id" or "id:subject" means the finding.
+func names(id string, f finding.Finding) bool {
+	id, subject, one := strings.Cut(id, ":")
+	return f.ID == id && (!one || f.Subject == subject)
+}
+
+// Captured gives the parts of the latest capture of a kind; none where its point was opened again.
+func (s State) Captured(k capture.Kind) []record.Capture { return s.captured[k] }
 
 // Finding gives a desk or measured finding by id; the first where an id stands several times.
 func (s State) Finding(id string) (finding.Finding, bool) {
@@ -323,6 +412,23 @@ func (s State) Finding(id string) (finding.Finding, bool) {
 		return m[0], true
 	}
 	return finding.Finding{}, false
+}
+
+// BusBefore is what the bus was found to be before the charge, by the readings at charge.bus-state and charge.source: dead
+// below the touch-safe voltage, live where it stood above the source. Empty while unknown, or still charged in between.
+func (s State) BusBefore() BusState {
+	t := s.site.Bus.TouchSafe
+	bus, hasBus := s.latest("charge.bus-state").of(string(signal.BusVoltage))
+	source, hasSource := s.latest("charge.source").of(string(signal.SourceVoltage))
+	switch {
+	case !hasBus || bus.Value == nil:
+		return ""
+	case t != nil && t.Voltage.IsGiven() && *bus.Value < float64(t.Voltage.Nominal):
+		return BusDead
+	case hasSource && source.Value != nil && *bus.Value > *source.Value:
+		return BusLive
+	}
+	return ""
 }
 
 // IsDone tells whether a point needs nobody any more: it has a result that stands, and its signature where it is a hold.

@@ -1,0 +1,24 @@
+package walk
+
+// The trips and interlocks that stage 10 provokes: the subjects of measured.trip.
+const (
+	EmergencyStop   = "emergency-stop"
+	TimeOut         = "time-out"
+	BypassLost      = "bypass-lost"
+	OverVoltage     = "over-voltage"
+	UnderVoltage    = "under-voltage"
+	SourceWithdrawn = "source-withdrawn"
+	EarthFault      = "earth-fault"
+)
+
+// ResponseTime is what is read by hand at a trip whose signals are not in the map: from its provocation to the response.
+const ResponseTime = "response time"
+
+// tripFindings are what binds a point of stage 10.
+func tripFindings(subjects ...string) []string {
+	var ids []string
+	for _, subject := range subjects {
+		ids = append(ids, "measured.trip:"+subject)
+	}
+	return ids
+}
