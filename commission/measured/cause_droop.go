@@ -38,7 +38,7 @@ func (l *line) slopes() []finding.Cause {
 	switch {
 	case off == 0:
 		return nil
-	case l.slope.value < -2*l.slope.expanded()/2 && ratio < -0.3:
+	case l.slope.value < -l.slope.expanded() && ratio < -0.3:
 		return []finding.Cause{because("current-reversed", 0.9, append(evidence, "the line rises with the current")...)}
 	case math.Abs(ratio) < 0.15:
 		return []finding.Cause{because("droop-off", 0.93, evidence...), because("droop-mismatch", 0.3, evidence...)}
@@ -97,7 +97,7 @@ func (l *line) hunting() []finding.Cause {
 		swing = math.Min(swing, float64(st.Swing))
 	}
 	allowed := float64(l.site.Bus.Ripple.Nominal)/2 + 0.002*float64(l.site.Bus.Nominal.Nominal)
-	if len(l.on)+len(l.off) < 1 || swing < allowed {
+	if len(l.on)+len(l.off) == 0 || swing < allowed {
 		return nil
 	}
 	return []finding.Cause{because("bus-hunts", 0.9, fmt.Sprintf("the bus swings by ± %s at every load, ± %s allowed", number(swing, "V"), number(allowed, "V")))}

@@ -356,11 +356,8 @@ func (f *fall) shelfCauses() []finding.Cause {
 			return []finding.Cause{because("bypass-welded", 0.92, append(evidence, "the bypass reports closed")...), because("precharge-welded", 0.4, evidence...)}
 		}
 		drop := f.settledDrop(level).nominal
-		if i := traceOf(f.capture, signal.SourceCurrent); drop > 2*(f.busError+f.sourceError) {
-			if math.Abs(level-at-drop) < 0.5*drop {
-				return []finding.Cause{because("precharge-welded", 0.85, evidence...), because("bypass-welded", 0.5, evidence...)}
-			}
-			_ = i
+		if drop > 2*(f.busError+f.sourceError) && math.Abs(level-at-drop) < 0.5*drop {
+			return []finding.Cause{because("precharge-welded", 0.85, evidence...), because("bypass-welded", 0.5, evidence...)}
 		}
 		return together(0.8, "resistance across each open contact; the difference across the bypass under the bleeder's current", evidence, "precharge-welded", "bypass-welded")
 	case at > 0.85*f.first:

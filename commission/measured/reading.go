@@ -50,7 +50,7 @@ func codesRead(_ paper, c capture.Capture) []finding.Cause {
 				n, code = n+1, raw[0]
 			}
 		}
-		if all >= 5 && n > all*9/10 && (code != 0x7FFF || constant(c, i)) && constant(c, i) {
+		if all >= 5 && n > all*9/10 && constant(c, i) {
 			return []finding.Cause{because("missing-code-read", 0.93, fmt.Sprintf("%s is the word %04X in %d of %d samples: %s", ch.Name, code, n, all, number(c.Samples[0].Values[i].V, ch.Unit)))}
 		}
 	}
@@ -73,7 +73,7 @@ func constant(c capture.Capture, i int) bool {
 
 // unsignedRead: a signal that lies about zero leaps to the end of its word's range.
 func unsignedRead(_ paper, c capture.Capture) []finding.Cause {
-	for i, ch := range c.Channels {
+	for _, ch := range c.Channels {
 		if ch.Unit != "A" && ch.Unit != "W" && ch.Unit != "°C" {
 			continue
 		}
@@ -103,7 +103,6 @@ func unsignedRead(_ paper, c capture.Capture) []finding.Cause {
 				sane++
 			}
 		}
-		_ = i
 		if all >= 5 && n >= 2 && n+sane > all*95/100 && !constantValues(v) {
 			return []finding.Cause{because("sign-unsigned", 0.92, fmt.Sprintf("%s leaps to %s in %d of %d samples, as a small negative value read without its sign", ch.Name, number(example, ch.Unit), n, all))}
 		}
