@@ -1,3 +1,7 @@
+//go:build !race
+
+// These tests compute some ten plant minutes in one goroutine: nothing for the race detector, which would take minutes.
+
 package simulator
 
 import (
