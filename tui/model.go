@@ -10,6 +10,7 @@ import (
 	"chargehand/commission"
 	"chargehand/commission/desk"
 	"chargehand/commission/site"
+	"chargehand/commission/walk"
 	"chargehand/tui/deskview"
 	"chargehand/tui/linkview"
 	"chargehand/tui/start"
@@ -251,9 +252,14 @@ func (m Model) leave(quit bool) (tea.Model, tea.Cmd) {
 	if m.session == nil {
 		return m, tea.Quit
 	}
-	session := *m.session
+	session, capturing := *m.session, m.walk.Snapshot().Capture != nil
 	m.session, m.shown, m.only = nil, onStart, quit
-	return m, func() tea.Msg { return closedMsg{session.Close()} }
+	return m, func() tea.Msg {
+		if capturing { // what it has seen is kept, whatever ends the program; a failure shows in the log that is gone on with
+			_, _ = session.Run.Submit(context.Background(), walk.StopCapture{})
+		}
+		return closedMsg{session.Close()}
+	}
 }
 
 // LeastWidth and LeastHeight are the smallest terminal that screens are drawn in.

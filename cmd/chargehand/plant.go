@@ -4,9 +4,12 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"strings"
 
 	"chargehand/commission/signal"
 	"chargehand/commission/site"
+	"chargehand/commission/unattended"
+	"chargehand/commission/walk"
 	"chargehand/protocol/simulator"
 )
 
@@ -25,6 +28,40 @@ func (p simulatedPlant) Do(ctx context.Context, act string) error {
 	return p.simulator.Do(ctx, parsed)
 }
 
+// restore puts the plant where a log that is gone on with has left it: in the state of the stage, and with what was operated
+// at that stage's points since.
+func (p simulatedPlant) restore(ctx context.Context, state walk.State) error {
+	next, open := state.NextOpen()
+	if !open || next.Stage == 1 {
+		return nil
+	}
+	charged, _ := state.Point("charge.rise")
+	stage := next.Stage
+	if stage == charged.Stage && state.IsDone(charged) {
+		stage++ // the bus stands charged behind the closed bypass
+	}
+	if err := p.simulator.Restore(stage); err != nil {
+		return err
+	}
+	if stage != next.Stage {
+		return nil
+	}
+	for _, done := range state.InStage(stage) {
+		if done.ID == next.ID {
+			break
+		}
+		if done.Capture != "" || state.Status(done.ID).Result != walk.Passed {
+			continue
+		}
+		for _, act := range unattended.Acts(done.ID) {
+			if err := p.Do(ctx, act); err != nil {
+				return fmt.Errorf("put the simulated plant where %s left it: %w", done.ID, err)
+			}
+		}
+	}
+	return nil
+}
+
 // spots are where the walk's readings are measured on the simulated plant.
 var spots = map[string]string{
 	string(signal.SourceVoltage):       "source",
@@ -35,12 +72,16 @@ var spots = map[string]string{
 	string(signal.ResistorTemperature): "resistor-temperature",
 	"difference across the bypass":     "across-bypass",
 	"pre-charge resistance":            "precharge-resistance",
+	"bleeder resistance":               "bleeder-resistance",
 }
 
 // Measure reads a hand instrument, or the device's own display, on the simulated plant.
 func (p simulatedPlant) Measure(_ context.Context, what string) (float64, string, error) {
 	if spot, ok := spots[what]; ok {
 		return p.simulator.Measure(spot)
+	}
+	if phase, ok := strings.CutPrefix(what, "choke "); ok {
+		return p.simulator.Measure("choke-" + phase)
 	}
 	switch what {
 	case "highest voltage found":

@@ -319,12 +319,10 @@ func (s *session) simulate(ctx context.Context, o walkOptions, state walk.State)
 		return "", err
 	}
 	s.closer = append(s.closer, simulated.Close)
-	if next, open := state.NextOpen(); open && next.Stage > 1 {
-		if err := simulated.Restore(next.Stage); err != nil {
-			return "", err
-		}
-	}
 	s.operator = &simulatedPlant{simulated, s.papers.site}
+	if err := s.operator.restore(ctx, state); err != nil {
+		return "", err
+	}
 	return simulated.Serve(ctx, "127.0.0.1:0")
 }
 

@@ -122,8 +122,8 @@ func (f Field) lines(t theme.Theme, focused bool, label, width int) []string {
 	}
 	room := max(width-2-label-1, 0)
 	input := min(max(room/3, leastInput), mostInput, room)
-	if f.Unit == "" && f.Check == nil && !f.IsChoice() {
-		input = room // a note takes the whole line
+	if f.Unit == "" && !f.IsChoice() {
+		input = room // text takes the whole line
 	}
 	line := t.Paint(role, mark+t.Fit(theme.Clean(f.Label), label)) + " " + f.input(t, focused, input)
 	used := 2 + label + 1 + input

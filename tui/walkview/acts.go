@@ -83,6 +83,8 @@ func (m Model) nextAct() (act, wait string) {
 		if p.Capture != "" {
 			return "", ""
 		}
+	case p.Capture == capture.Discharge && c.Phase == commission.Running:
+		return "", "" // down.order has switched everything off
 	case act == readMeterAct && c != nil:
 		if left := m.settlesIn(*c); left > 0 {
 			return act, fmt.Sprintf("settles for %.0f s", math.Ceil(left))

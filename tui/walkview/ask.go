@@ -195,16 +195,18 @@ func (m Model) note(p walk.Point, values map[string]float64, by record.Instrumen
 func askInstrument() *prompt {
 	return asking("Which instrument? Its date decides whether it counts", func(m Model, f form.Form) (Model, tea.Cmd) {
 		plus, _ := parse(f.Value("plus"), "V")
+		most, _ := parse(f.Value("range"), "V")
 		return m.submit(f.Value("name")+" entered", walk.AddInstrument{Record: record.Instrument{Name: f.Value("name"), Serial: f.Value("serial"),
 			Calibrated: f.Value("calibrated"), Due: f.Value("due"),
-			Accuracy: record.InstrumentAccuracy{OfReading: percent(f.Value("accuracy")), Plus: plus, Unit: "V"}}})
+			Accuracy: record.InstrumentAccuracy{OfReading: percent(f.Value("accuracy")), Plus: plus, Unit: "V"}, MaxVoltage: most}})
 	},
 		form.Input("name", "name", "", filled("what it is, such as hand multimeter")),
 		form.Input("serial", "serial", "", filled("its serial number")),
 		form.Input("calibrated", "calibrated", "", dated),
 		form.Input("due", "due", "", dated),
 		form.Input("accuracy", "of reading", "%", valued("%", nil)),
-		form.Input("plus", "plus", "V", valued("V", nil)))
+		form.Input("plus", "plus", "V", valued("V", nil)),
+		form.Input("range", "made for", "V", valued("V", nil)))
 }
 
 func percent(text string) float64 {

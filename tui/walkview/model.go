@@ -258,6 +258,9 @@ func (m Model) pressed(msg tea.KeyMsg) (Model, tea.Cmd) {
 			m.far, m.cursor = false, nil
 			return m, nil
 		}
+		if c := m.snapshot.Capture; c != nil {
+			return m.refuse("a capture is " + string(c.Phase) + " at " + c.Point + ": s ends it and keeps what it has"), nil
+		}
 		return m, func() tea.Msg { return Left{} }
 	case key.Matches(msg, k.Stop):
 		return m.submit("capture stopped", walk.StopCapture{})

@@ -75,6 +75,8 @@ func whileCapturing(c commission.Progress) action {
 		return action{label: "waits for the plant", reason: "armed: it begins by itself when the plant acts; s stops it"}
 	case c.Kind == capture.Droop:
 		return action{label: "counts load steps", reason: "s ends the capture when the steps are done"}
+	case c.Kind == capture.Step:
+		return action{label: "watches the trip", reason: "s ends the capture when the plant has answered"}
 	}
 	return action{label: "capture runs", reason: "it ends by itself; s stops it"}
 }
@@ -123,6 +125,8 @@ func nextReading(s commission.Snapshot, p walk.Point) action {
 	switch assessed := state.Assess(p); {
 	case assessed.Result == walk.Failed:
 		return action{step: stepFail, point: p.ID, label: "not met: fail it (r read again)", reason: because(assessed)}
+	case assessed.Result == walk.Open && p.Capture == capture.Step && !captured(state, p):
+		return action{step: stepArm, point: p.ID, label: "arm the capture"}
 	case assessed.Result == walk.Open && comparesFirst(assessed):
 		return action{step: stepPass, point: p.ID, label: "compare and pass"}
 	case assessed.Result == walk.Open && p.MayOmit:
@@ -162,7 +166,7 @@ func nextArm(s commission.Snapshot, p walk.Point) action {
 	if s.Capture != nil {
 		return action{label: "another capture is " + string(s.Capture.Phase)}
 	}
-	if p.Capture == capture.Precharge {
+	if p.Attempt {
 		if s.State.CauseIsMissing() {
 			return action{step: stepCause, point: p.ID, label: "enter the last attempt's cause"}
 		}

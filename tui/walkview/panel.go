@@ -2,6 +2,7 @@ package walkview
 
 import (
 	"fmt"
+	"math"
 	"slices"
 	"strings"
 
@@ -9,6 +10,7 @@ import (
 	"chargehand/commission/finding"
 	"chargehand/commission/quantity"
 	"chargehand/commission/record"
+	"chargehand/commission/signal"
 	"chargehand/commission/walk"
 	"chargehand/tui/far"
 	"chargehand/tui/theme"
@@ -106,6 +108,7 @@ func (m Model) text(p walk.Point, width int) []string {
 	rows = append(rows, m.actRows(width)...)
 	rows = append(rows, m.labelled("do", p.Do, width)...)
 	rows = append(rows, m.labelled("wanted", p.Expect, width)...)
+	rows = append(rows, m.punchRows(p, width)...)
 	rows = append(rows, m.liveRows(p, width)...)
 	rows = append(rows, m.takenRows(p, width)...)
 	rows = append(rows, m.findingRows(p, width)...)
@@ -205,7 +208,11 @@ func (m Model) liveRows(p walk.Point, width int) []string {
 			continue
 		}
 		shown := m.theme.Show(m.snapshot.Reading(name), unproved[name], m.snapshot.Now, m.maxAge())
-		parts = append(parts, string(name)+" "+m.theme.Paint(shown.Role, shown.String()))
+		text := shown.String()
+		if r := m.snapshot.Reading(name); name.IsState() && shown.HasValue() {
+			text = valueWords(record.Reading{Signal: string(name), Value: &r.Value})
+		}
+		parts = append(parts, string(name)+" "+m.theme.Paint(shown.Role, text))
 	}
 	return flow("now", parts, width, m.theme)
 }
@@ -259,7 +266,7 @@ func (m Model) takenRows(p walk.Point, width int) []string {
 func readingWords(r record.Reading) string {
 	words := r.Signal
 	if r.Value != nil {
-		words += " " + quantity.Engineering(*r.Value, r.Unit, 4)
+		words += " " + valueWords(r)
 	}
 	if r.Text != "" {
 		words += " " + r.Text
@@ -269,6 +276,38 @@ func readingWords(r record.Reading) string {
 		words += " " + *r.Instrument
 	}
 	return words
+}
+
+// valueWords is a reading's value; a contact is open or closed, a count has no decimals.
+func valueWords(r record.Reading) string {
+	name, v := signal.Name(r.Signal), *r.Value
+	switch {
+	case name.IsState() && strings.HasSuffix(r.Signal, "-closed"):
+		return map[bool]string{true: "closed", false: "open"}[v != 0]
+	case name.IsState():
+		return map[bool]string{true: "yes", false: "no"}[v != 0]
+	case (r.Unit == "" || r.Unit == "1") && v == math.Trunc(v):
+		return fmt.Sprintf("%.0f", v)
+	}
+	return quantity.Engineering(v, r.Unit, 4)
+}
+
+// punchRows are the open punch items and accepted deviations, at the points where they are read.
+func (m Model) punchRows(p walk.Point, width int) []string {
+	if p.ID != "leave.punch" && p.ID != "leave.handover" {
+		return nil
+	}
+	var rows []string
+	for _, k := range m.snapshot.State.Punches() {
+		rows = append(rows, m.labelled(k.ID+" "+k.Severity, fmt.Sprintf("%s: %s, %s, due %s", k.Event, k.What, k.Owner, k.Due), width)...)
+	}
+	for _, d := range m.snapshot.State.Deviations() {
+		rows = append(rows, m.labelled("accepted", d.Point+": "+d.Reason+", by "+d.AcceptedBy, width)...)
+	}
+	if rows == nil {
+		return m.labelled("items", "no punch item, no deviation", width)
+	}
+	return rows
 }
 
 // findingRows are the measured findings that bind the point.

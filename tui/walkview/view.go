@@ -17,7 +17,9 @@ import (
 // stagesWidth is the column of the stages; in a wide terminal it has room for their titles in full.
 const (
 	stagesNarrow = 22
+	stagesMiddle = 25
 	stagesWide   = 36
+	middle       = 100
 	wide         = 120
 )
 
@@ -143,8 +145,11 @@ func (m Model) unproved() map[signal.Name]bool {
 }
 
 func (m Model) stagesWidth() int {
-	if m.width >= wide {
+	switch {
+	case m.width >= wide:
 		return stagesWide
+	case m.width >= middle:
+		return stagesMiddle
 	}
 	return stagesNarrow
 }
@@ -355,13 +360,23 @@ func (m Model) explanation() []string {
 }
 
 func (m Model) ending() []string {
-	rows := []string{m.rule(), "", " The log is sealed. Its verdict: " + m.theme.Verdict(m.snapshot.State.Verdict()), ""}
+	rows := []string{m.rule(), "", "  " + m.theme.Paint(theme.Title, "The log is sealed.") + "  Verdict: " + m.theme.Verdict(m.snapshot.State.Verdict()), ""}
 	for _, l := range m.done {
-		for _, w := range wrap(theme.Clean(l), m.width-4) {
-			rows = append(rows, "  "+w)
+		label, text, ok := strings.Cut(theme.Clean(l), "  ")
+		if !ok {
+			label, text = "", label
+		}
+		for i, part := range wrap(text, m.width-14) {
+			rows = append(rows, "  "+m.theme.Paint(theme.Faint, m.theme.Fit(map[bool]string{true: label}[i == 0], 11))+part)
 		}
 	}
-	return append(rows, "", "  Log  "+theme.Clean(m.session.Log))
+	rows = append(rows, "")
+	const onward = "Nothing can be added to it any more. `chargehand verify` on the log shows that it is unchanged, and so does stock " +
+		"ssh-keygen; `chargehand sign` countersigns it; `chargehand report` writes its report again."
+	for _, l := range wrap(onward, m.width-4) {
+		rows = append(rows, "  "+m.theme.Paint(theme.Faint, l))
+	}
+	return rows
 }
 
 func at(rows []string, i int) string {
