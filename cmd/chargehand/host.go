@@ -19,6 +19,7 @@ import (
 	"chargehand/commission/signal"
 	"chargehand/commission/site"
 	"chargehand/commission/unattended"
+	"chargehand/commission/walk"
 	"chargehand/tui/start"
 	"chargehand/tui/walkview"
 )
@@ -128,7 +129,26 @@ func (h *host) Open(_ context.Context, chosen start.Entry) (walkview.Session, er
 		return walkview.Session{}, err
 	}
 	h.app.remember(chosen.Site)
+	if err := s.rehearseOn(h.ctx); err != nil {
+		return walkview.Session{}, errors.Join(err, s.close())
+	}
 	return h.session(s, notes), nil
+}
+
+// rehearseOn enters a rehearsal's technician anew where the log is gone on with by another throw-away key.
+func (s *session) rehearseOn(ctx context.Context) error {
+	if s.operator == nil || s.signer == nil || len(s.begun.People()) == 0 {
+		return nil
+	}
+	key := s.signer.Fingerprint()
+	first := s.begun.People()[0]
+	for _, p := range s.begun.People() {
+		if p.Key != nil && *p.Key == key {
+			return nil
+		}
+	}
+	_, err := s.run.Submit(ctx, walk.AddPerson{Name: first.Name, Role: first.Role, Organisation: first.Organisation, Key: key})
+	return err
 }
 
 // again rehearses with what the log was begun with.
@@ -154,7 +174,12 @@ func (h *host) session(s *session, notes []string) walkview.Session {
 	for _, p := range s.papers.registers.Points {
 		places[p.Name] = p.Place()
 	}
+	key := ""
+	if s.signer != nil {
+		key = s.signer.Fingerprint()
+	}
 	open := walkview.Session{
+		Key:   key,
 		Notes: notes, Run: s.run, Operator: operator, Log: s.log, MaxAge: s.maxAge, Pace: s.clock.Pace, Unsigned: s.unsigned,
 		Bell: func() { fmt.Fprint(h.app.out, "\a") }, Places: places,
 		Check:  func(changed site.Site) []finding.Finding { return desk.Findings(changed, s.papers.registersOrNone()) },

@@ -20,6 +20,7 @@ import (
 	"chargehand/commission/record"
 	"chargehand/commission/signal"
 	"chargehand/commission/signing"
+	"chargehand/commission/site"
 	"chargehand/commission/walk"
 	"chargehand/protocol/link"
 	"chargehand/protocol/poll"
@@ -44,6 +45,7 @@ type walkOptions struct {
 // session is an open walk with everything that runs for it.
 type session struct {
 	papers   papers
+	peers    []peer
 	log      string
 	run      *commission.Run
 	clock    *clock.Plant
@@ -53,6 +55,7 @@ type session struct {
 	maxAge   time.Duration
 	person   string
 	sealed   bool
+	begun    walk.State // as the log was when it was opened
 
 	writer *chlog.Writer
 	stop   context.CancelFunc
@@ -73,6 +76,9 @@ func (a *app) open(ctx context.Context, o walkOptions) (*session, error) {
 	for _, w := range p.warnings {
 		o.say(w)
 	}
+	if s.peers, err = a.readPeers(p); err != nil {
+		return nil, err
+	}
 	if err := a.findSigner(s, o); err != nil {
 		return nil, err
 	}
@@ -80,10 +86,16 @@ func (a *app) open(ctx context.Context, o walkOptions) (*session, error) {
 	if err != nil {
 		return nil, err
 	}
+	s.begun = state
 	running, stop := context.WithCancel(ctx)
 	s.stop = stop
 	if err := s.start(running, a, o, state); err != nil {
 		return nil, errors.Join(err, s.close())
+	}
+	if state.Sealed() == nil { // after a night some of it has to be shown anew
+		if _, err := s.run.Submit(running, walk.Return{}); err != nil {
+			return nil, errors.Join(err, s.close())
+		}
 	}
 	return s, nil
 }
@@ -274,6 +286,7 @@ func (s *session) start(ctx context.Context, a *app, o walkOptions, state walk.S
 	}
 	s.run = commission.Start(ctx, commission.Options{
 		State: state, Log: s.writer, Signer: signer, Unsigned: s.unsigned, Clock: s.clock, Batches: batches,
+		Peers:     s.pollPeers(ctx, o.rehearse, address),
 		Focus:     func(names []signal.Name) { poller.Focus(names...) },
 		Channels:  channels(s.papers.registers),
 		MaxAge:    s.maxAge,
@@ -282,6 +295,64 @@ func (s *session) start(ctx context.Context, a *app, o walkOptions, state walk.S
 		Speed:     o.speed,
 	})
 	return nil
+}
+
+// peer is the device of another infeed, with its map as read.
+type peer struct {
+	site.Peer
+	registers registermap.Map
+}
+
+// readPeers reads the maps that the site's peers name.
+func (a *app) readPeers(p papers) ([]peer, error) {
+	var peers []peer
+	for _, declared := range p.site.Peers {
+		file := filepath.Join(filepath.Dir(p.file), filepath.FromSlash(declared.Map))
+		text, err := a.readSmall(file)
+		if err != nil {
+			return nil, fmt.Errorf("read the map of %s: %w", declared.Infeed, err)
+		}
+		m, err := registermap.Read(file, text)
+		if err != nil {
+			return nil, err
+		}
+		peers = append(peers, peer{declared, m})
+	}
+	return peers, nil
+}
+
+// firstPeerUnit is the unit identifier of the first peer on the simulated plant, which answers for all devices.
+const firstPeerUnit = 101
+
+// pollPeers starts a poller for each peer and joins what they bring; nil without any.
+func (s *session) pollPeers(ctx context.Context, rehearse bool, simulated string) <-chan signal.Batch {
+	if len(s.peers) == 0 {
+		return nil
+	}
+	joined := make(chan signal.Batch)
+	var polling sync.WaitGroup
+	for i, p := range s.peers {
+		address, unit := p.Address, p.UnitID
+		if rehearse {
+			address, unit = simulated, firstPeerUnit+uint8(i)
+		}
+		wire := link.New(link.Options{Address: address, Gap: p.registers.MinInterval, LoopbackOnly: rehearse})
+		s.closer = append(s.closer, wire.Close)
+		poller := poll.New(poll.Options{Device: p.Infeed, Link: wire, UnitID: unit, Map: p.registers, MaxAge: s.maxAge,
+			Now: s.clock.Now, Pace: s.clock.Pace})
+		batches := poller.Latest() // for the share as it is now; no capture takes them
+		s.ending.Go(func() { _ = poller.Run(ctx) })
+		polling.Go(func() {
+			for b := range batches {
+				select {
+				case joined <- b:
+				case <-ctx.Done():
+				}
+			}
+		})
+	}
+	s.ending.Go(func() { polling.Wait(); close(joined) })
+	return joined
 }
 
 func deviceOf(p papers) string {
@@ -314,12 +385,16 @@ func (s *session) simulate(ctx context.Context, o walkOptions, state walk.State)
 	if err != nil {
 		return "", usageError{err}
 	}
-	simulated, err := simulator.New(simulator.Options{Site: s.papers.site, Map: s.papers.registers, Now: s.clock.Now, Seed: o.seed, Disturb: disturb})
+	options := simulator.Options{Site: s.papers.site, Map: s.papers.registers, Now: s.clock.Now, Seed: o.seed, Disturb: disturb}
+	for i, p := range s.peers {
+		options.Peers = append(options.Peers, simulator.Peer{Infeed: p.Infeed, UnitID: firstPeerUnit + uint8(i), Map: p.registers})
+	}
+	simulated, err := simulator.New(options)
 	if err != nil {
 		return "", err
 	}
 	s.closer = append(s.closer, simulated.Close)
-	s.operator = &simulatedPlant{simulated, s.papers.site}
+	s.operator = newPlant(simulated, s.papers.site)
 	if err := s.operator.restore(ctx, state); err != nil {
 		return "", err
 	}

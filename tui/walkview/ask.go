@@ -18,7 +18,11 @@ func askPerson(first bool) *prompt {
 		title, roles = "Who goes this walk?", []string{"technician", "witness", "surveyor", "owner"}
 	}
 	return asking(title, func(m Model, f form.Form) (Model, tea.Cmd) {
-		return m.submit(f.Value("name")+" entered", walk.AddPerson{Name: f.Value("name"), Role: f.Value("role"), Organisation: f.Value("organisation")})
+		person := walk.AddPerson{Name: f.Value("name"), Role: f.Value("role"), Organisation: f.Value("organisation")}
+		if first {
+			person.Key = m.session.Key
+		}
+		return m.submit(f.Value("name")+" entered", person)
 	},
 		form.Input("name", "name", "", filled("a name, as it stands under the signatures")),
 		form.Choice("role", "role", roles...),
@@ -26,14 +30,14 @@ func askPerson(first bool) *prompt {
 }
 
 // askSignature asks who signs a point beside the one who goes the walk.
-func askSignature(p walk.Point, others []record.Person, unsigned string) *prompt {
+func askSignature(p walk.Point, others []record.Person) *prompt {
 	names := personNames(others)
 	return asking("Sign "+p.ID+" as", func(m Model, f form.Form) (Model, tea.Cmd) {
 		i := slices.Index(names, f.Value("who"))
 		if i < 0 {
 			return m.ask(askPerson(false)), nil
 		}
-		return m.submit(p.ID+" signed by "+others[i].Name, walk.Sign{Point: p.ID, Person: others[i].ID, UnsignedBecause: unsigned})
+		return m.submit(p.ID+" signed by "+others[i].Name, walk.Sign{Point: p.ID, Person: others[i].ID, UnsignedBecause: "no key of their own here; countersigns the sealed log"})
 	}, form.Choice("who", "who", append(slices.Clone(names), "somebody else, to be entered")...))
 }
 

@@ -321,14 +321,14 @@ func openPunches(state walk.State) []record.Punch {
 func (m Model) askWitness(p walk.Point) *prompt {
 	st := m.snapshot.State.Status(p.ID)
 	people := m.snapshot.State.People()
-	if len(people) == 0 {
+	if m.needsPerson() {
 		return askPerson(true)
 	}
 	if st.Result == walk.Open {
 		return askPerson(false)
 	}
 	others := slices.DeleteFunc(slices.Clone(people), func(person record.Person) bool { return slices.Contains(st.Signed, person.ID) })
-	return askSignature(p, others, m.session.Unsigned)
+	return askSignature(p, others)
 }
 
 // measure asks for an instrument's reading: the point's own, or during a pre-charge the one at the open bypass.
@@ -377,7 +377,7 @@ func (m Model) again(p walk.Point) (Model, tea.Cmd) {
 // enter does the next thing.
 func (m Model) enter() (Model, tea.Cmd) {
 	p := m.current()
-	return m.do(next(m.snapshot, p), p)
+	return m.do(m.next(p), p)
 }
 
 func (m Model) do(a action, p walk.Point) (Model, tea.Cmd) {
@@ -531,15 +531,25 @@ func (m Model) turned(by int) Model {
 	return m.at(in[0].ID)
 }
 
-// person is who signs: the one who goes the walk.
+// person is who signs: whoever was entered with this session's key, else the one who goes the walk.
 func (m Model) person() string {
-	if people := m.snapshot.State.People(); len(people) > 0 {
+	people := m.snapshot.State.People()
+	for _, p := range people {
+		if m.session.Key != "" && p.Key != nil && *p.Key == m.session.Key {
+			return p.ID
+		}
+	}
+	if len(people) > 0 {
 		return people[0].ID
 	}
 	return ""
 }
 
-func (m Model) instruments() []record.Instrument { return m.snapshot.State.Instruments() }
+// needsPerson tells whether it must be asked who goes on: nobody yet, or nobody with this session's key.
+func (m Model) needsPerson() bool {
+	people := m.snapshot.State.People()
+	return len(people) == 0 || m.session.Key != "" && !slices.ContainsFunc(people, func(p record.Person) bool { return p.Key != nil && *p.Key == m.session.Key })
+}
 
 // cursorBy moves the chart's cursor by a fiftieth of the trace, or puts it on the last sample.
 func (m Model) cursorBy(direction float64) Model {

@@ -40,11 +40,15 @@ type action struct {
 }
 
 // next is what Enter does at point p now.
-func next(s commission.Snapshot, p walk.Point) action {
-	state := s.State
-	if len(state.People()) == 0 {
+func (m Model) next(p walk.Point) action {
+	if m.snapshot.State.Sealed() == nil && m.needsPerson() {
 		return action{step: stepPerson, label: "enter who goes the walk"}
 	}
+	return next(m.snapshot, p)
+}
+
+func next(s commission.Snapshot, p walk.Point) action {
+	state := s.State
 	if state.Sealed() != nil {
 		return action{label: "the log is sealed"}
 	}

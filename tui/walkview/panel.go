@@ -112,7 +112,7 @@ func (m Model) text(p walk.Point, width int) []string {
 	rows = append(rows, m.liveRows(p, width)...)
 	rows = append(rows, m.takenRows(p, width)...)
 	rows = append(rows, m.findingRows(p, width)...)
-	if a := next(m.snapshot, p); a.step != stepPass && a.step != stepFail && m.snapshot.State.Status(p.ID).Result == walk.Open {
+	if a := m.next(p); a.step != stepPass && a.step != stepFail && m.snapshot.State.Status(p.ID).Result == walk.Open {
 		for _, because := range m.snapshot.State.Assess(p).Because {
 			rows = append(rows, m.painted(theme.Faint, m.theme.Pick("○ ", "o ")+because, width)...)
 		}
@@ -134,7 +134,7 @@ func (m Model) cautionRows(p walk.Point, width int) []string {
 // reasonRows say what is in the way, and how long a wait still takes.
 func (m Model) reasonRows(p walk.Point, width int) []string {
 	var rows []string
-	switch a := next(m.snapshot, p); {
+	switch a := m.next(p); {
 	case m.snapshot.State.Status(p.ID).Result == walk.Open && (a.step == stepPass || a.step == stepFail):
 		for _, because := range m.snapshot.State.Assess(p).Because {
 			rows = append(rows, m.painted(theme.Abnormal, m.theme.Pick("○ ", "o ")+because, width)...)

@@ -18,6 +18,7 @@ type Session struct {
 	Log      string              // path of the log
 	MaxAge   time.Duration
 	Pace     func() float64         // how fast the plant's clock runs; 1 on a real plant
+	Key      string                 // fingerprint of the key that signs; empty where there is none
 	Unsigned string                 // why sign-offs get no signature; empty where they do
 	Notes    []string               // worth knowing before the walk
 	Bell     func()                 // rings the terminal's bell; nil where there is none

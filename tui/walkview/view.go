@@ -281,7 +281,7 @@ func (m Model) keyLine() string {
 	}
 	k := m.keys
 	always := m.hinted(k.Far, k.Explain, k.Back)
-	line := m.hints("Enter", m.theme.Plain(next(m.snapshot, m.current()).label))
+	line := m.hints("Enter", m.theme.Plain(m.next(m.current()).label))
 	var here []key.Binding
 	if m.snapshot.Capture != nil {
 		here = append(here, k.Stop)
