@@ -60,9 +60,7 @@ func (r *Run) arm(e walk.Arm) (Recorded, error) {
 	}
 	r.predict(rec)
 	r.recorder = rec
-	if p.Capture == capture.Precharge { // the others last minutes, and the usual rate shows all of them
-		r.focus(rec.capture.Channels)
-	}
+	r.focus(rec.capture.Channels)
 	return recorded, nil
 }
 
@@ -88,6 +86,8 @@ func (r *Run) predict(rec *recorder) {
 		rec.predictDischarge(s, r.busNow())
 	case capture.Droop:
 		rec.predictDroop(s)
+	case capture.Step: // a time-out that never comes is watched a good while longer
+		rec.bars.longest = seconds(math.Max(10, 1.5*float64(s.Precharge.Timeout.Nominal)))
 	}
 }
 
@@ -181,11 +181,24 @@ func (r *Run) stopCapture(because string) (Recorded, error) {
 	c := rec.capture.WithGaps(signal.BusVoltage, rec.longestGap(), "no new value")
 	captured := walk.Captured{Parts: capture.Records(c), Readings: r.fromCapture(rec, c),
 		Findings: slices.DeleteFunc(judged(rec.site, c), r.isKnownBetter)}
+	if c.Kind == capture.Step {
+		r.judgeTrip(rec.point, c, &captured)
+	}
 	recorded, err := r.write(captured)
 	if err != nil {
 		return recorded, err
 	}
 	return r.write(walk.AddNote{Text: "capture " + c.ID + " at " + rec.point + " ended: " + because})
+}
+
+// judgeTrip adds what a capture at a point of stage 10 shows of its trip.
+func (r *Run) judgeTrip(point string, c capture.Capture, captured *walk.Captured) {
+	p, _ := r.state.Point(point)
+	subject := nextTrip(r.state, p)
+	f := r.trip(subject, c)
+	f.Captures = []string{c.ID}
+	captured.Findings = append(captured.Findings, f)
+	captured.Readings = append(captured.Readings, tripReading(point, subject, f)...)
 }
 
 // isKnownBetter tells whether a finding only repeats, less exactly, what an instrument has decided: the droop line's no-load

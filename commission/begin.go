@@ -69,7 +69,8 @@ func instrumentRecord(i int, known site.Instrument) record.Instrument {
 	}
 	return record.Instrument{ID: fmt.Sprintf("i%d", i+1), Name: known.Name, Serial: known.Serial,
 		Calibrated: date(known.Calibrated), Due: date(known.Due),
-		Accuracy: record.InstrumentAccuracy{OfReading: float64(known.OfReading), Plus: float64(known.Plus.Nominal), Unit: "V"}}
+		Accuracy:   record.InstrumentAccuracy{OfReading: float64(known.OfReading), Plus: float64(known.Plus.Nominal), Unit: "V"},
+		MaxVoltage: float64(known.MaxVoltage.Nominal)}
 }
 
 // Replay gives the state of the walk that wrote the lines.

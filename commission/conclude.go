@@ -3,8 +3,10 @@ package commission
 import (
 	"math"
 	"slices"
+	"strings"
 	"time"
 
+	"chargehand/commission/capture"
 	"chargehand/commission/desk"
 	"chargehand/commission/finding"
 	"chargehand/commission/fit"
@@ -28,15 +30,36 @@ func lineThrough(current, voltage []float64) *Line {
 	return &Line{NoLoad: l.Intercept, Droop: -l.Slope, At: l.At, StandardErrorAt: l.SEAt, NoLoadSE: l.InterceptSE, DroopSE: l.SlopeSE}
 }
 
-// conclude makes the measured findings that a point's readings decide, before the point is judged by them.
-func (r *Run) conclude(e walk.Judge) error {
+// judge gives a point its result. A pass is preceded by the measured findings that the point's readings decide, and at the
+// points about settings by the settings themselves.
+func (r *Run) judge(e walk.Judge) (Recorded, error) {
 	p, ok := r.state.Point(e.Point)
 	if !ok || e.Result != walk.Passed {
-		return nil
+		return r.write(e)
 	}
+	if found := slices.DeleteFunc(r.conclude(p), r.hasConcluded); len(found) > 0 {
+		if _, held := r.state.HeldBy(p); !held {
+			if recorded, err := r.write(walk.Captured{Findings: found}); err != nil {
+				return recorded, err
+			}
+		}
+	}
+	if _, err := r.state.Decide(e, r.opt.Clock.Now()); err != nil {
+		return Recorded{State: r.state}, err
+	}
+	if recorded, err := r.keepSettings(p.ID); err != nil {
+		return recorded, err
+	}
+	return r.write(e)
+}
+
+// conclude makes the measured findings that bind a point: from its readings, or from the capture that it rests on where the
+// finding fell with a point that was opened again.
+func (r *Run) conclude(p walk.Point) []finding.Finding {
 	var found []finding.Finding
 	for _, id := range p.Findings {
-		switch id {
+		name, subject, _ := strings.Cut(id, ":")
+		switch name {
 		case "measured.sensor":
 			found = append(found, r.sensors(p)...)
 		case "measured.window":
@@ -45,14 +68,37 @@ func (r *Run) conclude(e walk.Judge) error {
 			found = append(found, r.setpoint(p)...)
 		case "measured.current-mode":
 			found = append(found, r.currentMode(p)...)
+		case "measured.share":
+			found = append(found, r.share(p)...)
+		case "measured.trip":
+			found = append(found, r.tripByHand(p, subject)...)
+		case "measured.precharge", "measured.closing", "measured.droop", "measured.discharge":
+			found = append(found, r.again(id)...)
 		}
 	}
-	found = slices.DeleteFunc(found, r.hasConcluded)
-	if len(found) == 0 {
-		return r.keepSettings(e)
+	return found
+}
+
+// again judges the latest capture anew for a finding that does not stand any more.
+func (r *Run) again(id string) []finding.Finding {
+	if len(r.state.Measured(id)) > 0 {
+		return nil
 	}
-	_, err := r.write(walk.Captured{Findings: found})
-	return err
+	found := rejudged(r.state.Site(), r.state)
+	return slices.DeleteFunc(found, func(f finding.Finding) bool { return f.ID != id })
+}
+
+// rejudged are the findings of a state's latest captures by the predictions of a site file.
+func rejudged(s site.Site, state walk.State) []finding.Finding {
+	var found []finding.Finding
+	for _, kind := range []capture.Kind{capture.Precharge, capture.Droop, capture.Discharge} {
+		c, err := capture.FromRecords(state.Captured(kind))
+		if err != nil {
+			continue // none of this kind
+		}
+		found = append(found, judged(s, c)...)
+	}
+	return found
 }
 
 // hasConcluded tells whether the same finding stands in the log already, so that a point judged twice says it once.
@@ -137,38 +183,59 @@ func (r *Run) currentMode(p walk.Point) []finding.Finding {
 var settings = []signal.Name{signal.VoltageSetpoint, signal.DroopSetting, signal.PowerReference, signal.ChargeLimit, signal.DischargeLimit}
 
 // keepSettings writes down the device's settings when the point about them is passed: the as-found ones before anything is
-// touched, the as-left ones at the end.
-func (r *Run) keepSettings(e walk.Judge) error {
-	when := map[string]string{"paper.settings": "as-found", "leave.settings": "as-left"}[e.Point]
-	if when == "" || e.Result != walk.Passed {
-		return nil
-	}
+// touched, the as-left ones at the end. A setting as found is the first one; one that was never found has no as-left.
+func (r *Run) keepSettings(point string) (Recorded, error) {
+	when := map[string]string{"paper.settings": "as-found", "leave.settings": "as-left"}[point]
 	now := r.opt.Clock.Now()
 	for _, name := range settings {
 		live, ok := r.live[name]
-		if !ok || !live.Withdrawn(now, r.maxAge()).Quality.HasValue() {
+		if when == "" || !ok || !live.Withdrawn(now, r.maxAge()).Quality.HasValue() || r.wasFound(name) != (when == "as-left") {
 			continue
 		}
 		setting := record.Setting{Name: string(name), When: when, Value: live.Value, Unit: name.Unit(), Source: record.FromDevice}
-		if len(live.Raw) == 1 {
-			raw := int64(live.Raw[0])
+		if raw, ok := r.rawNumber(live); ok {
 			setting.Raw = &raw
 		}
-		if _, err := r.write(walk.Keep{Setting: setting}); err != nil && when == "as-found" {
-			return err
+		if recorded, err := r.write(walk.Keep{Setting: setting}); err != nil {
+			return recorded, err
 		}
 	}
-	return nil
+	return Recorded{State: r.state}, nil
 }
 
-// changeSite takes a new revision of the site file and calculates every finding anew.
+func (r *Run) wasFound(name signal.Name) bool {
+	return slices.ContainsFunc(r.state.Settings(), func(k record.Setting) bool {
+		return k.Name == string(name) && k.When == "as-found"
+	})
+}
+
+// rawNumber is the number to key in for a value: what the register holds, whatever its words.
+func (r *Run) rawNumber(live signal.Reading) (int64, bool) {
+	for _, ch := range r.opt.Channels {
+		if ch.Name == live.Name && ch.Scale != 0 && live.Quality.HasValue() {
+			return int64(math.Round((live.Value - ch.Offset) / ch.Scale)), true
+		}
+	}
+	return 0, false
+}
+
+// changeSite takes a new revision of the site file, calculates every finding anew, the measured ones by the new predictions
+// too, and notes which have moved.
 func (r *Run) changeSite(e walk.ChangeSite) (Recorded, error) {
 	s, _, err := site.Read(e.Name, []byte(e.Text))
 	if err != nil {
 		return Recorded{State: r.state}, err
 	}
-	e.Findings = desk.Check(s, r.opt.Registers).Findings
-	return r.write(e)
+	found := desk.Check(s, r.opt.Registers).Findings
+	before := append(slices.Clone(r.state.Desk()), r.state.Measured("")...)
+	again := rejudged(s, r.state)
+	e.Findings = append(slices.Clone(found), again...)
+	recorded, err := r.write(e)
+	if err != nil {
+		return recorded, err
+	}
+	noted, err := r.write(walk.AddNote{Text: words(Moved(before, e.Findings))})
+	return Recorded{append(recorded.Seqs, noted.Seqs...), noted.State}, err
 }
 
 // hasten lets the plant's clock run faster until what is waited for is over; only a rehearsal has such a clock.
@@ -188,9 +255,10 @@ func (r *Run) pacing() {
 	switch rec := r.recorder; {
 	case !r.state.IsRehearsal() || r.opt.Speed <= 1:
 	case rec != nil && rec.phase == Running && rec.kindSlow() && r.opt.Clock.Pace() == 1:
-		factor := math.Min(r.opt.Speed, rec.tau/(samplesPerTau*pollPeriod.Seconds()))
+		factor := math.Floor(math.Min(r.opt.Speed, rec.tau/(samplesPerTau*focusPeriod.Seconds())))
 		if factor > 1 {
-			_, _ = r.hasten(walk.Hastened{Hastened: record.Hastened{What: "discharge", Factor: math.Floor(factor)}})
+			_, _ = r.hasten(walk.Hastened{Hastened: record.Hastened{What: "discharge", Factor: factor}})
+			rec.thin(time.Duration(factor) * focusPeriod)
 		}
 	case rec == nil && r.hurrying == coolDown && r.state.CoolsFor(now) == 0:
 		r.opt.Clock.Hasten(1)
@@ -200,6 +268,6 @@ func (r *Run) pacing() {
 
 const (
 	coolDown      = "cool-down"
-	samplesPerTau = 100                   // of a hastened discharge
-	pollPeriod    = 50 * time.Millisecond // of the poller at its usual rate
+	samplesPerTau = 100                   // of a hastened discharge, at least
+	focusPeriod   = 25 * time.Millisecond // of a poller that looks at a capture's signals only
 )

@@ -1,6 +1,7 @@
 package commission
 
 import (
+	"slices"
 	"time"
 
 	"chargehand/commission/capture"
@@ -16,6 +17,9 @@ const (
 	Armed   Phase = "armed"   // waits for its event
 	Running Phase = "running" // counts from its event
 )
+
+// quiet is how long nothing must have changed for the response to a trip to be over.
+const quiet = 700 * time.Millisecond
 
 // before is how much is kept from before the event: enough to see a bus that was not dead.
 const before = 2 * time.Second
@@ -33,11 +37,14 @@ type recorder struct {
 	capture  capture.Capture
 	armedAt  time.Time
 	latest   time.Time // of the last sample
+	resumes  time.Time // when a hastened capture takes samples again
 	level    float64   // of the bus when armed
 	hasLevel bool
 	closed   contact // pre-charge contactor
 	bypass   contact
-	low      int // samples in a row below the touch-safe voltage
+	bits     map[signal.Name]*contact // every state bit, for a capture that waits for one to change
+	changed  time.Time                // when one did last
+	low      int                      // samples in a row below the touch-safe voltage
 
 	soFar    []string
 	steps    []Settled
@@ -79,9 +86,13 @@ func channels(kind capture.Kind, all []capture.Channel) []capture.Channel {
 	want := map[signal.Name]bool{signal.BusVoltage: true, signal.SourceVoltage: true, signal.StarPointVoltage: true,
 		signal.SourceCurrent: true, signal.BusCurrent: true, signal.PhaseCurrent1: true, signal.PhaseCurrent2: true,
 		signal.PhaseCurrent3: true, signal.PrechargeClosed: true, signal.BypassClosed: true, signal.ResistorTemperature: true,
-		signal.Fault: true, signal.ChopperActive: true, signal.Running: true}
+		signal.Fault: true, signal.ChopperActive: true, signal.Running: true, signal.MainClosed: true}
 	if kind == capture.Droop || kind == capture.Step {
 		want[signal.VoltageSetpoint], want[signal.DroopSetting], want[signal.Power] = true, true, true
+		want[signal.DischargeLimit] = true
+	}
+	if kind == capture.Step {
+		want[signal.InsulationResistance] = true
 	}
 	var some []capture.Channel
 	for _, ch := range all {
@@ -105,8 +116,8 @@ func (r *recorder) take(b signal.Batch) {
 			at = reading.At
 		}
 	}
-	if !at.After(r.latest) {
-		return // an answer that has been taken already
+	if !at.After(r.latest) || at.Before(r.resumes) {
+		return // an answer that has been taken already, or too near the one before a hastened stretch
 	}
 	r.latest = at
 	r.precharge(b)
@@ -132,6 +143,26 @@ func (r *recorder) kindSlow() bool { return r.capture.Kind == capture.Discharge 
 func (r *recorder) precharge(b signal.Batch) {
 	r.closed.take(b.Find(signal.PrechargeClosed))
 	r.bypass.take(b.Find(signal.BypassClosed))
+	for _, ch := range r.capture.Channels {
+		if r.capture.Kind == capture.Step && ch.Name.IsState() {
+			r.watch(b.Find(ch.Name))
+		}
+	}
+}
+
+// watch notes when a state bit changes from what it was when the capture was armed, or since.
+func (r *recorder) watch(bit signal.Reading) {
+	if r.bits == nil {
+		r.bits = map[signal.Name]*contact{}
+	}
+	c := r.bits[bit.Name]
+	if c == nil {
+		c = &contact{}
+		r.bits[bit.Name] = c
+	}
+	if was := c.known; c.take(bit) && was {
+		r.changed = bit.At
+	}
 }
 
 // await looks for the event of an armed capture and makes its instant the zero of the time axis.
@@ -152,18 +183,22 @@ func (r *recorder) await(bus signal.Reading, b signal.Batch) {
 		if r.moved(bus, -1) {
 			r.begin(bus.At)
 		}
+	case capture.Step:
+		if !r.changed.IsZero() {
+			r.begin(r.changed)
+		}
 	default:
 		r.begin(b.At)
 	}
 }
 
-// moved tells whether the bus has left the level it had when armed by more than 2 % of that level and 5 V, so that noise and
-// the register's last digit start nothing.
+// moved tells whether the bus has left the level it had when armed by more than half a per cent of that level and 5 V, so that
+// noise and the register's last digit start nothing.
 func (r *recorder) moved(bus signal.Reading, direction float64) bool {
 	if !bus.Quality.HasValue() || !r.hasLevel {
 		return false
 	}
-	return (bus.Value-r.level)*direction > max(0.02*abs(r.level), 5)
+	return (bus.Value-r.level)*direction > max(0.005*abs(r.level), 5)
 }
 
 // begin sets the zero of the time axis and moves the samples kept from before to it.
@@ -194,6 +229,29 @@ func (r *recorder) forget(now time.Duration) {
 	if r.capture.Kind != capture.Droop {
 		r.x, r.y = r.x[keep:], r.y[keep:]
 	}
+}
+
+// thin keeps of the samples so far only those that stand as far apart as the later ones of a hastened capture will, so that a
+// fit does not lean on the first second.
+func (r *recorder) thin(apart time.Duration) {
+	var samples []capture.Sample
+	var x, y []float64
+	bus := r.capture.Index(signal.BusVoltage)
+	for i := len(r.capture.Samples) - 1; i >= 0; i-- {
+		s := r.capture.Samples[i]
+		if n := len(samples); n > 0 && samples[n-1].At-s.At < apart {
+			continue
+		}
+		samples = append(samples, s)
+		if bus >= 0 && s.Values[bus].OK {
+			x, y = append(x, s.At.Seconds()), append(y, s.Values[bus].V)
+		}
+	}
+	slices.Reverse(samples)
+	slices.Reverse(x)
+	slices.Reverse(y)
+	r.capture.Samples, r.x, r.y = samples, x, y
+	r.resumes = r.latest.Add(apart / 2)
 }
 
 // draw appends to the trace; what was drawn is never changed, so that a screen may hold it.
@@ -243,6 +301,11 @@ func (r *recorder) ended(now time.Time) (because string, done bool) {
 	case capture.Discharge:
 		if r.low >= 5 {
 			return "the bus is below the touch-safe voltage", true
+		}
+	case capture.Step:
+		isCharging := r.closed.closed && !r.bypass.closed
+		if !isCharging && r.latest.Sub(r.changed) >= quiet {
+			return "nothing has changed any more", true
 		}
 	default:
 		return "", false

@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"maps"
+	"slices"
 	"time"
 
 	"chargehand/commission/capture"
@@ -24,6 +25,7 @@ type Options struct {
 	Unsigned  string       // that reason
 	Clock     *clock.Plant
 	Batches   <-chan signal.Batch       // lossless, of the converter being commissioned
+	Peers     <-chan signal.Batch       // of the other infeeds' devices, all together; nil without any
 	Focus     func(names []signal.Name) // tells the poller which signals a capture needs; none means all
 	Channels  []capture.Channel         // every signal of the map with its scaling
 	MaxAge    time.Duration             // older readings are withdrawn
@@ -56,12 +58,14 @@ type Run struct {
 	opt       Options
 	state     walk.State
 	live      map[signal.Name]signal.Reading
+	peers     map[string]map[signal.Name]signal.Reading // by infeed
 	link      signal.Link
 	linkWasUp bool
 	linkKnown bool
 	recorder  *recorder
 	failure   error
-	hurrying  string // what the clock was hastened for
+	unwritten []record.Body // of a capture whose log failed, for the place where the log goes on
+	hurrying  string        // what the clock was hastened for
 
 	submits   chan submission
 	snapshots chan Snapshot
@@ -84,6 +88,7 @@ type answer struct {
 func Start(ctx context.Context, opt Options) *Run {
 	r := &Run{
 		opt: opt, state: opt.State.Ready(), live: map[signal.Name]signal.Reading{},
+		peers:   map[string]map[signal.Name]signal.Reading{},
 		submits: make(chan submission), snapshots: make(chan Snapshot, 1), ended: make(chan struct{}),
 	}
 	r.publish()
@@ -123,7 +128,7 @@ func (r *Run) hand(ctx context.Context, s submission) (Recorded, error) {
 
 func (r *Run) loop(ctx context.Context) {
 	defer close(r.ended)
-	batches := r.opt.Batches
+	batches, peers := r.opt.Batches, r.opt.Peers
 	for {
 		select {
 		case <-ctx.Done():
@@ -139,6 +144,12 @@ func (r *Run) loop(ctx context.Context) {
 			}
 			r.take(b)
 			r.publish()
+		case b, ok := <-peers:
+			if !ok {
+				peers = nil
+				continue
+			}
+			r.takePeer(b)
 		}
 	}
 }
@@ -160,7 +171,18 @@ func (r *Run) moveLog(path string) error {
 	if r.opt.Moved != nil {
 		r.opt.Moved(moved)
 	}
-	return nil
+	return r.writeLate()
+}
+
+// writeLate writes down the rest of a capture that the log had no place for.
+func (r *Run) writeLate() error {
+	late := r.unwritten
+	r.unwritten = nil
+	if len(late) == 0 {
+		return nil
+	}
+	_, err := r.record(late)
+	return err
 }
 
 // submit turns an event into records on disk.
@@ -173,35 +195,50 @@ func (r *Run) submit(event walk.Event) (Recorded, error) {
 	case walk.StopCapture:
 		return r.stopCapture("stopped by hand")
 	case walk.Judge:
-		if err := r.conclude(e); err != nil {
-			return Recorded{State: r.state}, err
-		}
+		return r.judge(e)
 	case walk.ChangeSite:
 		return r.changeSite(e)
 	case walk.Hastened:
 		return r.hasten(e)
+	case walk.Seal:
+		if r.recorder != nil { // nothing measured is lost
+			if recorded, err := r.stopCapture("the log is sealed"); err != nil {
+				return recorded, err
+			}
+		}
 	}
 	return r.write(event)
 }
 
 // write decides an event and appends what it makes.
 func (r *Run) write(event walk.Event) (Recorded, error) {
-	if r.failure != nil {
-		return Recorded{State: r.state}, r.failure
-	}
 	bodies, err := r.state.Decide(event, r.opt.Clock.Now())
 	if err != nil {
 		return Recorded{State: r.state}, err
 	}
+	if r.failure != nil {
+		if r.isCapture(bodies) {
+			r.unwritten = append(r.unwritten, bodies...)
+		}
+		return Recorded{State: r.state}, r.failure
+	}
+	return r.record(bodies)
+}
+
+// record appends bodies one by one; each is on disk before the next.
+func (r *Run) record(bodies []record.Body) (Recorded, error) {
 	var recorded Recorded
-	for _, body := range bodies {
+	for i, body := range bodies {
 		line, err := r.append(body)
-		var refused *chlog.RefusedError
-		if errors.As(err, &refused) {
+		var broken *chlog.WriteError
+		if err != nil && !errors.As(err, &broken) {
 			return Recorded{recorded.Seqs, r.state}, err // the log is unharmed and takes the next
 		}
 		if err != nil {
 			r.failure = fmt.Errorf("the log takes nothing more: %w", err)
+			if r.isCapture(bodies) {
+				r.unwritten = append(r.unwritten, bodies[i:]...)
+			}
 			return Recorded{recorded.Seqs, r.state}, r.failure
 		}
 		r.state = r.state.With(line)
@@ -212,6 +249,11 @@ func (r *Run) write(event walk.Event) (Recorded, error) {
 	return recorded, nil
 }
 
+// isCapture tells whether the records are a capture's: nobody can do it again.
+func (r *Run) isCapture(bodies []record.Body) bool {
+	return slices.ContainsFunc(bodies, func(b record.Body) bool { return b.Kind() == record.Capture{}.Kind() })
+}
+
 // append writes one record; a sign-off and a seal get their statement and signature from the log, which alone knows their
 // place in the chain.
 func (r *Run) append(body record.Body) (walk.Line, error) {
@@ -219,9 +261,9 @@ func (r *Run) append(body record.Body) (walk.Line, error) {
 	var err error
 	switch b := body.(type) {
 	case record.SignOff:
-		line, err = r.opt.Log.SignOff(b.Person, b.Point, r.opt.Signer, r.unsigned(b.UnsignedBecause))
+		line, err = r.opt.Log.SignOff(b.Person, b.Point, r.signer(b.UnsignedBecause), r.unsigned(b.UnsignedBecause))
 	case record.Seal:
-		line, err = r.opt.Log.Seal(b.Person, b.Verdict, r.opt.Signer, r.unsigned(b.UnsignedBecause))
+		line, err = r.opt.Log.Seal(b.Person, b.Verdict, r.signer(b.UnsignedBecause), r.unsigned(b.UnsignedBecause))
 	default:
 		line, err = r.opt.Log.Append(body)
 	}
@@ -230,6 +272,14 @@ func (r *Run) append(body record.Body) (walk.Line, error) {
 	}
 	written, err := line.Decode()
 	return walk.Line{Seq: line.Seq, At: line.At, Body: written}, err
+}
+
+// signer is the key that signs; none where the event says why there is none, such as a witness without a key of their own.
+func (r *Run) signer(because *string) chlog.Signer {
+	if because != nil {
+		return nil
+	}
+	return r.opt.Signer
 }
 
 func (r *Run) unsigned(because *string) string {
@@ -254,6 +304,16 @@ func (r *Run) take(b signal.Batch) {
 	if because, done := r.recorder.ended(r.opt.Clock.Now()); done {
 		// What went wrong in writing is kept in failure and shown; a capture has nobody to answer to.
 		_, _ = r.stopCapture(because)
+	}
+}
+
+// takePeer keeps what the device of another infeed says.
+func (r *Run) takePeer(b signal.Batch) {
+	if r.peers[b.Device] == nil {
+		r.peers[b.Device] = map[signal.Name]signal.Reading{}
+	}
+	for _, reading := range b.Readings {
+		r.peers[b.Device][reading.Name] = reading
 	}
 }
 
@@ -314,6 +374,13 @@ func (r *Run) takeLive(id string) (Recorded, error) {
 		}
 		all.Seqs, all.State = append(all.Seqs, recorded.Seqs...), recorded.State
 	}
+	for _, reading := range r.beside(p) {
+		recorded, err := r.write(walk.Take{Reading: reading})
+		if err != nil {
+			return all, err
+		}
+		all.Seqs, all.State = append(all.Seqs, recorded.Seqs...), recorded.State
+	}
 	if len(all.Seqs) == 0 {
 		return all, &walk.RefusedError{What: "no live reading at " + id, Because: "none of its signals is in the map",
 			Instead: "read an instrument and enter the value"}
@@ -356,7 +423,7 @@ func abs(v float64) float64 {
 	return v
 }
 
-// Live gives the live readings as a copy, withdrawn where they are too old.
+// Reading gives a live reading, withdrawn where it is too old.
 func (s Snapshot) Reading(n signal.Name) signal.Reading {
 	if r, ok := s.Live[n]; ok {
 		return r

@@ -22,6 +22,18 @@ func Acts(point string) []string {
 		return []string{LoadOff, Regenerate, LoadOff}
 	case "power.keyed":
 		return []string{LoadShare(50), PowerMode, PowerReference(20e3)}
+	case "trip.earth":
+		return []string{EarthTest, EarthTestOff}
+	case "trip.source":
+		return []string{SourceWithdraw, SourceBack, Reset, PulsesRelease}
+	case "trip.bypass-lost":
+		return []string{ReportDropped, ReportBack, Reset, PulsesRelease}
+	case "trip.voltage":
+		return []string{OverVoltageAt(950), OverVoltageOK, Reset, PulsesRelease, UnderVoltageAt(1080), UnderVoltageOK, Reset, PulsesRelease}
+	case "trip.stop":
+		return []string{VoltageMode, LoadShare(20), Stop, Reset}
+	case "trip.time-out":
+		return []string{BypassWithhold, PrechargeClose, BypassRelease, Reset}
 	case "down.order", "down.discharge":
 		return []string{LoadOff, EverythingOff}
 	}

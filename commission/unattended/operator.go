@@ -33,7 +33,21 @@ const (
 	PowerMode      = "mode current"
 	VoltageMode    = "mode voltage"
 	EverythingOff  = "discharge"
+	Stop           = "stop"
+	Reset          = "reset"
+	ReportDropped  = "drop-report on"
+	ReportBack     = "drop-report off"
+	SourceWithdraw = "withdraw on"
+	SourceBack     = "withdraw off"
+	EarthTest      = "earth-test 20 kΩ"
+	EarthTestOff   = "earth-test off"
+	OverVoltageOK  = "over-voltage restore"
+	UnderVoltageOK = "under-voltage restore"
 )
+
+// OverVoltageAt and UnderVoltageAt are the acts that move a trip's threshold.
+func OverVoltageAt(volts float64) string  { return fmt.Sprintf("over-voltage %.0f V", volts) }
+func UnderVoltageAt(volts float64) string { return fmt.Sprintf("under-voltage %.0f V", volts) }
 
 // LoadShare is the act that puts a share of the site's greatest load on the bus.
 func LoadShare(percent int) string { return fmt.Sprintf("load %d %%", percent) }

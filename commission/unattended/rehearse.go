@@ -8,7 +8,6 @@ import (
 	"time"
 
 	"chargehand/commission"
-	"chargehand/commission/capture"
 	"chargehand/commission/finding"
 	"chargehand/commission/record"
 	"chargehand/commission/signal"
@@ -77,6 +76,9 @@ func (r *rehearsal) point(ctx context.Context, p walk.Point) error {
 		if err := operate(r, ctx, p); err != nil {
 			return err
 		}
+	}
+	if r.latest.State.Status(p.ID).Result != walk.Open { // what was operated did not answer
+		return r.sign(ctx, p)
 	}
 	if err := r.readings(ctx, p); err != nil {
 		return err
@@ -163,177 +165,38 @@ func (r *rehearsal) observe(ctx context.Context, p walk.Point) error {
 		Quality: string(signal.Good), Text: "rehearsed: " + strings.ToLower(p.Title)}})
 }
 
+// judge passes a point, or fails it and raises a punch item. A point that lacks what this way of rehearsing cannot bring
+// stays open, and the walk undecided; an open hold ends it.
 func (r *rehearsal) judge(ctx context.Context, p walk.Point) error {
-	judged := walk.Judge{Point: p.ID, Result: walk.Passed}
-	err := r.submit(ctx, judged)
+	err := r.submit(ctx, walk.Judge{Point: p.ID, Result: walk.Passed})
 	var refused *walk.RefusedError
 	if err == nil || !errors.As(err, &refused) {
 		return err
 	}
 	assessed := r.latest.State.Assess(p)
-	judged.Note = strings.Join(assessed.Because, "; ")
-	if judged.Note == "" {
-		judged.Note = refused.Error()
+	why := strings.Join(assessed.Because, "; ")
+	if why == "" {
+		why = refused.Error()
 	}
-	if assessed.Result != walk.Failed && p.MayOmit {
-		judged.Result = walk.NotApplicable
-		return r.submit(ctx, judged)
-	}
-	judged.Result = walk.Failed
-	if err := r.submit(ctx, judged); err != nil {
-		return err
-	}
-	r.say(p.ID + " fails: " + judged.Note)
-	if p.Kind == walk.Hold {
-		return fmt.Errorf("%w: %s", errHeld, judged.Note)
-	}
-	return r.submit(ctx, walk.RaisePunch{What: p.ID + ": " + judged.Note, Severity: "A", Owner: "rehearsal", Due: "before energising", Point: p.ID})
-}
-
-// notRehearsed are points that this way of rehearsing does not provoke: they are left out by name, never ticked.
-var notRehearsed = map[string]string{
-	"trip.stop":         notProvoked,
-	"trip.time-out":     notProvoked,
-	"trip.bypass-lost":  notProvoked,
-	"trip.voltage":      notProvoked,
-	"trip.source":       notProvoked,
-	"trip.earth":        notProvoked,
-	"trip.control-loss": notProvoked,
-	"boost.ripple":      "the simulated converter has no switching ripple to look at",
-	"power.heat":        "the simulated converter has no joints to warm",
-	"charge.live-bus":   "the bus was dead before the charge",
-}
-
-const notProvoked = "not provoked in an unattended rehearsal"
-
-// operations are what the plant's hand does at a point before its readings are taken.
-var operations = map[string]func(*rehearsal, context.Context, walk.Point) error{
-	"charge.source": func(r *rehearsal, ctx context.Context, _ walk.Point) error {
-		return r.operate(ctx, 500*time.Millisecond, IsolatorClose)
-	},
-	"charge.rise": (*rehearsal).charge,
-	"boost.first": func(r *rehearsal, ctx context.Context, _ walk.Point) error {
-		return r.operate(ctx, 2*time.Second, PulsesRelease)
-	},
-	"boost.step": func(r *rehearsal, ctx context.Context, _ walk.Point) error {
-		return r.operate(ctx, time.Second, LoadShare(20))
-	},
-	"share.couple": func(r *rehearsal, ctx context.Context, _ walk.Point) error {
-		return r.operate(ctx, time.Second, LoadOff, InfeedsOn)
-	},
-	"share.stairs": (*rehearsal).stairs,
-	"share.lost": func(r *rehearsal, ctx context.Context, _ walk.Point) error {
-		return r.operate(ctx, time.Second, LoadShare(50), InfeedsOff)
-	},
-	"share.regeneration": func(r *rehearsal, ctx context.Context, _ walk.Point) error {
-		return r.operate(ctx, time.Second, InfeedsOn, LoadOff, Regenerate)
-	},
-	"power.sign":     (*rehearsal).power,
-	"down.order":     (*rehearsal).shutDown,
-	"down.discharge": (*rehearsal).discharge,
-}
-
-// operate does acts in order and lets the plant and the link follow (plant time that passes as wall time).
-func (r *rehearsal) operate(ctx context.Context, settle time.Duration, acts ...string) error {
-	for _, act := range acts {
-		if err := r.op.Do(ctx, act); err != nil {
-			return fmt.Errorf("operate %q: %w", act, err)
-		}
-	}
-	_, err := r.await(ctx, settle, func(commission.Snapshot) bool { return false })
-	return err
-}
-
-// charge arms the capture, has the pre-charge closed with the bypass withheld, opens it again at once where the rise is
-// missing, measures the settled difference, and releases the bypass.
-func (r *rehearsal) charge(ctx context.Context, p walk.Point) error {
-	if err := r.submit(ctx, walk.Arm{Point: p.ID}); err != nil {
-		return err
-	}
-	if err := r.operate(ctx, 300*time.Millisecond, BypassWithhold, PrechargeClose); err != nil {
-		return err
-	}
-	release := r.releaseAfter()
-	opened := false
-	over, err := r.await(ctx, release+time.Minute, func(s commission.Snapshot) bool {
-		if s.Capture == nil {
-			return true
-		}
-		if s.Capture.OpenNow != "" && !opened {
-			r.say("open now: " + s.Capture.OpenNow)
-			opened = r.op.Do(ctx, PrechargeOpen) == nil
-		}
-		return s.Capture.Phase == commission.Running && s.Capture.Elapsed >= release && !opened
-	})
-	if err != nil || !over || r.latest.Capture == nil {
-		return err
-	}
-	r.met = map[string]float64{}
-	for _, what := range []string{string(signal.BusVoltage), "difference across the bypass"} {
-		if v, _, err := r.op.Measure(ctx, what); err == nil {
-			r.met["charge.difference "+what] = v
-		}
-	}
-	if err := r.op.Do(ctx, BypassRelease); err != nil {
-		return err
-	}
-	return r.untilCaptured(ctx, time.Minute)
-}
-
-// releaseAfter is how long the bypass is withheld so that the curve can be judged: seven time constants, but no longer than
-// four fifths of the time-out.
-func (r *rehearsal) releaseAfter() time.Duration {
-	seconds := 0.8 * float64(r.latest.State.Site().Precharge.Timeout.Nominal)
-	if f, ok := r.latest.State.Finding("precharge.time-constant"); ok && f.State == finding.Finite {
-		if seven := 7 * f.Value.High; seconds == 0 || seven < seconds {
-			seconds = seven
-		}
-	}
-	return time.Duration(seconds * float64(time.Second))
-}
-
-func (r *rehearsal) untilCaptured(ctx context.Context, limit time.Duration) error {
-	over, err := r.await(ctx, limit, func(s commission.Snapshot) bool { return s.Capture == nil })
-	if err == nil && !over {
-		err = r.submit(ctx, walk.StopCapture{})
-	}
-	return err
-}
-
-// stairs loads the bus in six steps up and down and stops the capture.
-func (r *rehearsal) stairs(ctx context.Context, p walk.Point) error {
-	if err := r.submit(ctx, walk.Arm{Point: p.ID}); err != nil {
-		return err
-	}
-	for _, percent := range []int{0, 20, 40, 60, 80, 50, 30, 10} {
-		if err := r.operate(ctx, 1200*time.Millisecond, LoadShare(percent)); err != nil {
-			return err
-		}
-	}
-	return r.submit(ctx, walk.StopCapture{})
-}
-
-// power goes over to current mode with a tenth of the rated power from source to bus.
-func (r *rehearsal) power(ctx context.Context, _ walk.Point) error {
-	watts := 10e3
-	if c := r.latest.State.Site().Converter; c != nil && c.RatedPower.IsGiven() {
-		watts = float64(c.RatedPower.Nominal) / 10
-	}
-	return r.operate(ctx, 1500*time.Millisecond, LoadShare(50), PowerMode, PowerReference(watts))
-}
-
-// shutDown arms the discharge before anything is opened.
-func (r *rehearsal) shutDown(ctx context.Context, _ walk.Point) error {
-	p, ok := r.latest.State.CaptureOf(capture.Discharge)
-	if !ok {
+	switch {
+	case assessed.Result != walk.Failed && p.ID == "share.share" && len(r.latest.State.Site().Peers) == 0:
+		return r.submit(ctx, walk.Judge{Point: p.ID, Result: walk.NotApplicable, Note: "no other infeed's device is polled: the site file has no [[peer]]"})
+	case assessed.Result != walk.Failed && p.Kind == walk.Hold:
+		return fmt.Errorf("%w: %s", errHeld, why)
+	case assessed.Result != walk.Failed:
+		r.say(p.ID + " stays open: " + why)
 		return nil
 	}
-	if err := r.submit(ctx, walk.Arm{Point: p.ID}); err != nil {
-		return err
-	}
-	return r.operate(ctx, 500*time.Millisecond, LoadOff, EverythingOff)
+	return r.fail(ctx, p, why)
 }
 
-func (r *rehearsal) discharge(ctx context.Context, _ walk.Point) error {
-	return r.untilCaptured(ctx, 3*time.Minute)
+func (r *rehearsal) fail(ctx context.Context, p walk.Point, why string) error {
+	if err := r.submit(ctx, walk.Judge{Point: p.ID, Result: walk.Failed, Note: why}); err != nil {
+		return err
+	}
+	r.say(p.ID + " fails: " + why)
+	if p.Kind == walk.Hold {
+		return fmt.Errorf("%w: %s", errHeld, why)
+	}
+	return r.submit(ctx, walk.RaisePunch{What: p.ID + ": " + why, Severity: "A", Owner: "rehearsal", Due: "before energising", Point: p.ID})
 }

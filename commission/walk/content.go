@@ -8,6 +8,7 @@ import (
 
 	"chargehand/commission/finding"
 	"chargehand/commission/quantity"
+	"chargehand/commission/signal"
 	"chargehand/commission/site"
 )
 
@@ -179,6 +180,16 @@ func (n numbers) bleeders() []Criterion {
 		return nil
 	}
 	return []Criterion{within("bleeder resistance", "Ω", number(1/high), number(1/low), "bus.bleeder")}
+}
+
+// keyed are the raw numbers of the settings, where the map has them: read back they must stand to the digit.
+func (n numbers) keyed() []Criterion {
+	var all []Criterion
+	for _, part := range n.findings["droop.registers"].Parts {
+		raw := part.Value.Nominal
+		all = append(all, within(RawNumber(signal.Name(part.Name)), "1", &raw, &raw, "droop.registers"))
+	}
+	return all
 }
 
 // touchSafe is the touch-safe voltage as a bound, or nil.

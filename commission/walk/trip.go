@@ -1,5 +1,7 @@
 package walk
 
+import "chargehand/commission/signal"
+
 // The trips and interlocks that stage 10 provokes: the subjects of measured.trip.
 const (
 	EmergencyStop   = "emergency-stop"
@@ -10,6 +12,9 @@ const (
 	SourceWithdrawn = "source-withdrawn"
 	EarthFault      = "earth-fault"
 )
+
+// RawNumber is what a setting's raw number is called among a point's readings.
+func RawNumber(name signal.Name) string { return string(name) + " as raw number" }
 
 // ResponseTime is what is read by hand at a trip whose signals are not in the map: from its provocation to the response.
 const ResponseTime = "response time"
