@@ -73,7 +73,7 @@ func (s *Simulator) Serve(ctx context.Context, listen string) (address string, e
 		return "", fmt.Errorf("listen on %s: %w", listen, err)
 	}
 	l.jitter = rand.New(rand.NewPCG(uint64(s.options.Seed), 0x6c696e6b))
-	l.last = map[string]request{}
+	l.last = nil
 	ctx, l.stop = context.WithCancel(ctx)
 	l.done = make(chan struct{})
 	go s.run(ctx, l.done)
@@ -186,10 +186,24 @@ func (h handler) read(table registermap.Table, client string, unit uint8, addres
 	if d := s.link.delay(s.options.ReplyDelay); d > 0 {
 		time.Sleep(d)
 	}
+	return s.answer(client, request{table: table, unit: unit, address: int(address), quantity: int(quantity)})
+}
+
+// Registers reads a block as a client would, without network and delay: the plant is brought to what its clock says, and
+// the answer, or the error, is the one that would go out now.
+func (s *Simulator) Registers(unit uint8, table registermap.Table, address registermap.Address, quantity int) ([]uint16, error) {
+	if err := s.catchUp(); err != nil {
+		return nil, err
+	}
+	return s.answer("in process", request{table: table, unit: unit, address: int(address), quantity: quantity})
+}
+
+// answer is what goes out to a client's question, with the faults of the link.
+func (s *Simulator) answer(client string, r request) ([]uint16, error) {
 	s.mu.Lock()
 	faults := s.truth.readings
 	now := s.elapsed
-	answer, err := s.block(table, unit, int(address), int(quantity))
+	words, err := s.block(r.table, r.unit, r.address, r.quantity)
 	s.mu.Unlock()
 	if spell(now, faults.dropPeriod, faults.dropFor) {
 		return nil, modbus.ErrProtocolError // hangs up
@@ -197,7 +211,8 @@ func (h handler) read(table registermap.Table, client string, unit uint8, addres
 	if err != nil {
 		return nil, err
 	}
-	return s.link.belated(s, client, request{table, unit, int(address), int(quantity), answer}, faults, now), nil
+	r.answer = words
+	return s.link.belated(client, r, faults, now), nil
 }
 
 // delay is how long a reply takes: one in fifty five times as long.
@@ -262,9 +277,12 @@ func (s *Simulator) imageOf(unit uint8) *image {
 }
 
 // belated is the answer that really goes out: the one that was asked for, or an older one.
-func (l *server) belated(s *Simulator, client string, r request, f readingFaults, now time.Duration) []uint16 {
+func (l *server) belated(client string, r request, f readingFaults, now time.Duration) []uint16 {
 	l.mu.Lock()
 	defer l.mu.Unlock()
+	if l.last == nil {
+		l.last = map[string]request{}
+	}
 	switch {
 	case f.behind:
 		before, has := l.last[client]
