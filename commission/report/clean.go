@@ -2,6 +2,7 @@ package report
 
 import (
 	"fmt"
+	"regexp"
 	"slices"
 	"strings"
 	"unicode"
@@ -53,7 +54,7 @@ func visual(line string) string {
 		return line
 	}
 	var p bidi.Paragraph
-	if _, err := p.SetString(line, bidi.DefaultDirection(bidi.LeftToRight)); err != nil {
+	if _, err := p.SetString(leftToRight + line); err != nil { // the page runs from left to right, whatever a line begins with
 		return line
 	}
 	order, err := p.Order()
@@ -74,16 +75,24 @@ func visual(line string) string {
 		switch {
 		case run.Direction() == bidi.RightToLeft:
 			group = append(group, bidi.ReverseString(text))
-		case len(group) > 0 && !strings.ContainsFunc(text, unicode.IsLetter): // a number behind a word keeps to its side
-			group = append(group, text)
 		default:
-			flush()
-			b.WriteString(text)
+			if number := leadingNumber.FindString(text); len(group) > 0 && number != "" { // it keeps to the side of the word before it
+				group, text = append(group, number), text[len(number):]
+			}
+			if text != "" {
+				flush()
+				b.WriteString(text)
+			}
 		}
 	}
 	flush()
-	return b.String()
+	return strings.TrimPrefix(b.String(), leftToRight)
 }
+
+// leftToRight is the mark that gives a paragraph its direction (Unicode Annex 9, rule P2).
+const leftToRight = "\u200e"
+
+var leadingNumber = regexp.MustCompile(`^[ ]*[0-9]+([.,:][0-9]+)*`)
 
 // runsLeft tells whether a character belongs to a script that runs from right to left.
 func runsLeft(r rune) bool {

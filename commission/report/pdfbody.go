@@ -15,7 +15,7 @@ const plotHeight = 66.0
 func (d document) comparison() {
 	s := d.story
 	if len(s.Captures) > 0 {
-		d.need(plotHeight + 66) // the first plot stands under the title
+		d.need(plotHeight + 86) // the first plot stands under the title
 	}
 	d.title("Measured against predicted")
 	if len(s.Captures) == 0 {
@@ -38,7 +38,7 @@ func (d document) comparison() {
 }
 
 func (d document) captureHead(c Capture) {
-	d.need(plotHeight + 45)
+	d.need(plotHeight + 70) // it stands on the page of its plot
 	d.subtitle(fmt.Sprintf("Capture %s: %s, %s", c.ID, c.What, c.Stage))
 	words := fmt.Sprintf("record %d; begins %s; %d samples, %d gaps; %s", c.Seq, clockWords(c.T0), c.Samples, c.Gaps, strings.Join(c.Signals, ", "))
 	if c.Problem != "" {
@@ -101,6 +101,7 @@ func causeWords(c finding.Cause) string {
 }
 
 func (d document) points() {
+	d.need(75) // the title does not stand alone
 	d.title("Points of the walk")
 	for _, stage := range d.story.Stages {
 		heading := stage.Title

@@ -14,6 +14,7 @@ import (
 
 	"chargehand/commission/desk"
 	"chargehand/commission/finding"
+	"chargehand/commission/signing"
 	"chargehand/commission/site"
 )
 
@@ -95,6 +96,51 @@ func TestPeerText(t *testing.T) {
 	for _, want := range []string{"Ω", "µs", "τ", "°C", "±", "≤", "²", "SHA256:"} {
 		if !strings.Contains(flat, want) {
 			t.Errorf("pdftotext does not find the symbol %q", want)
+		}
+	}
+}
+
+// TestPeerProof types the commands that the report prints for a Unix shell, with the list of signers that its text asks for.
+func TestPeerProof(t *testing.T) {
+	s := story(t)
+	folder := t.TempDir()
+	for _, name := range []string{"rehearsal.chlog", "rehearsal.chlog.sig"} {
+		text, err := os.ReadFile(filepath.Join("testdata", name))
+		if err != nil {
+			t.Fatal(err)
+		}
+		if err := os.WriteFile(filepath.Join(folder, name), text, 0o644); err != nil {
+			t.Fatal(err)
+		}
+	}
+	armoured, err := os.ReadFile(filepath.Join(folder, "rehearsal.chlog.sig"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	signature, err := signing.Parse(armoured)
+	if err != nil {
+		t.Fatal(err)
+	}
+	list := "NAME namespaces=\"chargehand\" " + signature.Key().AuthorizedKey() + "\n"
+	if err := os.WriteFile(filepath.Join(folder, "allowed_signers"), []byte(list), 0o644); err != nil {
+		t.Fatal(err)
+	}
+	var printed []string
+	for _, step := range s.proofSteps() {
+		for _, c := range step.commands {
+			if c.where != shell {
+				continue
+			}
+			printed = append(printed, run(t, "sh", "-c", "cd "+folder+" && "+c.text))
+		}
+	}
+	want := []string{s.Log.SHA256, s.Log.Head, "Good \"chargehand\" signature for NAME with ED25519 key " + s.Verification.Signatures[0].Key}
+	if len(printed) != len(want) {
+		t.Fatalf("the report prints %d commands, want %d", len(printed), len(want))
+	}
+	for i := range want {
+		if !strings.HasPrefix(printed[i], want[i]) {
+			t.Errorf("command %d prints %q, want %q", i+1, printed[i], want[i])
 		}
 	}
 }

@@ -123,6 +123,7 @@ func TestVisual(t *testing.T) {
 		{"plain ±5 %", "plain ±5 %"},
 		{"שלום", "םולש"},
 		{"name שלום 12", "name 12 םולש"},
+		{"שלום 12 ⟨U+6E21⟩", "12 םולש ⟨U+6E21⟩"},
 	} {
 		if got := visual(c.in); got != c.want {
 			t.Errorf("visual(%q) = %q, want %q", c.in, got, c.want)

@@ -26,7 +26,8 @@ func (s Story) proofSteps() []proofStep {
 	steps := []proofStep{{
 		words: fmt.Sprintf("The file is the one this report was made from if its SHA-256 is %s.", s.Log.SHA256),
 		commands: []command{
-			{shell, "sha256sum " + log + "        (macOS: shasum -a 256 " + log + ")"},
+			{shell, "sha256sum " + log},
+			{"macOS", "shasum -a 256 " + log},
 			{powershell, "Get-FileHash -Algorithm SHA256 " + log},
 		},
 	}, {

@@ -235,6 +235,30 @@ func (t *teller) finish(lines []chlog.Line) {
 	s.Stages = t.told()
 	s.table = window.Table(left)
 	t.judge()
+	s.fill()
+}
+
+// fill makes every list that has nothing an empty one, so that its JSON is [] and never null.
+func (s *Story) fill() {
+	s.Files, s.People, s.Instruments, s.Settings = some(s.Files), some(s.People), some(s.Instruments), some(s.Settings)
+	s.Desk, s.Measured, s.Captures, s.Stages = some(s.Desk), some(s.Measured), some(s.Captures), some(s.Stages)
+	s.Deviations, s.Punches, s.Notes, s.Attempts = some(s.Deviations), some(s.Punches), some(s.Notes), some(s.Attempts)
+	s.Links, s.Clocks, s.Hastened, s.Resumed = some(s.Links), some(s.Clocks), some(s.Hastened), some(s.Resumed)
+	s.Others, s.Unread, s.Site.Plates = some(s.Others), some(s.Unread), some(s.Site.Plates)
+	s.Log.Disturb = some(s.Log.Disturb)
+	for i := range s.Captures {
+		s.Captures[i].Signals = some(s.Captures[i].Signals)
+	}
+	for i := range s.Stages {
+		s.Stages[i].Events = some(s.Stages[i].Events)
+	}
+}
+
+func some[T any](list []T) []T {
+	if list == nil {
+		return []T{}
+	}
+	return list
 }
 
 // judge gives the verdict and what it rests on.

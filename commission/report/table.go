@@ -108,6 +108,9 @@ func (t *table) row(cells []cell, wide ...styled) {
 	below := t.wrap(cell{wide}, s.inner()-2*cellPad)
 	whole := height + heightOf(below) + 2*t.pad()
 	if !t.headed {
+		if whole+8 > s.room() && s.y > topMargin+8 { // the head does not stand alone
+			s.page()
+		}
 		t.head()
 	}
 	if whole > s.room() && s.y > topMargin+8 {
