@@ -60,6 +60,27 @@ func (r *rehearsal) stage(ctx context.Context, stage int) error {
 		if err := r.point(ctx, p); err != nil {
 			return fmt.Errorf("point %s: %w", p.ID, err)
 		}
+		if err := r.revisit(ctx, p); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// revisit goes again through what a failed point has opened before it, so that the rehearsal shows what the fault does
+// further on. What was operated or captured is not done twice.
+func (r *rehearsal) revisit(ctx context.Context, last walk.Point) error {
+	for _, p := range r.latest.State.Points() {
+		if p.ID == last.ID {
+			return nil
+		}
+		st := r.latest.State.Status(p.ID)
+		if _, operated := operations[p.ID]; operated || st.Reopened == 0 || st.Result != walk.Open {
+			continue
+		}
+		if err := r.point(ctx, p); err != nil {
+			return fmt.Errorf("point %s: %w", p.ID, err)
+		}
 	}
 	return nil
 }
