@@ -6,6 +6,7 @@ import (
 	"testing"
 
 	"chargehand/commission/capture"
+	"chargehand/commission/finding"
 	"chargehand/commission/signal"
 )
 
@@ -142,5 +143,19 @@ func TestClean(t *testing.T) {
 	}
 	if got := clean("渡Ω", draws(regular)); got != "⟨U+6E21⟩Ω" {
 		t.Errorf("clean for the regular face = %q, want the glyph it lacks by its number", got)
+	}
+}
+
+// TestSharePlot draws one measured share inside its limits, in per cent.
+func TestSharePlot(t *testing.T) {
+	low, high := -0.1, 0.1
+	s := Story{Measured: []Finding{{Finding: finding.Finding{ID: "measured.share", Subject: "aft string", Unit: "1", State: finding.Finite,
+		Value: finding.Value{Low: 0.01, Nominal: 0.02, High: 0.03}, Limit: finding.Limit{Low: &low, High: &high}, Verdict: finding.Pass}}}}
+	p := s.sharePlot()
+	if p.IsEmpty() || p.Y.Low > -10 || p.Y.High < 10 || len(p.Caption) != 1 {
+		t.Errorf("sharePlot = %g … %g %%, caption %q, want both limits of 10 %% on it and one sentence", p.Y.Low, p.Y.High, p.Caption)
+	}
+	if at := layer(t, p, "measured with its uncertainty").Y; at[0] != 1 || at[1] != 3 {
+		t.Errorf("the share is drawn from %g to %g %%, want 1 to 3", at[0], at[1])
 	}
 }
