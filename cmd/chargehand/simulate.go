@@ -4,6 +4,8 @@ import (
 	"bufio"
 	"context"
 	"fmt"
+	"net"
+	"net/netip"
 	"strings"
 
 	"github.com/spf13/cobra"
@@ -37,7 +39,20 @@ interrupted. Any Modbus client can read it. What the operator of the plant would
 	return cmd
 }
 
+// isLoopback tells whether an address can be reached from this computer only.
+func isLoopback(address string) bool {
+	host, _, err := net.SplitHostPort(address)
+	if err != nil {
+		return false
+	}
+	ip, err := netip.ParseAddr(host)
+	return host == "localhost" || err == nil && ip.IsLoopback()
+}
+
 func (a *app) simulate(ctx context.Context, file string, o simulateOptions) error {
+	if !isLoopback(o.listen) {
+		return usageError{fmt.Errorf("--listen %s: the simulated converter listens on a loopback address only, such as 127.0.0.1:1502", o.listen)}
+	}
 	p, err := a.papers(file)
 	if err != nil {
 		return err
