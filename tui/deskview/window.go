@@ -16,7 +16,7 @@ import (
 func (m Model) windowChart() chart.Chart {
 	picture := chart.Chart{Title: "window: source voltage below the bus", Y: chart.Scale{Label: "voltage", Unit: "V"},
 		X: chart.Scale{Label: "state of charge", Unit: "%"}, Cursor: m.cursor}
-	rest, band, low := chart.Series{Name: "at rest"}, chart.Band{Name: "loaded"}, chart.Series{Name: "loaded"}
+	rest, band, low := chart.Series{Name: "at rest"}, chart.Band{Name: "loaded"}, chart.Series{Name: "nominal"}
 	for _, row := range window.Table(m.site) {
 		x := 100 * float64(row.StateOfCharge)
 		if math.IsNaN(x) {

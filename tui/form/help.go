@@ -56,8 +56,12 @@ func HelpPage(t theme.Theme, width, height int, title, purpose string, groups []
 		y++
 	}
 	y++
-	const column = 40
+	const column = 38
 	columns := max(1, min(width/column, len(groups)))
+	gap := 1
+	if all := count(groups); (all+len(groups)+columns-1)/columns > height-y {
+		gap = 0
+	}
 	next := make([]int, columns)
 	for i := range next {
 		next[i] = y
@@ -73,9 +77,17 @@ func HelpPage(t theme.Theme, width, height int, title, purpose string, groups []
 			c.Within(x+12, next[to], column-13, k.Help().Desc, theme.Text)
 			next[to]++
 		}
-		next[to]++
+		next[to] += gap
 	}
 	return c.String()
+}
+
+func count(groups [][]key.Binding) int {
+	n := 0
+	for _, group := range groups {
+		n += len(group)
+	}
+	return n
 }
 
 func shortest(next []int) int {

@@ -20,6 +20,9 @@ func (m Model) farView() string {
 	if m.snapshot.State.IsRehearsal() {
 		face.Banner = "REHEARSAL"
 	}
+	if alarm := m.Alarm(); alarm != "" {
+		face.Banner = alarm
+	}
 	face.Figures = m.figures(p)
 	face.Countdown = m.countdown()
 	return face.View(m.theme, m.width, m.height)

@@ -221,6 +221,9 @@ func (m Model) pressed(msg tea.KeyMsg) (Model, tea.Cmd) {
 		return m, nil
 	}
 	k := m.keys
+	if m.far && !key.Matches(msg, k.Far, k.Back, k.Bell, k.Stop, k.Operate) {
+		return m, nil // nothing is passed or signed that cannot be read
+	}
 	switch {
 	case key.Matches(msg, k.Open):
 		return m.enter()

@@ -6,6 +6,7 @@ import (
 	"time"
 
 	"github.com/charmbracelet/bubbles/key"
+	"github.com/charmbracelet/x/ansi"
 
 	"chargehand/commission/signal"
 	"chargehand/commission/walk"
@@ -44,7 +45,7 @@ func (m Model) frame(body []string) string {
 	for len(rows) < m.height-1 {
 		rows = append(rows, "")
 	}
-	rows = append(rows[:m.height-1], m.keyLine())
+	rows = append(rows[:max(m.height-1, 0)], m.keyLine())
 	for i, row := range rows {
 		rows[i] = m.theme.Clip(row, m.width)
 	}
@@ -114,7 +115,7 @@ func (m Model) body() []string {
 	rule := m.rule()
 	rows := append([]string{rule}, drawing...)
 	rows = append(rows, rule)
-	height := m.height - len(rows) - 3 // title, message, keys
+	height := max(m.height-len(rows)-3, 0) // title, message, keys
 	left := m.stages(height)
 	right := m.panel(m.panelWidth(), height)
 	bar := m.theme.Paint(theme.Wire, m.theme.Pick("│", "|"))
@@ -254,7 +255,7 @@ func (m Model) pointSign(p walk.Point) string {
 // messageLine is what was recorded or refused last; an alarm stands before all.
 func (m Model) messageLine() string {
 	if m.snapshot.Failure != nil {
-		return m.theme.Paint(theme.Alarm, " NOTHING IS RECORDED (g: go on elsewhere): "+theme.Clean(m.snapshot.Failure.Error())+" ")
+		return m.theme.Paint(theme.Alarm, " NOTHING IS RECORDED, g goes on elsewhere: "+theme.Clean(strings.TrimPrefix(m.snapshot.Failure.Error(), "the log takes nothing more: "))+" ")
 	}
 	if c := m.snapshot.Capture; c != nil && c.OpenNow != "" {
 		return m.theme.Paint(theme.Alarm, " OPEN THE PRE-CHARGE NOW: "+theme.Clean(c.OpenNow)+" ")
@@ -347,11 +348,9 @@ func (m Model) hints(pairs ...string) string {
 }
 
 func (m Model) explanation() []string {
-	const purpose = "The walk: twelve stages from the permit to the signature. The drawing shows the plant as the device reports it: a " +
-		"reading that is too old loses its number, one with a question mark has not been compared with a known value yet. Enter " +
-		"always does the next thing at the open point; what that is stands at the foot. Nothing is lost by Esc, a resize, a " +
-		"closed terminal or a power cut."
-	page := form.HelpPage(m.theme, m.width-2, m.height-2, "This screen", purpose, m.keys.groups(m.session.Operator != nil))
+	const purpose = "Enter does the next thing at the open point; what that is stands at the foot. A reading that is too old loses its " +
+		"number; one with a question mark has not been compared with a known value yet. Nothing is lost by Esc, a resize or a power cut."
+	page := form.HelpPage(m.theme, m.width-2, m.height-2, "The walk, from the permit to the signature", purpose, m.keys.groups(m.session.Operator != nil))
 	rows := strings.Split(page, "\n")
 	for i := range rows {
 		rows[i] = " " + rows[i]
@@ -388,9 +387,9 @@ func at(rows []string, i int) string {
 
 func cut(rows []string, height int) []string { return rows[:min(len(rows), max(height, 0))] }
 
-// wrap breaks a text at spaces so that no line is wider than width.
+// wrap breaks a text at spaces so that no line is wider than width; a word that is wider is broken anywhere.
 func wrap(text string, width int) []string {
-	if width < 1 {
+	if width < 2 { // a character may take two columns
 		return nil
 	}
 	var lines []string
@@ -400,11 +399,8 @@ func wrap(text string, width int) []string {
 			if line != "" {
 				lines, line = append(lines, line), ""
 			}
-			head := theme.Theme{}.Clip(word, width)
-			if head == "" {
-				return lines
-			}
-			lines, word = append(lines, head), strings.TrimPrefix(word, head)
+			head := ansi.Truncate(word, width, "")
+			lines, word = append(lines, head), word[len(head):]
 		}
 		switch {
 		case line == "":
