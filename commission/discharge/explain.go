@@ -8,6 +8,7 @@ import (
 )
 
 const (
+	formulaTime = "t = R_b*(C_l*ln(V_1/E) + (C_l + C_f)*ln(E/V_2))"
 	validEnergy = "all banks, isolated ones included, at the highest steady bus voltage"
 	validTime   = "no load, every bleeder whole, converter stopped and every infeed off; a calculated time never stands for absence of voltage"
 )
@@ -48,23 +49,31 @@ func (a *assessment) explainEnergy() *finding.Explanation {
 }
 
 func (a *assessment) explainTime() *finding.Explanation {
-	w := a.explain("t = R_b*(C_l*ln(V_1/E) + (C_l + C_f)*ln(E/V_2))", basisTime, validTime)
+	if a.from <= a.touch() {
+		return a.explainNoTime()
+	}
+	w := a.explain(formulaTime, basisTime, validTime)
 	w.Given("V_2", "touch-safe voltage", "V", float64(a.touch()))
 	conductance := 0.0
 	if r := a.axes[axisBleeder].Nominal; r > 0 {
 		conductance = 1 / r
 	}
 	w.Given("G_b", "conductance of all bleeders in parallel", "1/Ω", conductance)
-	joint := "min(V_1, max(E, V_2))"
-	if a.axes[axisFilter].Nominal == 0 {
-		joint = "V_1"
-	}
-	from, filter := float64(a.from), a.axes[axisFilter].Nominal
-	level := from
-	if filter > 0 {
-		level = math.Min(from, math.Max(float64(a.site.Source.HighestRest()), float64(a.touch())))
+	joint, level := "V_1", float64(a.from)
+	if a.axes[axisFilter].Nominal > 0 {
+		joint = "min(V_1, max(E, V_2))"
+		level = math.Min(level, math.Max(float64(a.site.Source.HighestRest()), float64(a.touch())))
 	}
 	w.Step("V_j", joint, "V", level)
 	w.Step("t", "(C_l*ln(V_1/V_j) + (C_l + C_f)*ln(V_j/V_2))/G_b", "s", a.spreads[ofTime].Nominal)
+	return a.over(w, a.spreads[ofTime])
+}
+
+// explainNoTime is the working where the bus never stands above the touch-safe voltage: the formula, which is that of a
+// fall, would give a time below 0.
+func (a *assessment) explainNoTime() *finding.Explanation {
+	w := a.explain(formulaTime, basisTime, "V_1 does not stand above V_2, so there is nothing to wait for; "+validTime)
+	w.Given("V_2", "touch-safe voltage", "V", float64(a.touch()))
+	w.Step("t", "0", "s", a.spreads[ofTime].Nominal)
 	return a.over(w, a.spreads[ofTime])
 }

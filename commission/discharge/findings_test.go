@@ -9,6 +9,7 @@ import (
 
 	"chargehand/commission/corner/cornertest"
 	"chargehand/commission/finding"
+	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/quantity"
 	"chargehand/commission/site"
 )
@@ -166,5 +167,26 @@ func TestPredictionNamesWhatItLacks(t *testing.T) {
 	s.Bus.TouchSafe = nil
 	if p := Predict(s, quantity.Exactly(quantity.Voltage(900))); !slices.Contains(p.Missing, "bus.touch_safe.voltage") || p.Band != nil {
 		t.Errorf("Predict without a touch-safe voltage lacks %v, want bus.touch_safe.voltage and no band", p.Missing)
+	}
+}
+
+// Where the touch-safe voltage stands at or above the bus there is nothing to wait for, with a bleeder or without, and the
+// printed calculation says so: no time below 0.
+func TestTouchSafeBusTakesNoTime(t *testing.T) {
+	for _, name := range []string{"wagtail", "nightjar"} {
+		s := load(t, name)
+		at := float64(Highest(s))
+		for _, touch := range []float64{at, 1.5 * at} {
+			safe := *s.Bus.TouchSafe
+			set(&safe.Voltage, touch)
+			s.Bus.TouchSafe = &safe
+			f := touchSafe(t, s)
+			if want := finding.Exactly(0); f.Value != want || f.Verdict != finding.Pass {
+				t.Errorf("%s touch-safe at %v V = %v, %s, want 0 s, pass", name, touch, f.Value, f.Verdict)
+			}
+			if err := findingtest.Redo(f.Explanation, 0); err != nil {
+				t.Errorf("%s touch-safe at %v V: Redo = %v, want nil", name, touch, err)
+			}
+		}
 	}
 }
