@@ -166,7 +166,7 @@ func moves(t *testing.T, original string, p place, before []string) (moved []str
 	if err != nil {
 		t.Fatalf("%s: %q: %v", p.key, number, err)
 	}
-	candidates := []string{short(v * 1.05), short(v * 0.95), short(v * 0.9), short(v + 5)}
+	candidates := []string{short(v * 1.05), short(v * 0.95), short(v * 0.9), short(v + 5), short(v * 1.25)} // the last is the next size of a cable
 	if bare := original[p.start-1] != '"' && !strings.HasSuffix(p.key, "±"); bare { // a count, or the class of a conductor
 		candidates = []string{short(v + 1), short(v - 1), "2"}
 	}

@@ -6,6 +6,7 @@ import (
 
 	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/quantity"
+	"chargehand/commission/site"
 )
 
 const publicCases = "../../testdata/public-cases.json"
@@ -148,5 +149,20 @@ func TestConductorResistance(t *testing.T) {
 	}
 	if _, ok := ConductorResistance(95e-6, 1, 20); ok {
 		t.Error("ConductorResistance(class 1) = a figure, want none")
+	}
+}
+
+// Every size that a site file may name has its resistance in both classes, and no other.
+func TestConductorsAreTheSectionsOfASite(t *testing.T) {
+	sections := site.StandardSections()
+	if len(sections) != len(conductors) {
+		t.Errorf("conductors = %d, want the %d sections of a site", len(conductors), len(sections))
+	}
+	for _, section := range sections {
+		for _, class := range []int{2, 5} {
+			if _, ok := ConductorResistance(section, class, 20); !ok {
+				t.Errorf("ConductorResistance(%v, class %d) = none, want one: a site file may name it", section, class)
+			}
+		}
 	}
 }

@@ -28,6 +28,9 @@ func TestEveryQuantityIsKept(t *testing.T) {
 		if number == "100" && strings.HasPrefix(wagtail[m[8]:], " %") {
 			more = "99.9" // a state of charge
 		}
+		if strings.HasPrefix(wagtail[m[8]:], " mm²") {
+			more = "95" // the next size of the standard
+		}
 		text := wagtail[:m[6]] + more + wagtail[m[7]:]
 		s, _, err := Read("x", []byte(text))
 		if err != nil {

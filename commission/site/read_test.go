@@ -254,6 +254,10 @@ func TestReadRefuses(t *testing.T) {
 droop          = "3 %"                  # of`, `setpoint       = "1030 V"
 droop          = ‸"0 %"                  # of`, `"0 %"`, "above 0"},
 
+		{"section between two sizes", `"18 m", section = "120 mm²"`, `"18 m", section = ‸"100 mm²"`, `"100 mm²"`, "nearest are 95 mm² and 120 mm²"},
+		{"section below the smallest", `"18 m", section = "120 mm²"`, `"18 m", section = ‸"6 mm²"`, `"6 mm²"`, "smallest is 10 mm²"},
+		{"section above the largest", `"18 m", section = "120 mm²"`, `"18 m", section = ‸"500 mm²"`, `"500 mm²"`, "largest is 400 mm²"},
+
 		// keys
 		{"unknown key", "capacitor_rating   = ", "‸capacitor_ratting   = ", "the key capacitor_ratting in [bus]", "capacitor_rating; or the file is for a newer version"},
 		{"Name beside name", "reference = \"WAG-017\"", "reference = \"WAG-017\"\n‸Name = \"other\"", "the key Name in [site]", "lower case exactly: name"},

@@ -84,6 +84,7 @@ func readCable(t *document.Table) *Cable {
 	t.Whole("class", &c.Class, 2, 5)
 	document.Quantity(t, "temperature", &c.Temperature, degrees("60 °C"))
 	t.Require(`length = "18 m"`, `section = "120 mm²"`)
+	checkSection(t, c.Section)
 	if c.Class != 2 && c.Class != 5 {
 		t.Refuse("class", "IEC 60228 class 2 (stranded) or 5 (flexible)", "class = 5")
 	}
