@@ -8,6 +8,7 @@ import (
 
 	"chargehand/commission/finding"
 	"chargehand/commission/fit"
+	"chargehand/commission/signal"
 )
 
 // ranked orders causes by score; equal scores keep their order.
@@ -42,6 +43,9 @@ func (f *charge) sourceGone() []finding.Cause {
 	if level < -0.1*lowest {
 		return []finding.Cause{because("source-reversed", 0.97, fmt.Sprintf("source voltage %s, bus %s", number(level, "V"), number(f.v0, "V")))}
 	}
+	if i := f.during(); level < 0.1*lowest && f.rise < 0.1*lowest && f.current.ok && i < -0.2*lowest/f.r.nominal { // an unsigned register shows no negative voltage
+		return []finding.Cause{because("source-reversed", 0.94, fmt.Sprintf("source current %s with the pre-charge closed, source voltage %s: it flows through the lower diodes", number(i, "A"), number(level, "V")))}
+	}
 	rest := f.source.between(math.Inf(-1), 0)
 	if rest.ok && fit.Median(rest.v) < 0.2*lowest && f.source.greatest() < 0.3*lowest && f.rise < 0.1*lowest {
 		return together(0.9, "the voltage before and after the fuse", []string{fmt.Sprintf("source voltage %s before the command and the bus does not rise", number(fit.Median(rest.v), "V"))}, "fuse-open")
@@ -51,6 +55,9 @@ func (f *charge) sourceGone() []finding.Cause {
 
 // beforeCommand: the bus was not dead when the command came.
 func (f *charge) beforeCommand() []finding.Cause {
+	if found := f.closedFromTheStart(); found != nil {
+		return found
+	}
 	scale := f.scale()
 	before := f.bus.between(math.Inf(-1), 0)
 	if !before.ok || f.v0 < math.Max(0.05*scale, f.busError) || f.isOffset() {
@@ -96,6 +103,32 @@ func (f *charge) beforeCommand() []finding.Cause {
 		return []finding.Cause{because("bus-still-charged", 0.9, evidence...), because("bus-live", 0.4, evidence...)}
 	}
 	return together(0.7, "the bus over time with the source isolated: falling it is still charged, standing it is live", evidence, "bus-live", "bus-still-charged")
+}
+
+// closedFromTheStart: the record begins with a contact that reports closed, so nothing stands before it. The bus is farther
+// than a charge begun just then could be.
+func (f *charge) closedFromTheStart() []finding.Cause {
+	reported := func(contact trace) bool { return contact.ok && contact.v[0] > 0.5 }
+	if len(f.bus.v) == 0 || f.bus.t[0] < -0.02 || !f.source.ok {
+		return nil
+	}
+	first := f.bus.v[0]
+	errors := f.busError + f.sourceError + 0.01*f.scale()
+	evidence := []string{fmt.Sprintf("bus at %s, source at %s in the first sample", number(first, "V"), number(f.source.v[0], "V"))}
+	across := first
+	if f.star.ok {
+		across = f.star.v[0]
+	}
+	if reported(f.bypass) && first > 0.1*f.scale() && math.Abs(f.source.v[0]-across) < errors {
+		return []finding.Cause{because("bypass-welded", 0.94, append(evidence, "the bypass reports closed from the first sample on")...), because("contact-report-false", 0.3, evidence...)}
+	}
+	const lately = 0.25 // s, at most since a command that the record missed
+	started := f.scale() * (1 - math.Exp(-lately/f.tau().low))
+	if reported(f.precharge) && math.IsNaN(f.opened(f.precharge)) && first > started+errors && first < f.emf+errors {
+		return []finding.Cause{because("precharge-welded", 0.9, append(evidence, "the pre-charge contactor reports closed from the first sample to the last")...),
+			because("bus-still-charged", 0.4, evidence...)}
+	}
+	return nil
 }
 
 // isOffset tells whether what the bus reads before the command is the zero error of its sensor: it stands still, and the
@@ -298,7 +331,11 @@ func (f *charge) falseReport() []finding.Cause {
 	if !across.ok {
 		across, what = f.bus, "bus"
 	}
-	part := across.between(at+2*f.refresh+0.1, at+2*f.refresh+0.1+0.5*f.tau().nominal)
+	to := at + 2*f.refresh + 0.1 + 0.5*f.tau().nominal
+	if opened := f.opened(f.bypass); opened < to+0.1 {
+		to = opened - 0.1
+	}
+	part := across.between(at+2*f.refresh+0.1, to)
 	if !part.ok {
 		return nil
 	}
@@ -314,6 +351,7 @@ func (f *charge) sourceLeft() []finding.Cause {
 	if !f.source.ok || !(f.emf > 0) {
 		return nil
 	}
+	const stays = 0.3 // s; the inrush of an early bypass is over before
 	sag := 0.05*f.emf + 3*f.scale()/f.r.nominal*f.ri.high
 	if f.cSource > 0 {
 		sag += f.emf * f.c.high / f.cSource
@@ -322,7 +360,7 @@ func (f *charge) sourceLeft() []finding.Cause {
 		if t < 0.02 || i+3 >= len(f.source.t) {
 			continue
 		}
-		if fit.Median(f.source.v[i:i+4]) < f.emf-sag && f.bus.at(t) < 0.97*f.emf {
+		if fit.Median(f.source.v[i:i+4]) < f.emf-sag && fit.Median(f.source.between(t, t+stays).v) < f.emf-sag && f.bus.at(t) < 0.97*f.emf {
 			return []finding.Cause{because("source-opens", 0.93, fmt.Sprintf("source voltage fell from %s to %s at %s, bus at %s", number(f.emf, "V"), number(f.source.v[i], "V"), number(t, "s"), number(f.bus.at(t), "V")))}
 		}
 	}
@@ -412,7 +450,7 @@ func (f *charge) withCurrent(ohms measurement) []finding.Cause {
 	if haveFarads {
 		evidence = append(evidence, fmt.Sprintf("capacitance %s, %s on paper", number(farads.value, "F"), number(f.c.nominal, "F")))
 	}
-	if haveFarads && r != 0 && math.Abs(ratioR*ratioC-1) < 0.12 && math.Abs(ratioC-1) > 0.08 && f.tau().holds(f.fit.Tau, 0) && f.current.ok && c*r <= 0 {
+	if haveFarads && r != 0 && math.Abs(ratioR*ratioC-1) < 0.12 && math.Abs(ratioC-1) > 0.08 && f.tau().holds(f.fit.Tau, 0) && f.current.ok && c*r <= 0 && !f.currentsAgree() {
 		return []finding.Cause{because("sensor-gain", 0.85, append(evidence, fmt.Sprintf("time constant as predicted: the current reads %.2f of what flows", 1/ratioR))...)}
 	}
 	var found []finding.Cause
@@ -429,6 +467,17 @@ func (f *charge) withCurrent(ohms measurement) []finding.Cause {
 		found = append(found, because("bank-missing", 0.91, append(evidence, f.bankWords(farads.value))...))
 	}
 	return found
+}
+
+// currentsAgree tells whether the phases' own transducers add up to the source current: then its gain is not what is wrong.
+func (f *charge) currentsAgree() bool {
+	if len(f.phaseCurrents) != f.phases || !traceOf(f.capture, signal.SourceCurrent).ok {
+		return false
+	}
+	to := math.Min(f.end, f.start+f.tau().nominal)
+	phases := fit.Average(sum(f.phaseCurrents).between(f.start, to).v).Mean
+	source := fit.Average(f.current.between(f.start, to).v).Mean
+	return math.Abs(phases/source-1) < 0.06
 }
 
 // withinTolerances: the time constant proves a fault, and resistance and capacitance, known less well, both lie within what

@@ -24,7 +24,7 @@ func (f *charge) kindOfLoad(evidence []string) []finding.Cause {
 	if late.ssr < 0.65*resistive.ssr {
 		at = late.from
 	}
-	if at < 0.3*f.scale() { // lower down a power and a resistance make the same curve
+	if at < 0.38*f.scale() { // lower down a power and a resistance make the same curve
 		return []finding.Cause{because("load-left-on", 0.93, evidence...)}
 	}
 	evidence = append(evidence, fmt.Sprintf("until %s the curve is that of an unloaded bus, from there about %s are drawn", number(at, "V"), number(late.power, "W")))

@@ -132,6 +132,10 @@ func (f *charge) findStep() {
 	}
 }
 
+// contactLead is how long before its report, or before the step it makes, a closing contact may already have let its inrush
+// through: auxiliary contacts follow by some milliseconds (common practice), and registers come in whole images.
+const contactLead = 0.1 // s
+
 // window is the stretch that the fit may use: from the first sample off the start level to the last before the step, the
 // bypass's report or the opening of the pre-charge.
 func (f *charge) window() {
@@ -140,12 +144,14 @@ func (f *charge) window() {
 	if at := f.bus.firstAt(off, 0); !math.IsNaN(at) {
 		f.start = at
 	}
+	closing := math.Inf(1)
 	if f.step.found {
-		f.end = math.Min(f.end, f.step.at)
+		closing = f.step.at
 	}
 	if at := f.bypass.firstAt(0.5, 0); !math.IsNaN(at) && !f.reportsBefore() {
-		f.end = math.Min(f.end, at-f.refresh)
+		closing = math.Min(closing, at)
 	}
+	f.end = math.Min(f.end, closing-math.Max(contactLead, 1.5*f.refresh))
 	if opened := f.opened(f.precharge); !math.IsNaN(opened) {
 		f.end = math.Min(f.end, opened-f.refresh)
 	}

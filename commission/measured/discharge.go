@@ -257,10 +257,13 @@ func (f *fall) judged(out finding.Finding) finding.Finding {
 	if f.p > 0 {
 		out.Parts = append(out.Parts, finding.Part{Name: "auxiliary power", Unit: "W", Value: finding.Exactly(f.power)})
 	}
-	if f.filterGone() {
+	if words := f.starFalls(); words != "" || f.filterGone() {
+		if words == "" {
+			words = f.filterWords()
+		}
 		out.Verdict = finding.Worst(out.Verdict, finding.Fail)
-		out.Cause = []finding.Cause{because("filter-missing", 0.85, f.filterWords())}
-		out.Because = append(out.Because, f.filterWords())
+		out.Cause = []finding.Cause{because("filter-missing", 0.85, words)}
+		out.Because = append(out.Because, words)
 	}
 	if verdict == finding.Fail {
 		out.Cause = ranked(append(out.Cause, f.slopeCauses()...))
@@ -407,6 +410,20 @@ func (f *fall) filterGone() bool {
 	const zeroError = 0.015 // what the bus sensor's offset may make of the share
 	U := fit.Coverage(f.filter.freedom)*f.filter.u + zeroError
 	return wanted > 0.04 && U < 0.5*wanted && math.Abs(f.filter.value) < 0.6*wanted && f.filter.value+U < 0.7*wanted
+}
+
+// starFalls says so where the star point loses its voltage at once when the contactors have opened, although a filter there
+// would hold it until the bus has come down to it; "" where it does not.
+func (f *fall) starFalls() string {
+	if f.paper.filter.nominal == 0 || !f.star.ok {
+		return ""
+	}
+	held := f.star.between(math.Inf(-1), math.Inf(1)).v[0]
+	after := f.star.between(0.02*f.predictedTau().nominal, 0.12*f.predictedTau().nominal)
+	if held < 0.3*f.first || !after.ok || fit.Median(after.v) > 0.3*held {
+		return ""
+	}
+	return fmt.Sprintf("the star point fell from %s to %s at once, a filter would hold it", number(held, "V"), number(fit.Median(after.v), "V"))
 }
 
 func (f *fall) filterWords() string {

@@ -30,7 +30,7 @@ func readingCauses(p paper, c capture.Capture) []finding.Cause {
 var codes = []uint16{0x7FFF, 0x8000, 0xFFFF}
 
 // codesRead: one analogue signal is such a code in every sample.
-func codesRead(_ paper, c capture.Capture) []finding.Cause {
+func codesRead(p paper, c capture.Capture) []finding.Cause {
 	for i, ch := range c.Channels {
 		if ch.Unit == "" || ch.Name.IsState() {
 			continue
@@ -49,6 +49,9 @@ func codesRead(_ paper, c capture.Capture) []finding.Cause {
 			if slices.Contains(codes, raw[0]) && (len(raw) == 1 || raw[1] == raw[0] || raw[1] == 0) {
 				n, code = n+1, raw[0]
 			}
+		}
+		if ch.Name == signal.SourceVoltage && code == 0xFFFF && traceOf(c, signal.BusVoltage).greatest() > 5*float64(p.site.Source.HighestRest()) {
+			continue // the bus reads far too high as well: a register at the end of its range
 		}
 		if all >= 5 && n > all*9/10 && constant(c, i) {
 			return []finding.Cause{because("missing-code-read", 0.93, fmt.Sprintf("%s is the word %04X in %d of %d samples: %s", ch.Name, code, n, all, number(c.Samples[0].Values[i].V, ch.Unit)))}
@@ -262,12 +265,15 @@ func repeated(_ paper, c capture.Capture) []finding.Cause {
 	from := c.Samples[0]
 	last := from
 	alike := 1 // samples in the stretch
-	var many []bool
+	var many []int
 	for _, s := range c.Samples[1:] {
+		if !carries(s) {
+			continue
+		}
 		if same(s, last) {
 			alike++
 		} else {
-			stands, many = append(stands, (last.At-from.At).Seconds()), append(many, alike >= 5)
+			stands, many = append(stands, (last.At-from.At).Seconds()), append(many, alike)
 			from, alike = s, 1
 		}
 		last = s
@@ -277,10 +283,14 @@ func repeated(_ paper, c capture.Capture) []finding.Cause {
 	if len(stands) < 5 {
 		return nil
 	}
+	most := 0
 	for i, d := range stands {
-		if many[i] && d > 0.35 && d > 6*math.Max(usual, 0.02) {
-			long = append(long, d)
+		if many[i] >= 5 && d > 0.35 && d > 6*math.Max(usual, 0.02) {
+			long, most = append(long, d), max(most, many[i])
 		}
+	}
+	if len(long) == 1 && most < 10 { // one stall of the polling is a gap, not a cause
+		long = nil
 	}
 	if alike >= 8 && lastStand > 0.6 && lastStand > 8*math.Max(usual, 0.02) && lastStand > 0.15*(last.At-c.Samples[0].At).Seconds() && len(long) == 0 {
 		return []finding.Cause{because("readings-frozen", 0.9, fmt.Sprintf("all %d signals stand still for the last %s, noise included", analogue, number(lastStand, "s"))), because("gateway-repeats-old", 0.5)}
@@ -290,6 +300,11 @@ func repeated(_ paper, c capture.Capture) []finding.Cause {
 	}
 	return []finding.Cause{because("gateway-repeats-old", 0.9, fmt.Sprintf("all %d signals stand still %d times for up to %s and then leap on, %s is usual", analogue, len(long), number(slices.Max(long), "s"), number(usual, "s"))),
 		because("readings-slow", 0.4)}
+}
+
+// carries tells whether a sample has any value: where the link is down none has, and that is no standing still.
+func carries(s capture.Sample) bool {
+	return slices.ContainsFunc(s.Values, func(v capture.Value) bool { return v.OK })
 }
 
 func same(a, b capture.Sample) bool {
@@ -338,11 +353,11 @@ func standstill(c capture.Capture) float64 {
 	var stands []float64
 	from := c.Samples[0]
 	for _, s := range c.Samples[1:] {
-		if !same(s, from) {
+		if carries(s) && !same(s, from) {
 			stands, from = append(stands, (s.At-from.At).Seconds()), s
 		}
 	}
-	if len(stands) < 4 {
+	if len(stands) < 2 {
 		return 0
 	}
 	return fit.Median(stands)
@@ -392,7 +407,11 @@ func dropped(_ paper, c capture.Capture) []finding.Cause {
 			total, n, longest = total+d, n+1, math.Max(longest, d)
 		}
 	}
-	if n == 0 {
+	single := 0.6 // s; one stall of the polling is a gap, not a cause
+	if c.Kind == capture.Discharge {
+		single = 3 * least
+	}
+	if n == 0 || n == 1 && longest < single {
 		return nil
 	}
 	return []finding.Cause{because("link-drops", 0.88, fmt.Sprintf("no answer %d times, up to %s, together %s", n, number(longest, "s"), number(total, "s")))}
