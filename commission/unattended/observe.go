@@ -3,6 +3,7 @@ package unattended
 import (
 	"context"
 	"fmt"
+	"math"
 	"time"
 
 	"chargehand/commission"
@@ -52,8 +53,12 @@ type observer struct{ hand }
 
 // watch arms one capture and waits for its end.
 func (o *observer) watch(ctx context.Context, kind capture.Kind) error {
-	if kind == capture.Droop {
-		if _, err := o.await(ctx, 1<<62, isBoosting); err != nil {
+	switch {
+	case kind == capture.Precharge && isTied(o.latest):
+		o.say("the bypass is closed already: the charge was before the watch")
+		return nil
+	case kind == capture.Droop:
+		if _, err := o.await(ctx, ever, isBoosting); err != nil {
 			return err
 		}
 	}
@@ -66,7 +71,7 @@ func (o *observer) watch(ctx context.Context, kind capture.Kind) error {
 	}
 	o.say("armed: " + p.Title)
 	alarmed := false
-	_, err := o.await(ctx, 1<<62, func(s commission.Snapshot) bool {
+	_, err := o.await(ctx, ever, func(s commission.Snapshot) bool {
 		if s.Capture != nil && s.Capture.OpenNow != "" && !alarmed {
 			alarmed = true
 			o.say("OPEN NOW: " + s.Capture.OpenNow)
@@ -77,6 +82,15 @@ func (o *observer) watch(ctx context.Context, kind capture.Kind) error {
 		err = o.submit(ctx, walk.StopCapture{})
 	}
 	return err
+}
+
+// ever is how long a plant that others operate is waited for: the caller's context and limit end the watch.
+const ever = time.Duration(math.MaxInt64)
+
+// isTied tells whether the bypass is closed by the device's own word.
+func isTied(s commission.Snapshot) bool {
+	bypass := s.Reading(signal.BypassClosed)
+	return bypass.Quality.HasValue() && bypass.Value != 0
 }
 
 // isBoosting tells whether the converter holds the bus: by its own word, or by a bus that stands above the source.
