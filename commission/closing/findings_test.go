@@ -6,7 +6,6 @@ import (
 	"strings"
 	"testing"
 
-	"chargehand/commission/corner/cornertest"
 	"chargehand/commission/finding"
 	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/quantity"
@@ -78,7 +77,7 @@ func TestRemediesPassAndLessDoesNot(t *testing.T) {
 		set(&s.Precharge.ClosingDifference, v)
 		return s
 	}
-	whole := load(t, "wagtail")
+	whole := findingtest.Load(t, "wagtail")
 	short := whole
 	set(&short.Precharge.MinimumTime, 0.2)
 	for _, c := range []struct {
@@ -118,7 +117,7 @@ func TestRemediesPassAndLessDoesNot(t *testing.T) {
 // Where a third of the inrush exceeds the saturation, the value stays and the verdict uses the bound with the source
 // inductance alone, which is never above u⁄R.
 func TestSaturatedChokesAreJudgedByTheUpperBound(t *testing.T) {
-	s := load(t, "wagtail")
+	s := findingtest.Load(t, "wagtail")
 	s.Converter.Filter = nil // whose own loop is the larger one otherwise
 	linear := find(t, s, "closing.inrush", "")
 	saturating := withConverter(s, func(c *site.Converter) { set(&c.ChokeSaturation, 40) })
@@ -145,7 +144,7 @@ func TestSaturatedChokesAreJudgedByTheUpperBound(t *testing.T) {
 // A filter before the bypass is charged by the source switch: a second inrush without a limit, and no longer in the bypass's
 // loops. E·√(C⁄L)·e^(−α·t_p) by hand for 821.7 V, 64 mΩ, 6.04 µH, 0.8 mF.
 func TestFilterBeforeTheBypass(t *testing.T) {
-	s := withConverter(load(t, "wagtail"), func(c *site.Converter) { c.Filter.Position = site.AtSource })
+	s := withConverter(findingtest.Load(t, "wagtail"), func(c *site.Converter) { c.Filter.Position = site.AtSource })
 	f := find(t, s, "closing.inrush", "filter")
 	l, c, r := 6.04e-6, 0.8e-3, 0.064
 	alpha := r / (2 * l)
@@ -157,14 +156,14 @@ func TestFilterBeforeTheBypass(t *testing.T) {
 	if g := find(t, s, "closing.live-bus", ""); g.Verdict != finding.Info || g.State != finding.None {
 		t.Errorf("closing.live-bus = %s, %s, want info and no value: nothing behind the resistor to charge", g.Verdict, g.State)
 	}
-	bare := withConverter(load(t, "wagtail"), func(c *site.Converter) { c.Filter = nil })
+	bare := withConverter(findingtest.Load(t, "wagtail"), func(c *site.Converter) { c.Filter = nil })
 	if got, want := find(t, s, "closing.i2t", "").Value, find(t, bare, "closing.i2t", "").Value; got != want {
 		t.Errorf("closing.i2t with the filter before the bypass = %v, want as without, %v", got, want)
 	}
 }
 
 func TestWhetherTheFuseClears(t *testing.T) {
-	whole := load(t, "wagtail") // I²t 39,900 … 57,109 … 79,362 A²s by the expected findings
+	whole := findingtest.Load(t, "wagtail") // I²t 39,900 … 57,109 … 79,362 A²s by the expected findings
 	for i2t, want := range map[float64][3]float64{30_000: {1, 1, 1}, 50_000: {0, 1, 1}, 70_000: {0, 0, 1}, 90_000: {0, 0, 0}} {
 		s := whole
 		f := *s.Source.Fuse
@@ -180,7 +179,7 @@ func TestWhetherTheFuseClears(t *testing.T) {
 func TestStepHoldsBothErrors(t *testing.T) {
 	// 25 V, 0.5 % of 821.7 V and 0.5 % of 1000 V.
 	want := quantity.Spread[quantity.Voltage]{Low: 25 - 9.1085, Nominal: 25, High: 34.1085}
-	got := Step(load(t, "wagtail"))
+	got := Step(findingtest.Load(t, "wagtail"))
 	for _, d := range []quantity.Voltage{got.Low - want.Low, got.Nominal - want.Nominal, got.High - want.High} {
 		if math.Abs(float64(d)) > 1e-9 {
 			t.Fatalf("Step = %v, want %v", got, want)
@@ -213,7 +212,7 @@ func TestFindingsNameTheKeysThatAreMissing(t *testing.T) {
 		{"precharge.minimum_time", func(s *site.Site) { s.Precharge.MinimumTime = quantity.Entered[quantity.Seconds]{} }, []string{"live-bus"}},
 		{"a bleeder, which may be absent", func(s *site.Site) { s.Bus.Bleeders = nil }, nil},
 	} {
-		s := load(t, "wagtail")
+		s := findingtest.Load(t, "wagtail")
 		c.take(&s)
 		for _, f := range Findings(s) {
 			want := slices.Contains(c.undecided, strings.TrimPrefix(f.ID, "closing."))
@@ -238,10 +237,10 @@ func TestFindingsWithNothingInTheLoop(t *testing.T) {
 			set(&s.Source.InternalResistance, 0)
 		},
 	} {
-		s := load(t, "wagtail")
+		s := findingtest.Load(t, "wagtail")
 		change(&s)
 		found := Findings(s)
-		cornertest.AreOrdered(t, "bare loop", found)
+		findingtest.AreOrdered(t, "bare loop", found)
 		areExplained(t, "bare loop", found)
 	}
 }
@@ -273,10 +272,10 @@ func TestOddLoopsAreExplained(t *testing.T) {
 			set(&s.Source.Capacitance, 14)
 		},
 	} {
-		s := load(t, "wagtail")
+		s := findingtest.Load(t, "wagtail")
 		change(&s)
 		found := Findings(s)
-		cornertest.AreOrdered(t, name, found)
+		findingtest.AreOrdered(t, name, found)
 		areExplained(t, name, found)
 	}
 }

@@ -4,53 +4,49 @@ import (
 	"math"
 	"testing"
 
-	"chargehand/commission/precharge/workedtest"
+	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/quantity"
 )
 
-func loopIn(t *testing.T, c workedtest.Case) Loop {
-	t.Helper()
-	phases := c.In(t, "n_phases")
-	if phases == 0 {
-		phases = 3
-	}
-	inductance := c.In(t, "l_choke_H")/phases + c.In(t, "l_stray_H")
-	if whole := c.In(t, "l_loop_H"); whole > 0 {
+func loopIn(c findingtest.Case) Loop {
+	phases := c.Input("n_phases", 3)
+	inductance := c.In("l_choke_H")/phases + c.In("l_stray_H")
+	if whole := c.In("l_loop_H"); whole > 0 {
 		inductance = whole
 	}
-	link := c.In(t, "c_F")
-	if source := c.In(t, "c_source_F"); source > 0 {
+	link := c.In("c_F")
+	if source := c.In("c_source_F"); source > 0 {
 		link = link * source / (link + source)
 	}
-	return Loop{Voltage: quantity.Voltage(c.In(t, "dv_V") - c.In(t, "v_diode_V")), Resistance: quantity.Resistance(c.In(t, "r_loop_ohm")),
-		Inductance: quantity.Inductance(inductance), Capacitance: quantity.Capacitance(link), Current: quantity.Current(c.In(t, "i0_A"))}
+	return Loop{Voltage: quantity.Voltage(c.In("dv_V") - c.In("v_diode_V")), Resistance: quantity.Resistance(c.In("r_loop_ohm")),
+		Inductance: quantity.Inductance(inductance), Capacitance: quantity.Capacitance(link), Current: quantity.Current(c.In("i0_A"))}
 }
 
 func TestLoopOnPublicCases(t *testing.T) {
-	for _, c := range workedtest.Cases(t, "bypass_close") {
-		l := loopIn(t, c)
+	for _, c := range findingtest.Cases(t, "bypass_close") {
+		l := loopIn(c)
 		peak := float64(l.PeakCurrent())
-		reached := c.In(t, "emf_V") - c.In(t, "v_diode_V") - float64(l.Voltage) + float64(l.Charge())/c.In(t, "c_F")
-		c.Compare(t, map[string]float64{
+		reached := c.In("emf_V") - c.In("v_diode_V") - float64(l.Voltage) + float64(l.Charge())/c.In("c_F")
+		c.Check(t, map[string]any{
 			"zeta": float64(l.Damping()), "i_peak_A": peak, "t_peak_s": float64(l.PeakTime()), "i2t_A2s": float64(l.I2t()),
-			"t_end_s": float64(l.End()), "v_end_V": reached, "overshoot_V": math.Max(0, reached-c.In(t, "emf_V")),
+			"t_end_s": float64(l.End()), "v_end_V": reached, "overshoot_V": math.Max(0, reached-c.In("emf_V")),
 			"i_phase_peak_A": peak / 3,
 		}, "regime", "saturates")
 	}
 }
 
 func TestThresholdWindowOnPublicCase(t *testing.T) {
-	for _, c := range workedtest.Cases(t, "closing_threshold_window") {
-		l := loopIn(t, c)
+	for _, c := range findingtest.Cases(t, "closing_threshold_window") {
+		l := loopIn(c)
 		l.Voltage = 1
 		perVolt := float64(l.PeakCurrent())
-		errors := c.In(t, "err_src_V") + c.In(t, "err_bus_V")
-		r, rb := c.In(t, "r_total_ohm"), c.In(t, "r_bleed_ohm")
-		final := c.In(t, "emf_V") * rb / (r + rb)
-		settled := (final + math.Sqrt(final*final-4*r*rb/(r+rb)*c.In(t, "p_load_W"))) / 2
-		c.Compare(t, map[string]float64{
-			"i_peak_per_V_S": perVolt, "dv_min_V": c.In(t, "emf_V") - settled + errors,
-			"dv_max_V": c.In(t, "i_peak_allowed_A")/perVolt - errors,
+		errors := c.In("err_src_V") + c.In("err_bus_V")
+		r, rb := c.In("r_total_ohm"), c.In("r_bleed_ohm")
+		final := c.In("emf_V") * rb / (r + rb)
+		settled := (final + math.Sqrt(final*final-4*r*rb/(r+rb)*c.In("p_load_W"))) / 2
+		c.Check(t, map[string]any{
+			"i_peak_per_V_S": perVolt, "dv_min_V": c.In("emf_V") - settled + errors,
+			"dv_max_V": c.In("i_peak_allowed_A")/perVolt - errors,
 		}, "window_exists")
 	}
 }

@@ -4,12 +4,12 @@ import (
 	"math"
 	"testing"
 
-	"chargehand/commission/precharge/workedtest"
+	"chargehand/commission/finding/findingtest"
 )
 
 // Both loops of the example against ngspice 39, testdata/closing.cir.
 func TestLoopsAgreeWithNgspice(t *testing.T) {
-	want := workedtest.Stored(t, "testdata/closing.out")
+	want := findingtest.Stored(t, "testdata/closing.out")
 	main := Loop{Voltage: 34.1085, Resistance: 0.063, Inductance: 146e-6, Capacitance: 12.5e-3}
 	filter := Loop{Voltage: 34.1085, Resistance: 0.064, Inductance: 6.04e-6, Capacitance: 0.8e-3}
 	got := map[string]float64{

@@ -5,7 +5,7 @@ package closing
 import (
 	"testing"
 
-	"chargehand/commission/precharge/workedtest"
+	"chargehand/commission/finding/findingtest"
 )
 
-func TestNgspiceStillMeasuresTheSame(t *testing.T) { workedtest.Rerun(t, "closing") }
+func TestNgspiceStillMeasuresTheSame(t *testing.T) { findingtest.Rerun(t, "closing") }

@@ -109,9 +109,9 @@ func TestMinimalSite(t *testing.T) {
 // source is tried.
 func TestAnythingMayBeAbsent(t *testing.T) {
 	tried := 0
-	for _, name := range names {
-		original := string(text(t, name))
-		s := load(t, name)
+	for _, name := range findingtest.Sites {
+		original := string(findingtest.Text(t, name))
+		s := findingtest.Load(t, name)
 		for _, kind := range []site.SourceKind{site.Battery, site.Supercapacitor, site.FuelCell, site.OtherSource} {
 			of := findingtest.Clone(s)
 			of.Source.Kind, of.Source.BlockingDiode = kind, kind == site.FuelCell
@@ -158,8 +158,8 @@ var entry = regexp.MustCompile(`[a-z_]+ = ("[^"]*"|[0-9.]+), |, [a-z_]+ = ("[^"]
 // Sizes that no plant has: every number of a site by itself far larger, far smaller, and 0, as far as the reader allows.
 func TestWildNumbersStaySound(t *testing.T) {
 	tried := 0
-	for _, name := range names[:2] {
-		original := string(text(t, name))
+	for _, name := range findingtest.Sites[:2] {
+		original := string(findingtest.Text(t, name))
 		for _, p := range numbers(original) {
 			for _, wild := range []string{"0", "0.000001", "1000000000"} {
 				if s, _, err := site.Read(name, []byte(original[:p.start]+wild+original[p.end:])); err == nil {

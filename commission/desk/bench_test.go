@@ -6,14 +6,15 @@ import (
 	"testing"
 
 	"chargehand/commission/finding"
+	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/quantity"
 	"chargehand/commission/site"
 )
 
 // The whole catalogue of the example site is to take at most 2 ms of CPU time.
 func BenchmarkCheck(b *testing.B) {
-	for _, name := range names {
-		s := load(b, name)
+	for _, name := range findingtest.Sites {
+		s := findingtest.Load(b, name)
 		b.Run(name, func(b *testing.B) {
 			b.ReportAllocs()
 			for b.Loop() {
@@ -25,7 +26,7 @@ func BenchmarkCheck(b *testing.B) {
 
 // From the bytes of the file to its findings.
 func BenchmarkReadAndCheck(b *testing.B) {
-	bytes := text(b, "wagtail")
+	bytes := findingtest.Text(b, "wagtail")
 	b.ReportAllocs()
 	for b.Loop() {
 		s, _, err := site.Read("wagtail", bytes)
@@ -39,7 +40,7 @@ func BenchmarkReadAndCheck(b *testing.B) {
 // Eight infeeds to sixteen are to cost at most eight times as much.
 func BenchmarkCheckInfeeds(b *testing.B) {
 	for _, n := range []int{2, 8, 16, 64} {
-		s := withInfeeds(load(b, "wagtail"), n)
+		s := withInfeeds(findingtest.Load(b, "wagtail"), n)
 		b.Run(fmt.Sprint(n), func(b *testing.B) {
 			for b.Loop() {
 				Check(s, tenths{})
@@ -63,7 +64,7 @@ func withInfeeds(s site.Site, n int) site.Site {
 }
 
 func BenchmarkRender(b *testing.B) {
-	sheet := Check(load(b, "wagtail"), tenths{})
+	sheet := Check(findingtest.Load(b, "wagtail"), tenths{})
 	for name, write := range map[string]func(*bytes.Buffer) error{
 		"table": func(w *bytes.Buffer) error { return sheet.WriteTable(w, finding.TableOptions{Width: 120}) },
 		"json":  func(w *bytes.Buffer) error { return sheet.WriteJSON(w) },

@@ -2,7 +2,6 @@ package desk
 
 import (
 	"fmt"
-	"os"
 	"slices"
 	"strings"
 	"testing"
@@ -13,28 +12,6 @@ import (
 	"chargehand/commission/signal"
 	"chargehand/commission/site"
 )
-
-const sites = "../../testdata/sites/"
-
-var names = []string{"wagtail", "nightjar", "ouzel"}
-
-func text(t testing.TB, name string) []byte {
-	t.Helper()
-	b, err := os.ReadFile(sites + name + ".site.toml")
-	if err != nil {
-		t.Fatal(err)
-	}
-	return b
-}
-
-func load(t testing.TB, name string) site.Site {
-	t.Helper()
-	s, _, err := site.Read(name, text(t, name))
-	if err != nil {
-		t.Fatal(err)
-	}
-	return s
-}
 
 // tenths writes volts in tenths and droop in tenths of a millivolt per ampere.
 type tenths struct{}
@@ -49,12 +26,12 @@ func (tenths) Raw(name signal.Name, value float64) (int64, bool) {
 	return 0, false
 }
 
-// Source: the expected findings beside the sites, see their README.
+// Source: the expected findings beside the sites.
 func TestWholeSites(t *testing.T) {
-	for _, name := range names {
+	for _, name := range findingtest.Sites {
 		t.Run(name, func(t *testing.T) {
-			sheet := Check(load(t, name), tenths{})
-			path := sites + name + ".expect.json"
+			sheet := Check(findingtest.Load(t, name), tenths{})
+			path := findingtest.Expected(name)
 			if n := findingtest.Compare(t, path, sheet.Findings, ""); n < 40 {
 				t.Errorf("Compare = %d entries, want at least 40", n)
 			}
@@ -67,7 +44,7 @@ func TestWholeSites(t *testing.T) {
 
 func TestCatalogueOrder(t *testing.T) {
 	var ids []string
-	for _, f := range Findings(load(t, "wagtail"), tenths{}) {
+	for _, f := range Findings(findingtest.Load(t, "wagtail"), tenths{}) {
 		if !slices.Contains(ids, f.ID) {
 			ids = append(ids, f.ID)
 		}
@@ -78,8 +55,8 @@ func TestCatalogueOrder(t *testing.T) {
 }
 
 func TestTablesFit(t *testing.T) {
-	for _, name := range names {
-		sheet := Check(load(t, name), nil)
+	for _, name := range findingtest.Sites {
+		sheet := Check(findingtest.Load(t, name), nil)
 		for _, width := range []int{0, 80, 100, 140} {
 			var b strings.Builder
 			if err := sheet.WriteTable(&b, finding.TableOptions{Width: width}); err != nil {

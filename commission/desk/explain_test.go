@@ -12,8 +12,8 @@ import (
 
 // Every finding with a value has a calculation, and a calculator that knows nothing of the program gets its results.
 func TestExplanationsCanBeRedone(t *testing.T) {
-	for _, name := range names {
-		for _, f := range Check(load(t, name), tenths{}).Findings {
+	for _, name := range findingtest.Sites {
+		for _, f := range Check(findingtest.Load(t, name), tenths{}).Findings {
 			if f.Explanation == nil {
 				if f.State == finding.Finite && f.ID != "droop.registers" {
 					t.Errorf("%s: %s %s has a value and no explanation", name, f.ID, f.Subject)
@@ -30,8 +30,8 @@ func TestExplanationsCanBeRedone(t *testing.T) {
 // The printed lines themselves: "= 821.7 + 260 * 0.062 + 4.1085 = 841.9285 V" comes out as it says.
 func TestPrintedLinesCanBeRedone(t *testing.T) {
 	lines := 0
-	for _, name := range names {
-		sheet := Check(load(t, name), tenths{})
+	for _, name := range findingtest.Sites {
+		sheet := Check(findingtest.Load(t, name), tenths{})
 		for _, id := range IDs {
 			text, err := sheet.Explain(id)
 			if err != nil {
@@ -64,7 +64,7 @@ func TestPrintedLinesCanBeRedone(t *testing.T) {
 }
 
 func TestExplainSays(t *testing.T) {
-	sheet := Check(load(t, "wagtail"), tenths{})
+	sheet := Check(findingtest.Load(t, "wagtail"), tenths{})
 	text, err := sheet.Explain("window.source-high")
 	if err != nil {
 		t.Fatal(err)

@@ -10,6 +10,7 @@ import (
 	"strings"
 	"testing"
 
+	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/site"
 )
 
@@ -114,8 +115,8 @@ var unmoved = map[string]string{
 // Every number of the example site is changed by itself, a twentieth up, or else down or further; the findings whose JSON changes are
 // listed in testdata/moves.golden, which is read like code. A number that moves nothing must have its reason above.
 func TestEveryNumberMovesWhatItShould(t *testing.T) {
-	original := string(text(t, "wagtail"))
-	before := written(t, load(t, "wagtail"))
+	original := string(findingtest.Text(t, "wagtail"))
+	before := written(t, findingtest.Load(t, "wagtail"))
 	var lines []string
 	for _, p := range numbers(original) {
 		moved, changed := moves(t, original, p, before)
@@ -167,7 +168,7 @@ func moves(t *testing.T, original string, p place, before []string) (moved []str
 		t.Fatalf("%s: %q: %v", p.key, number, err)
 	}
 	candidates := []string{short(v * 1.05), short(v * 0.95), short(v * 0.9), short(v + 5), short(v * 1.25)} // the last is the next size of a cable
-	if bare := original[p.start-1] != '"' && !strings.HasSuffix(p.key, "±"); bare { // a count, or the class of a conductor
+	if bare := original[p.start-1] != '"' && !strings.HasSuffix(p.key, "±"); bare {                         // a count, or the class of a conductor
 		candidates = []string{short(v + 1), short(v - 1), "2"}
 	}
 	for _, c := range candidates {

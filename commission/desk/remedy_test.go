@@ -59,7 +59,7 @@ func TestRemedies(t *testing.T) {
 		}},
 		{"droop.instrument", "hand multimeter", func(s *site.Site) { s.Instruments[0].OfReading = 0.01 }},
 	} {
-		s := findingtest.Clone(load(t, "wagtail"))
+		s := findingtest.Clone(findingtest.Load(t, "wagtail"))
 		if row.spoil != nil {
 			row.spoil(&s)
 		}
@@ -74,7 +74,7 @@ func TestRemedies(t *testing.T) {
 
 // The same for every remedy of the site where nearly everything is wrong.
 func TestRemediesOfOuzel(t *testing.T) {
-	s := load(t, "ouzel")
+	s := findingtest.Load(t, "ouzel")
 	tried := 0
 	for _, f := range Check(s, tenths{}).Findings {
 		if len(f.Changes) > 0 {
@@ -120,7 +120,7 @@ func tryOut(t *testing.T, s site.Site, f finding.Finding) {
 }
 
 func TestTryRefuses(t *testing.T) {
-	s := load(t, "wagtail")
+	s := findingtest.Load(t, "wagtail")
 	for _, f := range []finding.Finding{
 		{ID: "window.margin"},
 		{ID: "window.margin", Changes: []finding.Change{{Key: "site.name"}}},

@@ -4,28 +4,25 @@ import (
 	"math"
 	"testing"
 
-	"chargehand/commission/precharge/workedtest"
+	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/quantity"
 )
 
 func TestBusOnPublicCases(t *testing.T) {
-	for _, c := range workedtest.Cases(t, "discharge") {
-		end := quantity.Voltage(c.In(t, "v_end_V"))
-		if end == 0 {
-			end = 60 // the default of the worked cases: the touch limit
-		}
-		from := quantity.Voltage(c.In(t, "v_start_V"))
+	for _, c := range findingtest.Cases(t, "discharge") {
+		end := quantity.Voltage(c.Input("v_end_V", 60)) // by default the touch limit
+		from := quantity.Voltage(c.In("v_start_V"))
 		bus := func(scaleC, scaleR, load float64) Bus {
-			return Bus{Link: quantity.Capacitance(c.In(t, "c_F") * scaleC), Bleeder: quantity.Resistance(c.In(t, "r_bleed_ohm") * scaleR),
-				Auxiliary: quantity.Power(load), StopsAt: quantity.Voltage(c.In(t, "v_uv_V"))}
+			return Bus{Link: quantity.Capacitance(c.In("c_F") * scaleC), Bleeder: quantity.Resistance(c.In("r_bleed_ohm") * scaleR),
+				Auxiliary: quantity.Power(load), StopsAt: quantity.Voltage(c.In("v_uv_V"))}
 		}
-		p, tc, tr := c.In(t, "p_load_W"), c.In(t, "c_tol"), c.In(t, "r_tol")
-		c.Compare(t, map[string]float64{
+		p, tc, tr := c.In("p_load_W"), c.In("c_tol"), c.In("r_tol")
+		c.Check(t, map[string]any{
 			"t_s": float64(bus(1, 1, p).Time(from, end)), "t_no_load_s": float64(bus(1, 1, 0).Time(from, end)),
 			"t_worst_s":  float64(bus(1+tc, 1+tr, 0).Time(from, end)),
 			"t_best_s":   float64(bus(1-tc, 1-tr, p).Time(from, end)),
 			"e_stored_J": float64(bus(1, 1, 0).Stored(from)), "e_stored_max_J": float64(bus(1+tc, 1, 0).Stored(from)),
-			"q_C": c.In(t, "c_F") * float64(from), "p_bleed_W": float64(from*from) / c.In(t, "r_bleed_ohm"),
+			"q_C": c.In("c_F") * float64(from), "p_bleed_W": float64(from*from) / c.In("r_bleed_ohm"),
 		}, "ok")
 	}
 }

@@ -7,7 +7,6 @@ import (
 	"strings"
 	"testing"
 
-	"chargehand/commission/corner/cornertest"
 	"chargehand/commission/finding"
 	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/quantity"
@@ -32,7 +31,7 @@ func touchSafe(t *testing.T, s site.Site) finding.Finding {
 // The bleeder that the remedy names passes, one per cent more does not; without any it starts from none.
 func TestBleederOfTheRemedyPassesAndMoreDoesNot(t *testing.T) {
 	for _, name := range []string{"wagtail", "ouzel", "nightjar"} {
-		s := load(t, name)
+		s := findingtest.Load(t, name)
 		f := touchSafe(t, s)
 		if len(f.Changes) != 1 || f.Changes[0].Key != "bus.bleeder" {
 			t.Fatalf("%s: remedy = %q, want a bleeder", name, f.Remedy)
@@ -64,7 +63,7 @@ func TestLabelRoundsUp(t *testing.T) {
 			t.Errorf("Label(%v) = %v, want %v", slowest, got, want)
 		}
 	}
-	if f := touchSafe(t, load(t, "wagtail")); !strings.Contains(f.Remedy, "waiting time of 17 min") {
+	if f := touchSafe(t, findingtest.Load(t, "wagtail")); !strings.Contains(f.Remedy, "waiting time of 17 min") {
 		t.Errorf("remedy = %q, want the label's 17 min for 987.6 s", f.Remedy)
 	}
 }
@@ -85,7 +84,7 @@ func TestFindingsNameTheKeysThatAreMissing(t *testing.T) {
 		{"a bleeder, which may be absent", func(s *site.Site) { s.Bus.Bleeders = nil }, nil},
 		{"the converter, whose filter may be absent", func(s *site.Site) { s.Converter = nil }, nil},
 	} {
-		s := load(t, "wagtail")
+		s := findingtest.Load(t, "wagtail")
 		c.take(&s)
 		for _, f := range Findings(s) {
 			want := slices.Contains(c.undecided, f.ID)
@@ -93,13 +92,13 @@ func TestFindingsNameTheKeysThatAreMissing(t *testing.T) {
 				t.Errorf("without %s: %s = %s (%v), want undecided = %v by that key", c.key, f.ID, f.Verdict, f.Because, want)
 			}
 		}
-		cornertest.AreOrdered(t, "without "+c.key, Findings(s))
+		findingtest.AreOrdered(t, "without "+c.key, Findings(s))
 	}
 }
 
 // An isolated bank hangs on the bus again when it is discharged; a filter before the bypass stays with the source.
 func TestWhatDischarges(t *testing.T) {
-	s := load(t, "wagtail")
+	s := findingtest.Load(t, "wagtail")
 	whole := touchSafe(t, s).Value
 	isolated := s
 	isolated.Bus.Capacitances = slices.Clone(s.Bus.Capacitances)
@@ -124,7 +123,7 @@ func TestWhatDischarges(t *testing.T) {
 // Any site inside the tolerances discharges inside the band, from any of the voltages, supply on or off.
 func TestBandHoldsEveryDischarge(t *testing.T) {
 	for _, name := range []string{"wagtail", "ouzel"} {
-		s := load(t, name)
+		s := findingtest.Load(t, name)
 		v0 := quantity.Spread[quantity.Voltage]{Low: 860, Nominal: 870, High: 880}
 		p := Predict(s, v0)
 		if len(p.Missing) > 0 || len(p.Band) == 0 {
@@ -135,7 +134,7 @@ func TestBandHoldsEveryDischarge(t *testing.T) {
 		}
 		random := rand.New(rand.NewPCG(3, 3))
 		for range 300 {
-			drawn := cornertest.Draw(s, random, 0.5)
+			drawn := findingtest.Draw(s, random, 0.5)
 			axes := predictionAxes(drawn, v0)
 			x := make([]float64, len(axes))
 			for i, a := range axes {
@@ -153,7 +152,7 @@ func TestBandHoldsEveryDischarge(t *testing.T) {
 }
 
 func TestPredictionWithoutAPathStaysFlat(t *testing.T) {
-	p := Predict(load(t, "nightjar"), quantity.Exactly(quantity.Voltage(700)))
+	p := Predict(findingtest.Load(t, "nightjar"), quantity.Exactly(quantity.Voltage(700)))
 	if !math.IsInf(float64(p.TimeToTouchSafe.Nominal), 1) || !math.IsInf(float64(p.TimeConstant.Low), 1) {
 		t.Errorf("times without a path = %v, %v, want never", p.TimeToTouchSafe, p.TimeConstant)
 	}
@@ -163,7 +162,7 @@ func TestPredictionWithoutAPathStaysFlat(t *testing.T) {
 }
 
 func TestPredictionNamesWhatItLacks(t *testing.T) {
-	s := load(t, "wagtail")
+	s := findingtest.Load(t, "wagtail")
 	s.Bus.TouchSafe = nil
 	if p := Predict(s, quantity.Exactly(quantity.Voltage(900))); !slices.Contains(p.Missing, "bus.touch_safe.voltage") || p.Band != nil {
 		t.Errorf("Predict without a touch-safe voltage lacks %v, want bus.touch_safe.voltage and no band", p.Missing)
@@ -174,7 +173,7 @@ func TestPredictionNamesWhatItLacks(t *testing.T) {
 // printed calculation says so: no time below 0.
 func TestTouchSafeBusTakesNoTime(t *testing.T) {
 	for _, name := range []string{"wagtail", "nightjar"} {
-		s := load(t, name)
+		s := findingtest.Load(t, name)
 		at := float64(Highest(s))
 		for _, touch := range []float64{at, 1.5 * at} {
 			safe := *s.Bus.TouchSafe

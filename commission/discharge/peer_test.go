@@ -5,7 +5,7 @@ package discharge
 import (
 	"testing"
 
-	"chargehand/commission/precharge/workedtest"
+	"chargehand/commission/finding/findingtest"
 )
 
-func TestNgspiceStillMeasuresTheSame(t *testing.T) { workedtest.Rerun(t, "discharge") }
+func TestNgspiceStillMeasuresTheSame(t *testing.T) { findingtest.Rerun(t, "discharge") }

@@ -8,7 +8,6 @@ import (
 	"chargehand/commission/finding"
 	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/quantity"
-	"chargehand/commission/site"
 
 	"pgregory.net/rapid"
 )
@@ -197,7 +196,7 @@ func inside(t *rapid.T, what string, v, low, high float64) {
 // A wider setpoint error never narrows, and random draws of setpoints stay inside.
 func TestSetpointDrawsStayInside(t *testing.T) {
 	for _, name := range []string{"wagtail", "nightjar"} {
-		s := example(t, name)
+		s := findingtest.Load(t, name)
 		bounds := Findings(s, nil)
 		random := rand.New(rand.NewPCG(5, 6))
 		exact := findingtest.Clone(s)
@@ -236,8 +235,6 @@ func compareDraw(t *testing.T, b, f finding.Finding) {
 		t.Errorf("%s %s: a draw of the setpoints gives %v, want it within %v … %v", f.ID, f.Subject, f.Value.Nominal, b.Value.Low, b.Value.High)
 	}
 }
-
-func example(t testing.TB, name string) site.Site { return load(t, name) }
 
 // Eight infeeds to sixteen: the work of all corners grows with N² · log N, not with 2^N.
 func BenchmarkShare(b *testing.B) {

@@ -5,6 +5,8 @@ package droop
 import (
 	"os/exec"
 	"testing"
+
+	"chargehand/commission/finding/findingtest"
 )
 
 // The netlist is run again: the stored output is what ngspice gives.
@@ -13,5 +15,5 @@ func TestSolveAgainstNgspice(t *testing.T) {
 	if err != nil {
 		t.Fatalf("run ngspice -b testdata/bus.cir: %v", err)
 	}
-	compareWithNetlist(t, voltages(t, string(out)))
+	compareWithNetlist(t, findingtest.Measured(t, out))
 }

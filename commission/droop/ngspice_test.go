@@ -1,13 +1,10 @@
 package droop
 
 import (
-	"bufio"
 	"math"
-	"os"
-	"strconv"
-	"strings"
 	"testing"
 
+	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/quantity"
 )
 
@@ -18,7 +15,7 @@ func netlistCases(t testing.TB) map[string]Point {
 		return Source{NoLoad: quantity.Voltage(v0), Droop: quantity.Droop(r), Least: quantity.Current(least), Most: quantity.Current(most)}
 	}
 	three := []Source{infeed(1000, 0.11, -200, 300), infeed(1000, 0.17, -200, 200), infeed(1004, 0.30, -100, 100)}
-	wagtail, _, missing := Sources(load(t, "wagtail"))
+	wagtail, _, missing := Sources(findingtest.Load(t, "wagtail"))
 	if len(missing) > 0 {
 		t.Fatal(missing)
 	}
@@ -29,24 +26,6 @@ func netlistCases(t testing.TB) map[string]Point {
 		"v(b4)": Solve([]Source{infeed(700, 0.11, -500, 500), infeed(700, 0.13, -500, 500)}, Load{Power: 30e3, Current: 100, Resistance: 14}),
 		"v(b5)": Solve(wagtail, Load{Power: 200e3}),
 	}
-}
-
-// voltages reads "v(node) = number" lines.
-func voltages(t testing.TB, text string) map[string]float64 {
-	t.Helper()
-	found := map[string]float64{}
-	for lines := bufio.NewScanner(strings.NewReader(text)); lines.Scan(); {
-		name, number, ok := strings.Cut(lines.Text(), " = ")
-		if !ok || !strings.HasPrefix(name, "v(") {
-			continue
-		}
-		v, err := strconv.ParseFloat(strings.TrimSpace(number), 64)
-		if err != nil {
-			t.Fatal(err)
-		}
-		found[name] = v
-	}
-	return found
 }
 
 func compareWithNetlist(t *testing.T, spice map[string]float64) {
@@ -64,9 +43,5 @@ func compareWithNetlist(t *testing.T, spice map[string]float64) {
 
 // Source: ngspice on testdata/bus.cir, its output kept in testdata/bus.ngspice with the command that made it.
 func TestSolveAgainstNetlist(t *testing.T) {
-	text, err := os.ReadFile("testdata/bus.ngspice")
-	if err != nil {
-		t.Fatal(err)
-	}
-	compareWithNetlist(t, voltages(t, string(text)))
+	compareWithNetlist(t, findingtest.Stored(t, "testdata/bus.ngspice"))
 }

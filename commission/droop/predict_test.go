@@ -5,12 +5,13 @@ import (
 	"math"
 	"testing"
 
+	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/signal"
 	"chargehand/commission/site"
 )
 
 func TestPredict(t *testing.T) {
-	p := Predict(load(t, "wagtail"))
+	p := Predict(findingtest.Load(t, "wagtail"))
 	// By hand: 1030 V ± 0.2 %; 3 % of 1000 V at 220 A; cable 0.0067071312 Ω.
 	near := func(name string, got, want float64) {
 		t.Helper()
@@ -51,11 +52,11 @@ func (onlySetpoint) Raw(name signal.Name, value float64) (int64, bool) {
 }
 
 func TestRegisters(t *testing.T) {
-	f := registers(load(t, "wagtail"), onlySetpoint{})
+	f := registers(findingtest.Load(t, "wagtail"), onlySetpoint{})
 	if f.Value.Nominal != 10300 || len(f.Parts) != 1 || f.Parts[0].Name != "voltage-setpoint" {
 		t.Errorf("registers(setpoint only) = %v, %v, want 10300 and one part", f.Value, f.Parts)
 	}
-	if f := registers(load(t, "wagtail"), nil); len(f.Because) != 1 || f.Because[0] != "device.map" {
+	if f := registers(findingtest.Load(t, "wagtail"), nil); len(f.Because) != 1 || f.Because[0] != "device.map" {
 		t.Errorf("registers(nil) because %v, want device.map", f.Because)
 	}
 }

@@ -9,8 +9,6 @@ import (
 	"chargehand/commission/site"
 )
 
-const publicCases = "../../testdata/public-cases.json"
-
 func sourcesOf(c findingtest.Case) []Source {
 	var sources []Source
 	for _, one := range c.Inputs["sources"].([]any) {
@@ -30,14 +28,14 @@ func sourcesOf(c findingtest.Case) []Source {
 }
 
 func loadOfCase(c findingtest.Case) Load {
-	return Load{Power: quantity.Power(c.Input("p_load_W", 0)), Current: quantity.Current(c.Input("i_load_A", 0)), Resistance: quantity.Resistance(c.Input("r_load_ohm", 0))}
+	return Load{Power: quantity.Power(c.In("p_load_W")), Current: quantity.Current(c.In("i_load_A")), Resistance: quantity.Resistance(c.In("r_load_ohm"))}
 }
 
 func plain[Q quantity.Scalar](q Q) float64 { return float64(q) }
 
 // Source of the figures: public-cases.json, piecewise quadratic and independent scanning, ngspice to 6e-7.
 func TestPublicDroopSolve(t *testing.T) {
-	for _, c := range findingtest.Cases(t, publicCases, "droop_solve") {
+	for _, c := range findingtest.Cases(t, "droop_solve") {
 		p := Solve(sourcesOf(c), loadOfCase(c))
 		c.Check(t, map[string]any{"status": string(p.Status), "v_bus_V": float64(p.Bus), "i_A": findingtest.List(p.Current, plain),
 			"limit":        findingtest.List(p.Limit, func(s LimitState) string { return string(s) }),
@@ -47,9 +45,9 @@ func TestPublicDroopSolve(t *testing.T) {
 
 // Source: public-cases.json, all 2^N corners.
 func TestPublicDroopSharing(t *testing.T) {
-	for _, c := range findingtest.Cases(t, publicCases, "droop_sharing") {
+	for _, c := range findingtest.Cases(t, "droop_sharing") {
 		sources, load := sourcesOf(c), loadOfCase(c)
-		e := quantity.Voltage(c.Input("e_set_V", 0))
+		e := quantity.Voltage(c.In("e_set_V"))
 		errors := make([]quantity.Voltage, len(sources))
 		var linear, part []any
 		for k, s := range sources {
@@ -69,12 +67,12 @@ func TestPublicDroopSharing(t *testing.T) {
 }
 
 func TestPublicDroopRecommend(t *testing.T) {
-	for _, c := range findingtest.Cases(t, publicCases, "droop_recommend") {
+	for _, c := range findingtest.Cases(t, "droop_recommend") {
 		v := func(name string, otherwise float64) quantity.Voltage {
 			return quantity.Voltage(c.Input(name, otherwise))
 		}
 		w := Wish{SourceHigh: v("v_src_max_V", 0), LowerMargin: v("margin_lo_V", 0), LowestBus: v("v_bus_min_allowed_V", math.Inf(-1)), UpperLimit: v("v_ov_V", 0),
-			UpperMargin: v("margin_hi_V", 0), SetpointError: v("e_meas_V", 0), ShareTolerance: quantity.Ratio(c.Input("share_err_max_frac", 0)),
+			UpperMargin: v("margin_hi_V", 0), SetpointError: v("e_meas_V", 0), ShareTolerance: quantity.Ratio(c.In("share_err_max_frac")),
 			Ripple: v("ripple_pp_V", 0), LoadFraction: quantity.Ratio(c.Input("load_frac", 1)), RegenerationShare: quantity.Ratio(c.Input("regen_frac", 1))}
 		for _, i := range c.Inputs["i_rated_A"].([]any) {
 			w.Rated = append(w.Rated, quantity.Current(i.(float64)))

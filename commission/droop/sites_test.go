@@ -1,52 +1,16 @@
 package droop
 
 import (
-	"os"
 	"testing"
 
+	"chargehand/commission/finding"
 	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/site"
 )
 
-const sites = "../../testdata/sites/"
+func TestWholeSites(t *testing.T) { findingtest.AsExpected(t, onPaper, "droop.", "cable.") }
 
-func load(t testing.TB, name string) site.Site {
-	t.Helper()
-	text, err := os.ReadFile(sites + name + ".site.toml")
-	if err != nil {
-		t.Fatal(err)
-	}
-	s, _, err := site.Read(name, text)
-	if err != nil {
-		t.Fatal(err)
-	}
-	return s
-}
+func TestExplanationsOfWholeSites(t *testing.T) { findingtest.AllExplained(t, onPaper) }
 
-// The figures come from the expected findings beside the sites: every corner enumerated by a program written apart, and
-// confirmed by a time-domain circuit, a bisection and a Fourier transform.
-func TestSites(t *testing.T) {
-	for _, name := range []string{"wagtail", "nightjar", "ouzel"} {
-		t.Run(name, func(t *testing.T) {
-			s := load(t, name)
-			if n := findingtest.Compare(t, sites+name+".expect.json", Findings(s, nil), "droop.", "cable."); n == 0 {
-				t.Error("Compare = 0 entries, want some")
-			}
-		})
-	}
-}
-
-// Every printed calculation is redone by a calculator that knows nothing of the program.
-func TestExplanations(t *testing.T) {
-	for _, name := range []string{"wagtail", "nightjar", "ouzel"} {
-		for _, f := range Findings(load(t, name), nil) {
-			if f.Explanation == nil {
-				t.Logf("%s %s: no explanation (%s)", f.ID, f.Subject, f.State)
-				continue
-			}
-			if err := findingtest.Redo(f.Explanation, f.Value.Nominal); err != nil {
-				t.Errorf("%s: Redo(%s %s) = %v, want nil", name, f.ID, f.Subject, err)
-			}
-		}
-	}
-}
+// onPaper are the findings without a map of registers.
+func onPaper(s site.Site) []finding.Finding { return Findings(s, nil) }

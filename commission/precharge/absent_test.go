@@ -5,7 +5,6 @@ import (
 	"strings"
 	"testing"
 
-	"chargehand/commission/corner/cornertest"
 	"chargehand/commission/finding"
 	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/quantity"
@@ -48,7 +47,7 @@ func TestFindingsNameTheKeysThatAreMissing(t *testing.T) {
 		{"the filter, which may be absent", func(s *site.Site) { v := *s.Converter; v.Filter = nil; s.Converter = &v }, nil},
 		{"the overload, beside a pulse curve", func(s *site.Site) { s.Precharge.Overload = nil }, nil},
 	} {
-		s := load(t, "wagtail")
+		s := findingtest.Load(t, "wagtail")
 		c.take(&s)
 		for _, f := range Findings(s) {
 			id := strings.TrimPrefix(f.ID, "precharge.")
@@ -65,7 +64,7 @@ func TestFindingsNameTheKeysThatAreMissing(t *testing.T) {
 
 // One attempt starts at ambient, so it needs no thermal model.
 func TestShortedBusOfOneAttemptNeedsNoThermalModel(t *testing.T) {
-	s := load(t, "wagtail")
+	s := findingtest.Load(t, "wagtail")
 	s.Precharge.Attempts, s.Precharge.Thermal = 1, nil
 	if f := find(t, s, "precharge.shorted-bus"); f.Verdict == finding.Undecided {
 		t.Errorf("shorted-bus of one attempt = undecided (%v), want a verdict", f.Because)
@@ -92,7 +91,7 @@ func TestEveryKindOfSourceAndOptionalTable(t *testing.T) {
 			if kind != site.Battery && mask >= 16 {
 				continue // what lies behind the first four does not know the kind of source
 			}
-			s := load(t, "wagtail")
+			s := findingtest.Load(t, "wagtail")
 			s.Source.Kind = kind
 			if kind == site.Supercapacitor {
 				set(&s.Source.Capacitance, 14)
@@ -105,8 +104,8 @@ func TestEveryKindOfSourceAndOptionalTable(t *testing.T) {
 				}
 			}
 			found := judged(s)
-			cornertest.AreOrdered(t, name, found)
-			areExplained(t, name, found)
+			findingtest.AreOrdered(t, name, found)
+			findingtest.Explained(t, name, found)
 			if mask >= 8 { // the tables behind the first three do not enter a prediction
 				continue
 			}
@@ -114,21 +113,6 @@ func TestEveryKindOfSourceAndOptionalTable(t *testing.T) {
 			if len(p.Missing) > 0 || len(p.Band) == 0 {
 				t.Errorf("%s: Predict lacks %v and has %d points, want a band", name, p.Missing, len(p.Band))
 			}
-		}
-	}
-}
-
-// areExplained reports every finding with a value whose printed calculation does not come out as printed.
-func areExplained(t *testing.T, what string, findings []finding.Finding) {
-	t.Helper()
-	for _, f := range findings {
-		if f.State == finding.None {
-			continue
-		}
-		if f.Explanation == nil {
-			t.Errorf("%s: %s has no explanation", what, f.ID)
-		} else if err := findingtest.Redo(f.Explanation, f.Value.Nominal); err != nil {
-			t.Errorf("%s: Redo(%s) = %v, want nil", what, f.ID, err)
 		}
 	}
 }
@@ -164,17 +148,17 @@ func TestOddChargesAreExplained(t *testing.T) {
 		"pulse before the curve": func(s *site.Site) { s.Precharge.Pulse = s.Precharge.Pulse[2:] },
 		"one attempt":            func(s *site.Site) { s.Precharge.Attempts = 1 },
 	} {
-		s := load(t, "wagtail")
+		s := findingtest.Load(t, "wagtail")
 		change(&s)
 		found := Findings(s)
-		cornertest.AreOrdered(t, name, found)
-		areExplained(t, name, found)
+		findingtest.AreOrdered(t, name, found)
+		findingtest.Explained(t, name, found)
 	}
 }
 
 // With tolerances on everything that may have one the corners still hold every draw.
 func TestCornersHoldWithTolerancesOnEverything(t *testing.T) {
-	s := load(t, "wagtail")
+	s := findingtest.Load(t, "wagtail")
 	loose := func(q float64, by float64) (low, high float64) { return q * (1 - by), q * (1 + by) }
 	auxiliary, thermal, converter := *s.Bus.Auxiliary, *s.Precharge.Thermal, *s.Converter
 	for _, e := range []*quantity.Entered[quantity.Voltage]{&auxiliary.StartsAt, &auxiliary.StopsAt} {
@@ -191,5 +175,5 @@ func TestCornersHoldWithTolerancesOnEverything(t *testing.T) {
 	converter.ChokeResistance.Low, converter.ChokeResistance.High = quantity.Resistance(l), quantity.Resistance(h)
 	s.Precharge.Ambient.Low, s.Precharge.Ambient.High = 20, 60
 	s.Bus.Auxiliary, s.Precharge.Thermal, s.Converter = &auxiliary, &thermal, &converter
-	cornertest.Holds(t, s, judged, 1000)
+	findingtest.Contains(t, s, 1000, judged)
 }

@@ -4,13 +4,13 @@ import (
 	"math"
 	"testing"
 
-	"chargehand/commission/precharge/workedtest"
+	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/quantity"
 )
 
 // The whole charge against ngspice 39, testdata/charge.cir: resistors, capacitor, bleeder and a 40 W sink from 350 V on.
 func TestChargeAgreesWithNgspice(t *testing.T) {
-	want := workedtest.Stored(t, "testdata/charge.out")
+	want := findingtest.Stored(t, "testdata/charge.out")
 	at := func(s quantity.Seconds) float64 { v, _ := ferry.VoltageAt(s); return float64(v) }
 	settled, _ := ferry.Settled()
 	got := map[string]float64{

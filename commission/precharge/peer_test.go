@@ -5,7 +5,7 @@ package precharge
 import (
 	"testing"
 
-	"chargehand/commission/precharge/workedtest"
+	"chargehand/commission/finding/findingtest"
 )
 
-func TestNgspiceStillMeasuresTheSame(t *testing.T) { workedtest.Rerun(t, "charge") }
+func TestNgspiceStillMeasuresTheSame(t *testing.T) { findingtest.Rerun(t, "charge") }

@@ -5,13 +5,13 @@ import (
 	"testing"
 	"time"
 
-	"chargehand/commission/corner/cornertest"
+	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/quantity"
 	"math/rand/v2"
 )
 
 func TestPredictionOfTheExample(t *testing.T) {
-	s := load(t, "wagtail")
+	s := findingtest.Load(t, "wagtail")
 	p := Predict(s, quantity.Exactly(s.Source.HighestRest()), 0)
 	// The same figures as the desk findings of the site, which testdata/sites checks.
 	for _, c := range []struct {
@@ -40,14 +40,14 @@ func TestPredictionOfTheExample(t *testing.T) {
 // Any site inside the tolerances charges inside the band, its auxiliary supply on or off.
 func TestBandHoldsEveryCharge(t *testing.T) {
 	for _, name := range []string{"wagtail", "nightjar", "ouzel"} {
-		s := load(t, name)
+		s := findingtest.Load(t, name)
 		highest := s.Source.HighestRest()
 		emf := quantity.Spread[quantity.Voltage]{Low: 0.9 * highest, Nominal: 0.95 * highest, High: highest}
 		const v0 = 40
 		p := Predict(s, emf, v0)
 		random := rand.New(rand.NewPCG(7, 7))
 		for range 300 {
-			drawn := pathOf(cornertest.Draw(s, random, 0.5))
+			drawn := pathOf(findingtest.Draw(s, random, 0.5))
 			c := drawn.circuit(drawn.nominal())
 			c.EMF, c.Start = emf.Low+quantity.Voltage(random.Float64())*(emf.High-emf.Low), v0
 			if random.IntN(2) == 0 {
@@ -64,7 +64,7 @@ func TestBandHoldsEveryCharge(t *testing.T) {
 }
 
 func TestBusAtInterpolates(t *testing.T) {
-	s := load(t, "wagtail")
+	s := findingtest.Load(t, "wagtail")
 	p := Predict(s, quantity.Exactly(s.Source.HighestRest()), 0)
 	nominal := pathOf(s)
 	for _, at := range []time.Duration{0, 333 * time.Millisecond, 1234567 * time.Microsecond, 5 * time.Second} {
@@ -80,7 +80,7 @@ func TestBusAtInterpolates(t *testing.T) {
 }
 
 func TestPredictionOfALiveBusDoesNotRise(t *testing.T) {
-	s := load(t, "wagtail")
+	s := findingtest.Load(t, "wagtail")
 	p := Predict(s, quantity.Exactly(s.Source.HighestRest()), 1000)
 	if p.PeakCurrent.High != 0 || p.TimeToClose.High != 0 {
 		t.Errorf("current, time to close on a bus above the source = %v, %v, want 0: the diodes block", p.PeakCurrent, p.TimeToClose)

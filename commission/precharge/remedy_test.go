@@ -6,6 +6,7 @@ import (
 	"testing"
 
 	"chargehand/commission/finding"
+	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/quantity"
 	"chargehand/commission/site"
 )
@@ -106,7 +107,7 @@ func TestRemediesPassAndLessDoesNot(t *testing.T) {
 			s.Precharge.Contactor = &contactor
 		}, "precharge.contactor.voltage"},
 	} {
-		s := load(t, "wagtail")
+		s := findingtest.Load(t, "wagtail")
 		c.change(&s)
 		f := find(t, s, c.id)
 		if f.Verdict == finding.Pass {
@@ -150,7 +151,7 @@ func passes(t *testing.T, s site.Site, ids []string) bool {
 
 // The preferred value named in a remedy passes pulse, shorted bus and time-out together.
 func TestPreferredResistorMeetsAllThree(t *testing.T) {
-	s := withResistance(load(t, "wagtail"), 60)
+	s := withResistance(findingtest.Load(t, "wagtail"), 60)
 	f := find(t, s, "precharge.shorted-bus")
 	if !strings.Contains(f.Remedy, "preferred value 100.0 Ω (IEC 60063 E24)") {
 		t.Fatalf("remedy of 60 Ω = %q, want the preferred value 100 Ω", f.Remedy)
@@ -164,7 +165,7 @@ func TestPreferredResistorMeetsAllThree(t *testing.T) {
 
 // ouzel has no admissible time-out at all, and no resistor of that rating: what excludes what, and by how much.
 func TestExclusionIsSaid(t *testing.T) {
-	f := find(t, load(t, "ouzel"), "precharge.timeout")
+	f := find(t, findingtest.Load(t, "ouzel"), "precharge.timeout")
 	for _, want := range []string{"19.00 s", "5.803 s", "13.20 s"} {
 		if want == "5.803 s" {
 			want = "5.80" // 7.25386 s ⁄ 1.25

@@ -8,20 +8,18 @@ import (
 	"chargehand/commission/quantity"
 )
 
-const publicCases = "../../testdata/public-cases.json"
-
 func stageOf(c findingtest.Case) Stage {
-	bus := c.Input("v_bus_V", 0)
-	return Stage{Bus: quantity.Voltage(bus), Duty: quantity.Ratio(1 - c.Input("v_src_V", 0)/bus), Choke: quantity.Inductance(c.Input("l_choke_H", 0)),
-		Switching: quantity.Frequency(c.Input("f_sw_Hz", 0)), Phases: int(c.Input("n_phases", 3))}
+	bus := c.In("v_bus_V")
+	return Stage{Bus: quantity.Voltage(bus), Duty: quantity.Ratio(1 - c.In("v_src_V")/bus), Choke: quantity.Inductance(c.In("l_choke_H")),
+		Switching: quantity.Frequency(c.In("f_sw_Hz")), Phases: int(c.Input("n_phases", 3))}
 }
 
 // Source of the figures: public-cases.json, exact summing of the waves and ngspice.
 func TestPublicRipple(t *testing.T) {
-	for _, c := range findingtest.Cases(t, publicCases, "ripple") {
+	for _, c := range findingtest.Cases(t, "ripple") {
 		s := stageOf(c)
-		sum := quantity.Current(c.Input("i_dc_A", 0))
-		peak := s.Peak(sum, quantity.Ratio(c.Input("share_err_frac", 0)))
+		sum := quantity.Current(c.In("i_dc_A"))
+		peak := s.Peak(sum, quantity.Ratio(c.In("share_err_frac")))
 		c.Check(t, map[string]any{
 			"duty": float64(s.Duty), "di_phase_pp_A": float64(s.PhaseSwing()), "di_sum_pp_A": float64(s.SumSwing()), "di_sum_rms_A": float64(s.SumRMS()),
 			"i_phase_peak_A": float64(peak), "i_phase_rms_A": float64(s.PhaseRMS(sum)), "f_sum_Hz": float64(s.Switching) * float64(s.Phases),
@@ -32,10 +30,10 @@ func TestPublicRipple(t *testing.T) {
 }
 
 func TestPublicRippleFilter(t *testing.T) {
-	for _, c := range findingtest.Cases(t, publicCases, "ripple_filter") {
+	for _, c := range findingtest.Cases(t, "ripple_filter") {
 		s := stageOf(c)
-		b := Branches{Capacitance: quantity.Capacitance(c.Input("c_f_F", 0)), ESR: quantity.Resistance(c.Input("esr_ohm", 0)), ESL: quantity.Inductance(c.Input("esl_H", 0)),
-			Source: quantity.Resistance(c.Input("r_s_ohm", 0)), SourceInductance: quantity.Inductance(c.Input("l_s_H", 0))}
+		b := Branches{Capacitance: quantity.Capacitance(c.In("c_f_F")), ESR: quantity.Resistance(c.In("esr_ohm")), ESL: quantity.Inductance(c.In("esl_H")),
+			Source: quantity.Resistance(c.In("r_s_ohm")), SourceInductance: quantity.Inductance(c.In("l_s_H"))}
 		got := map[string][]any{}
 		var filterSquare, sourceSquare float64
 		const all400 = 400 // harmonics behind the root mean squares of the case

@@ -5,8 +5,8 @@ import (
 	"slices"
 	"testing"
 
-	"chargehand/commission/corner/cornertest"
 	"chargehand/commission/finding"
+	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/quantity"
 	"chargehand/commission/site"
 )
@@ -75,7 +75,7 @@ func TestFaultEnergyTheLongWayRound(t *testing.T) {
 }
 
 func TestRemediesPassAndLessDoesNot(t *testing.T) {
-	whole := load(t, "wagtail")
+	whole := findingtest.Load(t, "wagtail")
 	for _, c := range []struct {
 		name, id string
 		site     site.Site
@@ -113,7 +113,7 @@ func TestRemediesPassAndLessDoesNot(t *testing.T) {
 
 // The verdict of ouzel, which the expected findings leave out: one pole, and less than the current at full power.
 func TestIsolationOfASinglePoleFails(t *testing.T) {
-	f := find(t, load(t, "ouzel"), "source.isolation")
+	f := find(t, findingtest.Load(t, "ouzel"), "source.isolation")
 	if f.Verdict != finding.Fail || f.Value.Nominal != 1 || *f.Limit.Low != 2 || f.Margin != -1 {
 		t.Errorf("source.isolation = %s, %v of %v poles, margin %v, want fail, 1 of 2, −1", f.Verdict, f.Value.Nominal, *f.Limit.Low, f.Margin)
 	}
@@ -135,7 +135,7 @@ func TestFindingsNameTheKeysThatAreMissing(t *testing.T) {
 		{"source.switch", func(s *site.Site) { s.Source.Switch = nil }, []string{"source.isolation"}},
 		{"converter.rated_power", func(s *site.Site) { s.Converter = nil }, []string{"source.isolation"}},
 	} {
-		s := load(t, "wagtail")
+		s := findingtest.Load(t, "wagtail")
 		c.take(&s)
 		for _, f := range Findings(s) {
 			want := slices.Contains(c.undecided, f.ID)
@@ -143,6 +143,6 @@ func TestFindingsNameTheKeysThatAreMissing(t *testing.T) {
 				t.Errorf("without %s: %s = %s (%v), want undecided by that key", c.key, f.ID, f.Verdict, f.Because)
 			}
 		}
-		cornertest.AreOrdered(t, "without "+c.key, Findings(s))
+		findingtest.AreOrdered(t, "without "+c.key, Findings(s))
 	}
 }

@@ -1,6 +1,7 @@
 package window
 
 import (
+	"chargehand/commission/finding/findingtest"
 	"strings"
 	"testing"
 	"unicode/utf8"
@@ -9,7 +10,7 @@ import (
 func TestWriteRows(t *testing.T) {
 	for _, name := range []string{"wagtail", "nightjar", "ouzel"} {
 		var b strings.Builder
-		if err := WriteRows(&b, Table(load(t, name))); err != nil {
+		if err := WriteRows(&b, Table(findingtest.Load(t, name))); err != nil {
 			t.Fatal(err)
 		}
 		lines := strings.Split(strings.TrimSuffix(b.String(), "\n"), "\n")

@@ -8,11 +8,9 @@ import (
 	"chargehand/commission/quantity"
 )
 
-const publicCases = "../../testdata/public-cases.json"
-
 // Source of the figures: public-cases.json, closed form, P19 and P20 confirmed by ngspice.
 func TestPublicVoltageWindow(t *testing.T) {
-	for _, c := range findingtest.Cases(t, publicCases, "voltage_window") {
+	for _, c := range findingtest.Cases(t, "voltage_window") {
 		v := func(name string) quantity.Voltage { return quantity.Voltage(c.Input(name, 0)) }
 		a := func(name string) quantity.Current { return quantity.Current(c.Input(name, 0)) }
 		r := func(name string) quantity.Resistance { return quantity.Resistance(c.Input(name, 0)) }
@@ -21,7 +19,7 @@ func TestPublicVoltageWindow(t *testing.T) {
 		low := LowestTerminal(n*v("v_cell_min_V"), a("i_discharge_A"), r("r_ext_ohm"), v("meas_err_src_V"))
 		busLow := LowestBus(v("v_set_V"), v("droop_V"), v("reg_tol_V"), v("meas_err_bus_V"), v("ripple_pp_V"))
 		busHigh := HighestBus(v("v_set_V"), v("droop_regen_V"), v("reg_tol_V"), v("meas_err_bus_V"), v("ripple_pp_V"))
-		least := HardwareDuty(quantity.Frequency(c.Input("f_sw_Hz", 0)), quantity.Seconds(c.Input("t_min_pulse_s", 0)), quantity.Seconds(c.Input("t_dead_s", 0)))
+		least := HardwareDuty(quantity.Frequency(c.In("f_sw_Hz")), quantity.Seconds(c.In("t_min_pulse_s")), quantity.Seconds(c.In("t_dead_s")))
 		dutyLow, dutyHigh := Duty(high, busLow), Duty(low, busHigh)
 		c.Check(t, map[string]any{
 			"v_src_max_V": float64(high), "v_src_min_V": float64(low), "v_bus_min_V": float64(busLow), "v_bus_max_V": float64(busHigh),
@@ -34,33 +32,33 @@ func TestPublicVoltageWindow(t *testing.T) {
 }
 
 func TestPublicSourcePower(t *testing.T) {
-	for _, c := range findingtest.Cases(t, publicCases, "source_power") {
-		emf, r := quantity.Voltage(c.Input("emf_V", 0)), quantity.Resistance(c.Input("r_int_ohm", 0))
+	for _, c := range findingtest.Cases(t, "source_power") {
+		emf, r := quantity.Voltage(c.In("emf_V")), quantity.Resistance(c.In("r_int_ohm"))
 		eta := c.Input("eta", 1)
-		bus := c.Input("p_bus_W", 0)
+		bus := c.In("p_bus_W")
 		power := bus / eta
 		if bus < 0 {
 			power = bus * eta
 		}
 		i, ok := CurrentAtPower(emf, r, quantity.Power(power))
 		phases := c.Input("n_phases", 3)
-		limits := Limits{Phase: quantity.Current(c.Input("i_phase_max_A", 0)), Phases: int(phases), Source: quantity.Current(c.Input("i_src_max_A", 0)),
-			LeastTerminal: quantity.Voltage(c.Input("v_term_min_V", 0)), HighestTerminal: quantity.Voltage(c.Input("v_term_max_V", 0))}
+		limits := Limits{Phase: quantity.Current(c.In("i_phase_max_A")), Phases: int(phases), Source: quantity.Current(c.In("i_src_max_A")),
+			LeastTerminal: quantity.Voltage(c.In("v_term_min_V")), HighestTerminal: quantity.Voltage(c.In("v_term_max_V"))}
 		available, at := AvailableDischarge(emf, r, quantity.Ratio(eta), limits)
 		c.Check(t, map[string]any{
 			"p_src_W": power, "solvable": ok, "i_src_A": float64(i), "v_term_V": float64(emf) - float64(r)*float64(i),
-			"i_phase_A": float64(i) / phases, "i_bus_A": bus / c.Input("v_bus_V", 0), "p_transfer_max_W": float64(emf*emf) / (4 * float64(r)),
+			"i_phase_A": float64(i) / phases, "i_bus_A": bus / c.In("v_bus_V"), "p_transfer_max_W": float64(emf*emf) / (4 * float64(r)),
 			"p_avail_boost_W": float64(available), "i_at_p_avail_A": float64(at), "current_ok": i <= at,
 		})
 	}
 }
 
 func TestPublicDiodeConduction(t *testing.T) {
-	for _, c := range findingtest.Cases(t, publicCases, "diode_conduction") {
-		loop := Conduction{EMF: quantity.Voltage(c.Input("emf_V", 0)), Bus: quantity.Voltage(c.Input("v_bus_V", 0)), Diode: quantity.Voltage(c.Input("v_diode_V", 0)),
-			Source: quantity.Resistance(c.Input("r_src_ohm", 0)), Choke: quantity.Resistance(c.Input("r_choke_ohm", 0)), DiodeResistance: quantity.Resistance(c.Input("r_diode_ohm", 0)),
-			ChokeInductance: quantity.Inductance(c.Input("l_choke_H", 0)), Stray: quantity.Inductance(c.Input("l_stray_H", 0)), Phases: int(c.Input("n_phases", 3))}
-		trip, ok := loop.TimeTo(quantity.Current(c.Input("i_trip_A", 0)))
+	for _, c := range findingtest.Cases(t, "diode_conduction") {
+		loop := Conduction{EMF: quantity.Voltage(c.In("emf_V")), Bus: quantity.Voltage(c.In("v_bus_V")), Diode: quantity.Voltage(c.In("v_diode_V")),
+			Source: quantity.Resistance(c.In("r_src_ohm")), Choke: quantity.Resistance(c.In("r_choke_ohm")), DiodeResistance: quantity.Resistance(c.In("r_diode_ohm")),
+			ChokeInductance: quantity.Inductance(c.In("l_choke_H")), Stray: quantity.Inductance(c.In("l_stray_H")), Phases: int(c.Input("n_phases", 3))}
+		trip, ok := loop.TimeTo(quantity.Current(c.In("i_trip_A")))
 		if !ok {
 			t.Errorf("%s: TimeTo = never, want a time", c.ID)
 		}
@@ -76,10 +74,10 @@ func TestPublicDiodeConduction(t *testing.T) {
 }
 
 func TestPublicDutyLossy(t *testing.T) {
-	for _, c := range findingtest.Cases(t, publicCases, "duty_lossy") {
-		source, bus := quantity.Voltage(c.Input("v_src_V", 0)), quantity.Voltage(c.Input("v_bus_V", 0))
-		d := DutyWithDrops(source, bus, quantity.Current(c.Input("i_phase_A", 0)), Drops{Resistance: quantity.Resistance(c.Input("r_phase_ohm", 0)),
-			Switch: quantity.Voltage(c.Input("v_ce_V", 0)), Forward: quantity.Voltage(c.Input("v_f_V", 0))})
+	for _, c := range findingtest.Cases(t, "duty_lossy") {
+		source, bus := quantity.Voltage(c.In("v_src_V")), quantity.Voltage(c.In("v_bus_V"))
+		d := DutyWithDrops(source, bus, quantity.Current(c.In("i_phase_A")), Drops{Resistance: quantity.Resistance(c.In("r_phase_ohm")),
+			Switch: quantity.Voltage(c.In("v_ce_V")), Forward: quantity.Voltage(c.In("v_f_V"))})
 		c.Check(t, map[string]any{"duty_boost": float64(d), "duty_upper": float64(1 - d), "duty_ideal": float64(Duty(source, bus))})
 	}
 }

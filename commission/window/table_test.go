@@ -5,12 +5,13 @@ import (
 	"math"
 	"testing"
 
+	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/site"
 )
 
 // The rows against figures by hand from wagtail's own numbers: 198 cells, 62 mΩ, 260 A, 4.1085 V error, 990 V lowest bus.
 func TestTable(t *testing.T) {
-	rows := Table(load(t, "wagtail"))
+	rows := Table(findingtest.Load(t, "wagtail"))
 	if len(rows) != 11 {
 		t.Fatalf("Table = %d rows, want 11", len(rows))
 	}
@@ -45,7 +46,7 @@ func TestTable(t *testing.T) {
 
 // Where the rating binds, the power is η·(E − R_i·I)·I with I the limit, as in window.full-power's own formula backwards.
 func TestTablePowerBelowFullPower(t *testing.T) {
-	s := load(t, "ouzel")
+	s := findingtest.Load(t, "ouzel")
 	full := FullPower(s).Value.Nominal
 	for k, r := range Table(s) {
 		limited := r.Available.Nominal < 180e3*(1-1e-9)
@@ -59,7 +60,7 @@ func TestTablePowerBelowFullPower(t *testing.T) {
 	if rows := Table(site.Site{}); rows != nil {
 		t.Errorf("Table(empty site) = %v, want none", rows)
 	}
-	if rows := Table(load(t, "nightjar")); len(rows) != 11 || !math.IsNaN(float64(rows[3].StateOfCharge)) {
+	if rows := Table(findingtest.Load(t, "nightjar")); len(rows) != 11 || !math.IsNaN(float64(rows[3].StateOfCharge)) {
 		t.Errorf("Table(no state of charge) = %v, want eleven rows over the voltage", rows)
 	}
 }

@@ -1,7 +1,3 @@
-// Package findingtest compares findings with the expected findings of whole sites, and redoes printed calculations.
-//
-// Start at [Compare] for the files NAME.expect.json beside the sites in testdata, and at [Evaluate], a small calculator that
-// knows nothing of the program.
 package findingtest
 
 import (

@@ -2,6 +2,7 @@ package findingtest
 
 import (
 	"fmt"
+	"math/rand/v2"
 	"reflect"
 
 	"chargehand/commission/site"
@@ -60,6 +61,26 @@ func (t Tolerance) Set(v float64) {
 func (t Tolerance) Widen(factor float64) {
 	t.low.SetFloat(t.Nominal - factor*(t.Nominal-t.Low))
 	t.high.SetFloat(t.Nominal + factor*(t.Upper-t.Nominal))
+}
+
+// Draw is the site with every toleranced value somewhere inside its tolerance and exact there; ends is the chance that a
+// value stands at one of its ends instead.
+func Draw(s site.Site, random *rand.Rand, ends float64) site.Site {
+	drawn := Clone(s)
+	for _, t := range Tolerances(&drawn) {
+		t.Set(t.drawn(random, ends))
+	}
+	return drawn
+}
+
+func (t Tolerance) drawn(random *rand.Rand, ends float64) float64 {
+	switch {
+	case random.Float64() >= ends:
+		return t.Low + random.Float64()*(t.Upper-t.Low)
+	case random.IntN(2) == 1:
+		return t.Upper
+	}
+	return t.Low
 }
 
 // Tolerances are the toleranced values of a site, named after its fields.

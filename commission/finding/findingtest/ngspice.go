@@ -1,6 +1,6 @@
 //go:build peer
 
-package workedtest
+package findingtest
 
 import (
 	"math"

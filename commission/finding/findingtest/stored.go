@@ -1,4 +1,4 @@
-package workedtest
+package findingtest
 
 import (
 	"bufio"
