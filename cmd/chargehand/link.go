@@ -234,8 +234,8 @@ func (t *linkTrial) noDevice(ctx context.Context) error {
 }
 
 // sample reads the neighbourhood once more, unit by unit so that one that is away does not hide the others, and keeps it with
-// what was expected at that time.
-func (t *linkTrial) sample(ctx context.Context, meters map[signal.Name]expectation) {
+// what was expected at that time. It tells whether every signal that a meter was held against could be read.
+func (t *linkTrial) sample(ctx context.Context, meters map[signal.Name]expectation) bool {
 	ctx, stop := context.WithTimeout(ctx, patience)
 	defer stop()
 	s := linkSample{words: registermap.Words{}, meters: meters}
@@ -255,6 +255,13 @@ func (t *linkTrial) sample(ctx context.Context, meters map[signal.Name]expectati
 	s.site = expectedNow(t.papers.site, read)
 	maps.DeleteFunc(s.site, func(n signal.Name, _ expectation) bool { return silent[n] }) // the device says itself that it has none
 	t.samples = append(t.samples, s)
+	for n := range meters {
+		p, _ := t.papers.registers.Find(n)
+		if _, ok := s.words.Of(p, t.papers.unit()); !ok {
+			return false
+		}
+	}
+	return true
 }
 
 // units are the map parted by unit.
@@ -335,6 +342,7 @@ func (t *linkTrial) printLook() {
 	}
 	tell("")
 	t.printQuality()
+	t.printRefused()
 }
 
 func sameRegister(a, b registermap.Point) bool {
@@ -350,20 +358,22 @@ func (t *linkTrial) printQuality() {
 		tell("  " + what + "; " + todo)
 	}
 	var known []string
-	why := "nothing moves"
 	for _, p := range t.papers.registers.Points {
-		switch r := t.poller.Refresh(p.Name); {
-		case r.Known:
+		if r := t.poller.Refresh(p.Name); r.Known {
 			known = append(known, fmt.Sprintf("%s %v ± %v", p.Name, r.Period.Round(time.Millisecond), r.Uncertainty.Round(time.Millisecond)))
-		case r.Why != "":
-			why = r.Why
 		}
 	}
 	if len(known) > 0 {
 		tell("Renewed by the device every: " + strings.Join(known, "; "))
 	} else {
-		tell("How often the device renews its values is not known: " + why)
+		first := t.papers.registers.Points[0].Name
+		tell(fmt.Sprintf("How often the device renews its values is not known (%s: %s); --watch looks longer.", first, t.poller.Refresh(first).Why))
 	}
+}
+
+// printRefused says what around the signals could not be read.
+func (t *linkTrial) printRefused() {
+	tell := t.app.printLine
 	kinds := map[link.Kind]int{}
 	for _, r := range t.refused {
 		kinds[link.KindOf(r.Err)] += r.Span.Quantity
@@ -422,7 +432,11 @@ func (t *linkTrial) watch(ctx context.Context, batches <-chan signal.Batch, o op
 				t.app.complain(err, "")
 				continue
 			}
-			t.sample(ctx, map[signal.Name]expectation{n: e})
+			if !t.sample(ctx, map[signal.Name]expectation{n: e}) {
+				t.samples = t.samples[:len(t.samples)-1]
+				t.app.complain(fmt.Errorf("the device did not give %s while the meter was read", n), "type the reading again when the link is up")
+				continue
+			}
 			o = t.opinion()
 			if t.options.json {
 				t.complainOf(o)

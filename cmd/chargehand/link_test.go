@@ -338,7 +338,7 @@ func TestLinkWatchTakesHandReadings(t *testing.T) {
 		}
 		t.Fatalf("link --watch prints\n%s%s\nwant %d times %q", end(out.String()), stderr.String(), n, text)
 	}
-	until(1, "At rest, one")
+	until(1, "At rest, this")
 	for i, level := range []struct {
 		volts float64
 		typed string
@@ -393,5 +393,32 @@ func TestLinkUsage(t *testing.T) {
 	}
 	if n := len(b.proxy.Requests()); n != 0 {
 		t.Errorf("link with bad usage sent %d requests, want none", n)
+	}
+}
+
+func TestLinkInASCII(t *testing.T) {
+	t.Parallel()
+	b := newLinkBench(t, nil)
+	out := b.chargehand(t.Context(), "link", "--ascii", "--meter", "heatsink-temperature=12 °C", b.site()).stdout
+	for i, r := range out {
+		if r > '~' {
+			t.Fatalf("link --ascii prints %q in %q, want ASCII only", r, out[max(0, i-40):i+4])
+		}
+	}
+	if !strings.Contains(out, "41.7 degC") {
+		t.Errorf("link --ascii prints\n%s\nwant degC spelt out", out)
+	}
+}
+
+// A doubtful map is told beside a JSON result, never in it.
+func TestLinkJSONOfAWrongMap(t *testing.T) {
+	t.Parallel()
+	b := newLinkBench(t, in(signal.BusVoltage, "0.1", "0.01"))
+	l := b.chargehand(t.Context(), "link", "--json", "--meter", "bus-voltage=1024.0 V", b.site())
+	if l.code != exitFailed || !strings.Contains(l.stderr, "write instead: scale = 0.1") {
+		t.Errorf("link --json of a wrong map = exit %d, %s, want %d and the line to change on stderr", l.code, l.stderr, exitFailed)
+	}
+	if !json.Valid([]byte(l.stdout)) || strings.Contains(l.stdout, "scale") {
+		t.Errorf("link --json of a wrong map prints %s, want one object and nothing else", l.stdout)
 	}
 }

@@ -2,6 +2,7 @@ package main
 
 import (
 	"fmt"
+	"math"
 	"time"
 
 	"chargehand/commission/signal"
@@ -10,30 +11,50 @@ import (
 
 // changes remembers what was last told of each signal and of the link.
 type changes struct {
-	told map[signal.Name]string
-	when map[signal.Name]time.Time
+	told map[signal.Name]told
 	up   bool
-	why  string
 }
 
+// told is a reading as it was last told.
+type told struct {
+	reading signal.Reading
+	when    time.Time
+}
+
+// How much a value must move to be worth a line, and after how long less will do.
+const (
+	toldSteps = 3     // steps of its register
+	toldShare = 0.005 // of its value
+	toldAgain = 10 * time.Second
+)
+
 func newChanges(b signal.Batch) *changes {
-	c := &changes{told: map[signal.Name]string{}, when: map[signal.Name]time.Time{}, up: b.Link.Up}
+	c := &changes{told: map[signal.Name]told{}, up: b.Link.Up}
 	for _, r := range b.Readings {
-		c.told[r.Name], c.when[r.Name] = changeOf(r), b.At
+		c.told[r.Name] = told{r, b.At}
 	}
 	return c
 }
 
-// changeOf is what counts as a change: another value, or another reason for none. Late is no change by itself.
-func changeOf(r signal.Reading) string {
-	if r.Quality.HasValue() {
-		return registermap.Hex(r.Raw)
+// isWorthALine tells whether a reading is so different from what was last told of it, or that so long ago, that it is told
+// again. Late is no change by itself, and a heartbeat only moves.
+func (t told) isWorthALine(p registermap.Point, r signal.Reading, at time.Time) bool {
+	before := t.reading
+	since := at.Sub(t.when)
+	switch {
+	case before.Quality.HasValue() != r.Quality.HasValue() || !r.Quality.HasValue() && before.Quality != r.Quality:
+		return true
+	case !r.Quality.HasValue() || r.Name == signal.Heartbeat || r.Value == before.Value || since < leastLines:
+		return false
+	case r.Name.Unit() == "" || since > toldAgain:
+		return true
 	}
-	return string(r.Quality)
+	moved := math.Abs(r.Value - before.Value)
+	return moved >= toldSteps*math.Abs(p.Scale*p.UnitFactor)*(1-1e-9) && moved >= toldShare*math.Abs(r.Value)
 }
 
-// since gives a line for the link where it came or went, and for each signal that changed. A signal that moves all the time
-// is told once a second, the heartbeat, which only moves, not at all; while the link is down it alone is told.
+// since gives a line for the link where it came or went, and for each signal that changed, once a second at most; while the
+// link is down it alone is told.
 func (c *changes) since(m registermap.Map, b signal.Batch) []string {
 	var lines []string
 	clock := b.At.Format(time.TimeOnly)
@@ -53,12 +74,10 @@ func (c *changes) since(m registermap.Map, b signal.Batch) []string {
 		return lines
 	}
 	for i, r := range b.Readings {
-		now := changeOf(r)
-		before := c.told[r.Name]
-		if now == before || r.Name == signal.Heartbeat && r.Quality.HasValue() || b.At.Sub(c.when[r.Name]) < leastLines {
+		if !c.told[r.Name].isWorthALine(m.Points[i], r, b.At) {
 			continue
 		}
-		c.told[r.Name], c.when[r.Name] = now, b.At
+		c.told[r.Name] = told{r, b.At}
 		text := "no value, " + string(r.Quality)
 		if r.Quality.HasValue() {
 			text = shown(m.Points[i], r.Value)

@@ -145,10 +145,11 @@ func (o *opinion) whole(p papers, d registermap.Diagnosis, expected map[signal.N
 		return mended
 	}
 	o.accused = true
+	list = slices.DeleteFunc(list, func(e registermap.Explanation) bool { return isLess(e, list[0]) })
 	if len(list) == 1 {
-		o.add("The map is wrong in one way throughout, as far as can be seen. One change mends all that differs:")
+		o.add("The map is wrong in one way throughout, as far as can be seen. One change mends %d signals:", len(list[0].Signals))
 	} else {
-		o.add("The map is wrong. Each of these changes alone mends what differs; they cannot be told apart yet:")
+		o.add("The map is wrong throughout. Each of these changes alone would mend it; they cannot be told apart yet:")
 	}
 	for _, e := range list {
 		o.add("  %s: %s", filepath.Base(p.mapFile), e.Line)
@@ -161,6 +162,12 @@ func (o *opinion) whole(p papers, d registermap.Diagnosis, expected map[signal.N
 		o.add("  To part them: hand readings (--meter) of signals that not all of them mend, at levels a tenth apart.")
 	}
 	return mended
+}
+
+// isLess tells whether one change mends only some of what another mends, and nothing else.
+func isLess(e, than registermap.Explanation) bool {
+	return len(e.Signals) < len(than.Signals) &&
+		!slices.ContainsFunc(e.Signals, func(n signal.Name) bool { return !slices.Contains(than.Signals, n) })
 }
 
 func names(list []signal.Name) string {
@@ -182,19 +189,15 @@ func (o *opinion) signal(p papers, s registermap.SignalDiagnosis, e expectation)
 	o.accused, o.doubts = o.accused || accuses(s, e), true
 	switch {
 	case s.Verdict == registermap.Explained && e.basis == byRest:
-		o.add("  In between nothing is proved: it may be charging or discharging. At rest, one of these would explain it:")
-		o.rivals(p, s, e)
+		o.add("  In between nothing is proved: it may be charging or discharging. At rest, this would explain it:")
+	case s.Verdict == registermap.Explained && len(s.Hypotheses) == 1 && s.Enough:
+		o.add("  One line explains it:")
 	case s.Verdict == registermap.Explained && len(s.Hypotheses) == 1:
-		if s.Enough {
-			o.add("  One line explains it:")
-		} else {
-			o.add("  One line would explain it; a suspicion until more is known:")
-		}
-		o.rivals(p, s, e)
+		o.add("  One line would explain it; a suspicion until more is known:")
 	case s.Verdict == registermap.Explained:
 		o.add("  %d ways to read it agree and cannot be told apart yet:", len(s.Hypotheses))
-		o.rivals(p, s, e)
 	}
+	o.rivals(p, s, e)
 	if advice := o.advice(s, e); advice != "" {
 		o.add("  Next: %s.", advice)
 	}
@@ -210,9 +213,16 @@ func (o *opinion) advice(s registermap.SignalDiagnosis, e expectation) string {
 	return s.Advice
 }
 
-// rivals lists the changes of each way to read a signal, those of one line first.
+// rivals lists the changes of each way to read a signal. Where only a range is expected nearly anything fits with two lines
+// changed; where they are many, those of one line are listed and the others counted.
 func (o *opinion) rivals(p papers, s registermap.SignalDiagnosis, e expectation) {
-	listed := s.Hypotheses[:min(len(s.Hypotheses), mostRivals)]
+	listed := slices.DeleteFunc(slices.Clone(s.Hypotheses), func(h registermap.Hypothesis) bool {
+		return !isPossible(s.Point.Name, h.Value) || !e.agrees(h.Point, h.Value) || len(s.Hypotheses) > mostRivals && !e.isNarrow() && len(h.Changes) > 1
+	})
+	if len(listed) == 0 {
+		listed = s.Hypotheses
+	}
+	listed = listed[:min(len(listed), mostRivals)]
 	for i, h := range listed {
 		mark := "-"
 		if len(listed) > 1 {
@@ -226,7 +236,7 @@ func (o *opinion) rivals(p papers, s registermap.SignalDiagnosis, e expectation)
 		}
 	}
 	if more := len(s.Hypotheses) - len(listed); more > 0 {
-		o.add("  and %d more of several lines at once", more)
+		o.add("  and %d more, less likely", more)
 	}
 	if len(s.Hypotheses) > 1 && len(s.Certain) > 0 {
 		var lines []string

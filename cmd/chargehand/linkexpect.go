@@ -16,6 +16,7 @@ type expectation struct {
 	registermap.Expected
 	basis basis
 	why   string
+	gap   [2]float64 // values within it do not agree: neither dead nor in the window; none where both are 0
 }
 
 // basis is where an expectation comes from.
@@ -41,7 +42,7 @@ const (
 
 // between is the expectation of any value from low to high.
 func between(low, high float64, b basis, why string) expectation {
-	return expectation{registermap.Expected{Value: (low + high) / 2, Tolerance: (high - low) / 2}, b, why}
+	return expectation{Expected: registermap.Expected{Value: (low + high) / 2, Tolerance: (high - low) / 2}, basis: b, why: why}
 }
 
 // expectedNow says what a site's signals ought to read, given what they do read: a side is dead or in its window, currents
@@ -83,12 +84,15 @@ func expectVoltages(all map[signal.Name]expectation, s site.Site, read map[signa
 	low, high := sourceWindow(s)
 	sourceError, busError := float64(s.Source.Error()), float64(s.Bus.Error())
 	put := func(n signal.Name, most, err float64, b basis, what string) {
-		switch u, ok := read[n]; {
-		case ok && math.Abs(u) <= dead(s)+err:
-			all[n] = between(-dead(s)-err, dead(s)+err, b, what+" is dead")
-		default:
-			all[n] = between(low-err, most+err, b, fmt.Sprintf("%s is dead, or within %.0f to %.0f V", what, low, most))
+		gap := [2]float64{dead(s) + err, low - err}
+		why := fmt.Sprintf("%s is dead, or within %.0f to %.0f V", what, low, most)
+		u, ok := read[n]
+		e := between(-gap[0], most+err, b, why)
+		e.gap = gap
+		if !ok || !e.agrees(registermap.Point{}, u) {
+			e.Expected = between(gap[1], most+err, b, why).Expected // what is mapped wrong is rarely dead
 		}
+		all[n] = e
 	}
 	put(signal.SourceVoltage, high, sourceError, byLimits, "the source")
 	put(signal.BusVoltage, max(high, highestBus(s)), busError, byRest, "the bus at rest")
@@ -128,12 +132,12 @@ func expectSettings(all map[signal.Name]expectation, s site.Site) {
 	if len(s.Infeeds) > 0 {
 		own := s.Infeeds[0]
 		if u := own.Setpoint; u.IsGiven() {
-			all[signal.VoltageSetpoint] = expectation{registermap.Expected{Value: float64(u.Nominal),
-				Tolerance: float64(own.SetpointError.Of(u.Nominal))}, bySetting, "the site's setpoint"}
+			err := float64(own.SetpointError.Of(u.Nominal))
+			all[signal.VoltageSetpoint] = between(float64(u.Nominal)-err, float64(u.Nominal)+err, bySetting, "the site's setpoint")
 		}
 		if own.Droop.IsGiven() {
-			all[signal.DroopSetting] = expectation{registermap.Expected{
-				Value: float64(own.Droop.At(s.Bus.Nominal.Nominal, own.RatedCurrent.Nominal))}, bySetting, "the site's droop"}
+			droop := float64(own.Droop.At(s.Bus.Nominal.Nominal, own.RatedCurrent.Nominal))
+			all[signal.DroopSetting] = between(droop, droop, bySetting, "the site's droop")
 		}
 	}
 	limit := func(n signal.Name, most quantity.Current, what string) {
@@ -143,6 +147,22 @@ func expectSettings(all map[signal.Name]expectation, s site.Site) {
 	}
 	limit(signal.ChargeLimit, s.Source.MaxChargeCurrent.Nominal, "charging")
 	limit(signal.DischargeLimit, s.Source.MaxDischargeCurrent.Nominal, "discharging")
+}
+
+// isNarrow tells whether an expectation is a value rather than a range.
+func (e expectation) isNarrow() bool {
+	return e.basis == byMeter || e.basis == bySetting && e.Tolerance < 0.1*math.Abs(e.Value)
+}
+
+// agrees tells whether a reading of a point is what is expected: within the expectation's own tolerance and half a step of the
+// register, or a thousandth of the value, and not in the gap.
+func (e expectation) agrees(p registermap.Point, value float64) bool {
+	step := 0.0
+	if p.Type != registermap.F32 && p.Type != registermap.F64 {
+		step = math.Abs(p.Scale * p.UnitFactor)
+	}
+	within := max(0.001*math.Abs(e.Value), (e.Tolerance+step/2)*(1+1e-9))
+	return math.Abs(value-e.Value) <= within && (value <= e.gap[0] || value >= e.gap[1])
 }
 
 // setOtherwise tells whether a value that differs from a setting may well be another setting of the same thing: none at all,
@@ -173,7 +193,7 @@ func parseMeter(text string, s site.Site, m registermap.Map) (signal.Name, expec
 	if refusal != nil {
 		return "", expectation{}, fmt.Errorf("%s=%s: read %s, want %s, such as %s", n, value, refusal.Read, refusal.Wanted, refusal.Example)
 	}
-	e := expectation{registermap.Expected{Value: v}, byMeter, "hand meter"}
+	e := between(v, v, byMeter, "hand meter")
 	if n.Unit() != "" {
 		e.Tolerance = meterError(n, v, s) + sensorError(n, v, s) + lastDigit(value, n.Unit())/2
 	}

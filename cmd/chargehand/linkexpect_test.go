@@ -33,11 +33,14 @@ func TestExpectedNow(t *testing.T) {
 		basis     basis
 		source    string
 	}{
-		{"source in its window", live, signal.SourceVoltage, 600.97, 844.35, byLimits,
+		{"source in its window", live, signal.SourceVoltage, -64.11, 844.35, byLimits, "60 V and 0.5 % of 821.7 V; 198·4.15 + 62 mΩ·1.15·260 A + 0.5 %"},
+		{"source in between", map[signal.Name]float64{signal.SourceVoltage: 72.5}, signal.SourceVoltage, 600.97, 844.35, byLimits,
 			"198·3.20 − 62 mΩ·1.15·400 A − 0.5 % of 821.7 V; 198·4.15 + 62 mΩ·1.15·260 A + 0.5 %, by hand"},
-		{"source dead", map[signal.Name]float64{signal.SourceVoltage: 3}, signal.SourceVoltage, -64.11, 64.11, byLimits, "60 V touch-safe and 4.11 V"},
-		{"bus between charged and tripping", live, signal.BusVoltage, 600.08, 1135, byRest, "605.08 V − 5 V to 1130 V + 5 V"},
-		{"bus dead", map[signal.Name]float64{signal.BusVoltage: -0.4}, signal.BusVoltage, -65, 65, byRest, "60 V and 0.5 % of 1000 V"},
+		{"source tenfold", map[signal.Name]float64{signal.SourceVoltage: 7248}, signal.SourceVoltage, 600.97, 844.35, byLimits, "as in between"},
+		{"source dead", map[signal.Name]float64{signal.SourceVoltage: 3}, signal.SourceVoltage, -64.11, 844.35, byLimits, "60 V touch-safe and 4.11 V"},
+		{"bus in between", map[signal.Name]float64{signal.BusVoltage: 300}, signal.BusVoltage, 600.08, 1135, byRest, "605.08 V − 5 V to 1130 V + 5 V"},
+		{"bus not read", nil, signal.BusVoltage, 600.08, 1135, byRest, "605.08 V − 5 V to 1130 V + 5 V"},
+		{"bus dead", map[signal.Name]float64{signal.BusVoltage: -0.4}, signal.BusVoltage, -65, 1135, byRest, "60 V and 0.5 % of 1000 V"},
 		{"setpoint", live, signal.VoltageSetpoint, 1027.94, 1032.06, bySetting, "1030 V ± 0.2 %"},
 		{"droop", live, signal.DroopSetting, 30.0 / 220, 30.0 / 220, bySetting, "3 % of 1000 V at 220 A"},
 		{"source current", live, signal.SourceCurrent, -600, 600, byLimits, "1.5 · 400 A"},
@@ -51,6 +54,11 @@ func TestExpectedNow(t *testing.T) {
 		if !ok || math.Abs(low-test.low) > 0.01 || math.Abs(high-test.high) > 0.01 || e.basis != test.basis {
 			t.Errorf("%s: expectedNow = %.2f to %.2f by %s, want %.2f to %.2f by %s: %s", test.name, low, high, e.basis, test.low, test.high,
 				test.basis, test.source)
+		}
+	}
+	for value, want := range map[float64]bool{-70: false, 0: true, 60: true, 72.5: false, 590: false, 724: true, 850: false} {
+		if got := expectedNow(s, live)[signal.SourceVoltage].agrees(registermap.Point{Scale: 0.1, UnitFactor: 1}, value); got != want {
+			t.Errorf("agrees(%g V) of the source = %v, want %v: dead to 64.1 V, or 601.0 to 844.4 V", value, got, want)
 		}
 	}
 	if e, ok := expectedNow(s, live)[signal.FaultCode]; ok {
@@ -92,7 +100,7 @@ func TestParseMeter(t *testing.T) {
 }
 
 func TestSetOtherwise(t *testing.T) {
-	e := expectation{registermap.Expected{Value: 1030, Tolerance: 2}, bySetting, ""}
+	e := between(1028, 1032, bySetting, "")
 	for value, want := range map[float64]bool{0: true, 1000: true, 520: true, 136: false, 10300: false, -1030: false} {
 		if got := e.setOtherwise(value); got != want {
 			t.Errorf("setOtherwise(%g) = %v, want %v", value, got, want)

@@ -168,7 +168,7 @@ func readings(p registermap.Point, own uint8, w registermap.Words, e expectation
 		value := shown(h.Point, h.Value)
 		if r := h.Point.Decode(words); !r.Quality.HasValue() {
 			value = "no value"
-		} else if expected && math.Abs(h.Value-e.Value) <= e.tolerance(h.Point) {
+		} else if expected && e.agrees(h.Point, h.Value) {
 			value += "*"
 		}
 		if at := slices.IndexFunc(all, func(r reading) bool { return r.value == value }); at >= 0 {
@@ -239,23 +239,25 @@ func way(h registermap.Hypothesis) string {
 // mostPossible are values beyond any plant, by unit. Common practice.
 var mostPossible = map[string]float64{"V": 1e4, "A": 2e4, "W": 1e8, "°C": 1e3, "Ω": 1e10, "V/A": 100, "": 1e10}
 
+// leastPossible is the least size of a number that is none by accident of its bits, as a float of other words is.
+const leastPossible = 1e-6
+
 // isPossible tells whether some plant could have this value.
 func isPossible(n signal.Name, value float64) bool {
-	least := 0.0
-	if slices.Contains([]string{"Ω", "V/A"}, n.Unit()) {
-		return value >= least && value <= mostPossible[n.Unit()]
-	}
-	if n.Unit() == "°C" {
+	most := mostPossible[n.Unit()]
+	least := -most
+	switch n.Unit() {
+	case "Ω", "V/A":
+		least = 0
+	case "°C":
 		least = -60
-		return value >= least && value <= mostPossible["°C"]
 	}
-	return math.Abs(value) <= mostPossible[n.Unit()]
+	return value >= least && value <= most && (value == 0 || math.Abs(value) >= leastPossible)
 }
 
 // text is an expectation in words.
 func (e expectation) text(p registermap.Point) string {
-	switch {
-	case e.basis == byMeter || e.basis == bySetting && e.Tolerance < 0.1*math.Abs(e.Value):
+	if e.isNarrow() {
 		s := shown(p, e.Value)
 		if e.Tolerance > 0 {
 			s += " ± " + quantity.Engineering(e.Tolerance, p.Name.Unit(), 2)
@@ -264,14 +266,4 @@ func (e expectation) text(p registermap.Point) string {
 	}
 	return fmt.Sprintf("%s to %s: %s", quantity.Engineering(e.Value-e.Tolerance, p.Name.Unit(), 3),
 		quantity.Engineering(e.Value+e.Tolerance, p.Name.Unit(), 3), e.why)
-}
-
-// tolerance is how far a reading may lie from what is expected: the expectation's own and half a step of the register, or a
-// thousandth of the value.
-func (e expectation) tolerance(p registermap.Point) float64 {
-	step := 0.0
-	if p.Type != registermap.F32 && p.Type != registermap.F64 {
-		step = math.Abs(p.Scale * p.UnitFactor)
-	}
-	return max(0.001*math.Abs(e.Value), (e.Tolerance+step/2)*(1+1e-9))
 }
