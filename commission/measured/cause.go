@@ -123,7 +123,11 @@ func (f *charge) closedFromTheStart() []finding.Cause {
 		return []finding.Cause{because("bypass-welded", 0.94, append(evidence, "the bypass reports closed from the first sample on")...), because("contact-report-false", 0.3, evidence...)}
 	}
 	const lately = 0.25 // s, at most since a command that the record missed
-	started := f.scale() * (1 - math.Exp(-lately/f.tau().low))
+	tau := f.tau().low
+	if f.fit.Status == fit.OK {
+		tau = f.fit.Tau
+	}
+	started := f.scale() * (1 - math.Exp(-lately/tau))
 	if reported(f.precharge) && math.IsNaN(f.opened(f.precharge)) && first > started+errors && first < f.emf+errors {
 		return []finding.Cause{because("precharge-welded", 0.9, append(evidence, "the pre-charge contactor reports closed from the first sample to the last")...),
 			because("bus-still-charged", 0.4, evidence...)}

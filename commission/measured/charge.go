@@ -151,7 +151,9 @@ func (f *charge) window() {
 	if at := f.bypass.firstAt(0.5, 0); !math.IsNaN(at) && !f.reportsBefore() {
 		closing = math.Min(closing, at)
 	}
-	f.end = math.Min(f.end, closing-math.Max(contactLead, 1.5*f.refresh))
+	if last := f.bus.between(math.Inf(-1), closing); last.ok && !math.IsInf(closing, 1) {
+		f.end = math.Min(last.last(), closing-math.Max(contactLead, 1.5*f.refresh))
+	}
 	if opened := f.opened(f.precharge); !math.IsNaN(opened) {
 		f.end = math.Min(f.end, opened-f.refresh)
 	}

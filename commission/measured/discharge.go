@@ -82,7 +82,7 @@ func (f *fall) findShelf() {
 	last := trace{t: f.t, v: f.v, resolution: f.bus.resolution, ok: true}.between(from, math.Inf(1))
 	slope, u := drift(last)
 	asked := fit.Median(last.v) / (f.rb.high * (f.link.high + f.filter.value + f.paper.filter.high))
-	if !last.ok || fit.Median(last.v) < 0.05*f.first || asked < 6*u || -slope > 0.25*asked {
+	if len(last.t) < 8 || fit.Median(last.v) < 0.05*f.first || asked < 6*u || -slope > 0.25*asked {
 		return
 	}
 	f.shelf = shelf{found: true, at: fit.Median(last.v), from: from, to: f.t[n-1]}

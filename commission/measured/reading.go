@@ -325,6 +325,9 @@ func slow(p paper, c capture.Capture) []finding.Cause {
 	if d := p.site.Device; d != nil && d.MaxAge.IsGiven() {
 		longest = float64(d.MaxAge.Nominal)
 	}
+	if c.Kind == capture.Discharge { // before the fall it may have been polled at another pace
+		c.Samples = c.Samples[slices.IndexFunc(c.Samples, func(s capture.Sample) bool { return s.At >= 0 }):]
+	}
 	refresh := math.Max(renewal(traceOf(c, signal.BusVoltage)), standstill(c))
 	if refresh <= math.Max(math.Max(longest, 0.2), 2.5*spacing(c)) { // where polling is the slower, nothing can be said
 		return nil
@@ -411,10 +414,28 @@ func dropped(_ paper, c capture.Capture) []finding.Cause {
 	if c.Kind == capture.Discharge {
 		single = 3 * least
 	}
+	if runs, empty := silences(c); runs >= 3 {
+		return []finding.Cause{because("link-drops", 0.88, fmt.Sprintf("no answer to %d of %d questions, %d times in a row", empty, len(c.Samples), runs))}
+	}
 	if n == 0 || n == 1 && longest < single {
 		return nil
 	}
 	return []finding.Cause{because("link-drops", 0.88, fmt.Sprintf("no answer %d times, up to %s, together %s", n, number(longest, "s"), number(total, "s")))}
+}
+
+// silences counts the samples without any value, and how many times they began.
+func silences(c capture.Capture) (runs, empty int) {
+	silent := false
+	for _, s := range c.Samples {
+		was := silent
+		if silent = !carries(s); silent {
+			empty++
+		}
+		if silent && !was {
+			runs++
+		}
+	}
+	return runs, empty
 }
 
 // reversed: the bus charges although the current reads as flowing from it.
@@ -452,7 +473,8 @@ func (f *charge) standing() []finding.Cause {
 		}
 	}
 	level := tr.v[bestFrom]
-	before := tr.between(tr.t[bestFrom]-0.25*f.tau().nominal-2*f.refresh, tr.t[bestFrom])
+	since := math.Min(tr.t[bestFrom]-0.25*f.tau().nominal-2*f.refresh, tr.t[max(bestFrom-2, 0)])
+	before := tr.between(since, tr.t[bestFrom])
 	if best < 0.5*f.tau().nominal || !before.ok || level-f.v0 < 0.03*f.scale() {
 		return nil
 	}
