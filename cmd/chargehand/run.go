@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"io"
 	"strings"
+	"sync"
 	"time"
 
 	"github.com/charmbracelet/lipgloss"
@@ -49,10 +50,17 @@ type app struct {
 	ascii, plain bool
 }
 
+// settleLibraries sets, once for all calls side by side, what libraries hold in variables of their own. Widths must not depend on
+// the machine's language: the screens count a symbol such as Ω as one column everywhere. A double click on Windows opens the
+// start screen.
+var settleLibraries = sync.OnceFunc(func() {
+	runewidth.DefaultCondition.EastAsianWidth = false
+	cobra.MousetrapHelpText = ""
+})
+
 // run is the whole program; it returns the exit code.
 func run(ctx context.Context, args []string, s surroundings) int {
-	// Widths must not depend on the machine's language: the screens count a symbol such as Ω as one column everywhere.
-	runewidth.DefaultCondition.EastAsianWidth = false
+	settleLibraries()
 	a := &app{surroundings: s, now: time.Now}
 	root := a.rootCommand()
 	root.SetArgs(args)
@@ -77,7 +85,6 @@ func run(ctx context.Context, args []string, s surroundings) int {
 }
 
 func (a *app) rootCommand() *cobra.Command {
-	cobra.MousetrapHelpText = "" // a double click on Windows opens the start screen
 	root := &cobra.Command{
 		Use:   "chargehand",
 		Short: "Commission the tie of a source to a DC bus: desk checks, dry run, walk, signed log",
