@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"io"
 	"strings"
+	"sync"
 	"time"
 
 	"github.com/charmbracelet/lipgloss"
@@ -49,10 +50,17 @@ type app struct {
 	ascii, plain bool
 }
 
+// settleLibraries sets, once for all calls side by side, what libraries hold in variables of their own. Widths must not depend on
+// the machine's language: the screens count a symbol such as Ω as one column everywhere. A double click on Windows opens the
+// start screen.
+var settleLibraries = sync.OnceFunc(func() {
+	runewidth.DefaultCondition.EastAsianWidth = false
+	cobra.MousetrapHelpText = ""
+})
+
 // run is the whole program; it returns the exit code.
 func run(ctx context.Context, args []string, s surroundings) int {
-	// Widths must not depend on the machine's language: the screens count a symbol such as Ω as one column everywhere.
-	runewidth.DefaultCondition.EastAsianWidth = false
+	settleLibraries()
 	a := &app{surroundings: s, now: time.Now}
 	root := a.rootCommand()
 	root.SetArgs(args)
@@ -77,7 +85,7 @@ func run(ctx context.Context, args []string, s surroundings) int {
 }
 
 func (a *app) rootCommand() *cobra.Command {
-	cobra.MousetrapHelpText = "" // a double click on Windows opens the start screen
+	asked := false
 	root := &cobra.Command{
 		Use:   "chargehand",
 		Short: "Commission the tie of a source to a DC bus: desk checks, dry run, walk, signed log",
@@ -93,8 +101,11 @@ never stands for absence of voltage.`,
 		Args:          a.noArguments,
 		SilenceUsage:  true,
 		SilenceErrors: true,
-		Version:       version(),
 		RunE: func(cmd *cobra.Command, _ []string) error {
+			if asked {
+				fmt.Fprintln(a.out, "chargehand "+version())
+				return nil
+			}
 			if !a.hasTerminal() {
 				_ = cmd.Help()
 				return unable
@@ -102,8 +113,9 @@ never stands for absence of voltage.`,
 			return a.startScreen(cmd.Context())
 		},
 	}
-	// No SetVersionTemplate: a template of our own links text/template, with which the linker drops no method (4 MB more).
 	root.SetFlagErrorFunc(func(_ *cobra.Command, err error) error { return usageError{err} })
+	// Not through the library's template of the version: it links text/template, with which the linker drops no method (4 MB).
+	root.Flags().BoolVarP(&asked, "version", "v", false, "the release and the commit it was built from")
 	flags := root.PersistentFlags()
 	flags.StringVar(&a.themeName, "theme", "auto", "colours: auto, dark, light or none")
 	flags.BoolVar(&a.ascii, "ascii", false, "draw with ASCII only")
