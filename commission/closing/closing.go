@@ -42,14 +42,15 @@ const (
 type bypass struct {
 	site    site.Site
 	axes    []corner.Axis
-	filter  *site.Filter // at the star point
+	members [][]corner.Axis // what an axis stands for
+	filter  *site.Filter    // at the star point
 	phases  float64
 	missing quantity.Voltage // u: closing difference and both errors
 	emf     quantity.Voltage // E_high
 }
 
 func bypassOf(s site.Site) bypass {
-	b := bypass{site: s, axes: make([]corner.Axis, axisCount), filter: precharge.StarFilter(s), phases: 1,
+	b := bypass{site: s, axes: make([]corner.Axis, axisCount), members: make([][]corner.Axis, axisCount), filter: s.StarFilter(), phases: 1,
 		emf: s.Source.HighestRest(), missing: Step(s).High}
 	b.axes[axisInternal] = corner.Of("source.internal_resistance", s.Source.InternalResistance)
 	b.axes[axisResistor] = corner.Of("precharge.resistance", s.Precharge.Resistance)
@@ -58,36 +59,20 @@ func bypassOf(s site.Site) bypass {
 		if c.Phases > 0 {
 			b.phases = float64(c.Phases)
 		}
-		b.axes[axisChokeResistance] = scaled(corner.Of("converter.choke_resistance", c.ChokeResistance), 1/b.phases)
-		b.axes[axisChoke] = scaled(corner.Of("converter.choke", c.Choke), 1/b.phases)
+		b.axes[axisChokeResistance] = corner.Of("converter.choke_resistance", c.ChokeResistance).Scaled(1 / b.phases)
+		b.axes[axisChoke] = corner.Of("converter.choke", c.Choke).Scaled(1 / b.phases)
 		if f := c.Filter; f != nil {
 			b.axes[axisFilter] = corner.Of("converter.filter.capacitance", f.Capacitance)
 			b.axes[axisESR] = corner.Of("converter.filter.esr", f.ESR)
 			b.axes[axisESL] = corner.Of("converter.filter.esl", f.ESL)
 		}
 	}
-	b.axes[axisBanks] = banks(s)
+	b.members[axisBanks] = precharge.Banks(s)
+	b.axes[axisBanks] = corner.Sum("bus.capacitance", b.members[axisBanks])
 	if s.Source.Kind == site.Supercapacitor {
 		b.axes[axisSource] = corner.Of("source.capacitance", s.Source.Capacitance)
 	}
 	return b
-}
-
-func scaled(a corner.Axis, by float64) corner.Axis {
-	return corner.Axis{Name: a.Name, Low: a.Low * by, Nominal: a.Nominal * by, High: a.High * by}
-}
-
-// banks is everything on the bus that is not isolated, without the filter.
-func banks(s site.Site) corner.Axis {
-	sum := corner.Axis{Name: "bus.capacitance"}
-	for _, b := range s.Bus.Capacitances {
-		if !b.Isolated {
-			sum.Low += float64(b.Value.Low)
-			sum.Nominal += float64(b.Value.Nominal)
-			sum.High += float64(b.Value.High)
-		}
-	}
-	return sum
 }
 
 // main is the loop through the chokes.

@@ -3,7 +3,6 @@ package closing
 import (
 	"fmt"
 	"math"
-	"strings"
 
 	"chargehand/commission/corner"
 	"chargehand/commission/finding"
@@ -30,46 +29,9 @@ func (a *assessment) explain(formula, source, validity string) working {
 // over adds which corner governs and the share of each input, and ends the working.
 func (w working) over(result int) *finding.Explanation {
 	s := w.a.over[result]
-	names, moves := w.a.shares(s)
-	w.Spread("greatest with "+governing(w.a.axes, s, s.AtHigh), names, moves)
+	names, moves := corner.Shares(w.a.axes, w.a.members, s.Moves)
+	w.Spread("greatest with "+corner.DescribeMoving(w.a.axes, s, s.AtHigh), names, moves)
 	return w.Done()
-}
-
-// shares splits what the banks move among them by their widths.
-func (a *assessment) shares(s corner.Spread) (names []string, moves []float64) {
-	for i, axis := range a.axes {
-		width := axis.High - axis.Low
-		if i != axisBanks || width == 0 {
-			names, moves = append(names, axis.Name), append(moves, s.Moves[i])
-			continue
-		}
-		for _, b := range a.site.Bus.Capacitances {
-			if !b.Isolated {
-				names = append(names, fmt.Sprintf("bus.capacitance %q", b.Name))
-				moves = append(moves, s.Moves[i]*float64(b.Value.Width())/width)
-			}
-		}
-	}
-	return names, moves
-}
-
-// governing says where the inputs that matter stand in a corner.
-func governing(axes []corner.Axis, s corner.Spread, at []float64) string {
-	var words []string
-	for i, a := range axes {
-		if a.Low == a.High || s.Moves[i] == 0 {
-			continue
-		}
-		end := "highest"
-		if at[i] == a.Low {
-			end = "lowest"
-		}
-		words = append(words, a.Name+" "+end)
-	}
-	if len(words) == 0 {
-		return "every corner alike"
-	}
-	return strings.Join(words, ", ")
 }
 
 // missing adds the voltage that is missing at closing, "u".

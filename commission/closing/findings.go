@@ -35,10 +35,6 @@ func assess(s site.Site) *assessment {
 
 func say(v float64, unit string) string { return quantity.Engineering(v, unit, 4) }
 
-func valueOf(s corner.Spread) finding.Value {
-	return finding.Value{Low: s.Low, Nominal: s.Nominal, High: s.High}
-}
-
 func missing(needs ...func(*finding.Missing)) finding.Missing {
 	var m finding.Missing
 	for _, need := range needs {
@@ -63,10 +59,10 @@ func (a *assessment) inrush() finding.Finding {
 		return f.Lacking(m...)
 	}
 	making := float64(a.site.Bypass.MakingCurrent.Nominal)
-	f = f.Judged(valueOf(a.over[ofJudged]), finding.AtMost(making), 0)
-	f.Value = valueOf(a.over[ofInrush])
+	f = f.Judged(finding.ValueOf(a.over[ofJudged].Ends()), finding.AtMost(making), 0)
+	f.Value = finding.ValueOf(a.over[ofInrush].Ends())
 	if a.saturates(float64(a.main(a.over[ofInrush].AtHigh, a.missing).PeakCurrent())) {
-		f.Parts = append(f.Parts, finding.Part{Name: "upper bound with the chokes saturated", Unit: "A", Value: valueOf(a.over[ofJudged])})
+		f.Parts = append(f.Parts, finding.Part{Name: "upper bound with the chokes saturated", Unit: "A", Value: finding.ValueOf(a.over[ofJudged].Ends())})
 		f.Because = append(f.Because, "the chokes saturate, so the verdict uses the upper bound with the source inductance alone")
 	}
 	f.Explanation = a.explainInrush()
@@ -86,7 +82,7 @@ func (a *assessment) filterInrush() finding.Finding {
 	}); m != nil {
 		return f.Lacking(m...)
 	}
-	f = f.Stated(valueOf(a.over[ofFilterSwitched]))
+	f = f.Stated(finding.ValueOf(a.over[ofFilterSwitched].Ends()))
 	f.Explanation = a.explainFilterInrush()
 	return f
 }
@@ -99,7 +95,7 @@ func (a *assessment) i2t() finding.Finding {
 	}); m != nil {
 		return f.Lacking(m...)
 	}
-	f = f.Judged(valueOf(a.over[ofI2t]), finding.AtMost(float64(fuse.PreArcingI2t.Nominal)), 0)
+	f = f.Judged(finding.ValueOf(a.over[ofI2t].Ends()), finding.AtMost(float64(fuse.PreArcingI2t.Nominal)), 0)
 	f.Explanation = a.explainI2t()
 	if f.Verdict != finding.Pass {
 		f.Because = append(f.Because, fmt.Sprintf("closing puts up to %s through the fuse, which pre-arcs at %s", say(f.Value.High, "A²s"), say(*f.Limit.High, "A²s")))
@@ -113,7 +109,7 @@ func (a *assessment) overshoot() finding.Finding {
 	if m := missing(a.needsLoop, a.needsErrors); m != nil {
 		return f.Lacking(m...)
 	}
-	f = f.Stated(valueOf(a.over[ofReached]))
+	f = f.Stated(finding.ValueOf(a.over[ofReached].Ends()))
 	f.Explanation = a.explainOvershoot()
 	return f
 }
@@ -181,7 +177,7 @@ func (a *assessment) liveBus() finding.Finding {
 	}); m != nil {
 		return f.Lacking(m...)
 	}
-	f = f.Judged(valueOf(a.over[ofLiveBus]), finding.AtMost(float64(p.MinimumTime.Nominal)), 0)
+	f = f.Judged(finding.ValueOf(a.over[ofLiveBus].Ends()), finding.AtMost(float64(p.MinimumTime.Nominal)), 0)
 	f.Explanation = a.explainLiveBus()
 	if f.Verdict != finding.Pass {
 		f.Because = append(f.Because, fmt.Sprintf("the filter takes up to %s, the pre-charge stays in for at least %s", say(f.Value.High, "s"), say(*f.Limit.High, "s")))
@@ -205,8 +201,8 @@ func (a *assessment) withoutPrecharge() finding.Finding {
 	if m := missing(needs...); m != nil {
 		return f.Lacking(m...)
 	}
-	f = f.Stated(valueOf(a.over[ofProspective]))
-	i2t := valueOf(a.over[ofProspectiveI2t])
+	f = f.Stated(finding.ValueOf(a.over[ofProspective].Ends()))
+	i2t := finding.ValueOf(a.over[ofProspectiveI2t].Ends())
 	f.Parts = []finding.Part{{Name: "I²t", Unit: "A²s", Value: i2t}}
 	if fuse := a.site.Source.Fuse; fuse != nil && fuse.PreArcingI2t.IsGiven() {
 		melts := func(v float64) float64 {

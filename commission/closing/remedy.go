@@ -10,42 +10,30 @@ import (
 
 const keyDifference = "precharge.closing_difference"
 
-// asking gives the finding its remedy: the changes in words and as values.
-func asking(f finding.Finding, words string, changes ...finding.Change) finding.Finding {
-	f.Changes = changes
-	f.Remedy = words + remedy.Phrase(changes)
-	return f
-}
-
 func (a *assessment) difference() float64 { return float64(a.site.Precharge.ClosingDifference.Nominal) }
-
-// change asks for at least, or at most, the figure needed, rounded so that it passes.
-func change(key, unit string, was, needed float64) finding.Change {
-	return finding.Change{Key: key, Unit: unit, Was: was, Value: remedy.AwayFrom(was, needed)}
-}
 
 // remedyInrush offers a smaller closing difference where what remains of the charge permits it, else a bypass that makes
 // more.
 func (a *assessment) remedyInrush(f finding.Finding) finding.Finding {
 	making := float64(a.site.Bypass.MakingCurrent.Nominal)
-	bypass := change("bypass.making_current", "A", making, a.over[ofJudged].High)
+	bypass := remedy.To("bypass.making_current", "A", making, a.over[ofJudged].High)
 	smaller, ok := a.smallerDifference(func(b *assessment) bool { return b.over[ofJudged].High <= making })
 	if !ok {
-		return asking(f, "no closing difference is small enough and still reached: raise ", bypass)
+		return remedy.Ask(f, "no closing difference is small enough and still reached: raise ", bypass)
 	}
-	f = asking(f, "lower ", smaller)
+	f = remedy.Ask(f, "lower ", smaller)
 	f.Remedy += ", or raise " + remedy.Phrase([]finding.Change{bypass})
 	return f
 }
 
 func (a *assessment) remedyI2t(f finding.Finding) finding.Finding {
 	limit := float64(a.site.Source.Fuse.PreArcingI2t.Nominal)
-	fuse := change("source.fuse.pre_arcing_i2t", "A²s", limit, a.over[ofI2t].High)
+	fuse := remedy.To("source.fuse.pre_arcing_i2t", "A²s", limit, a.over[ofI2t].High)
 	smaller, ok := a.smallerDifference(func(b *assessment) bool { return b.over[ofI2t].High <= limit })
 	if !ok {
-		return asking(f, "no closing difference is small enough and still reached: raise ", fuse)
+		return remedy.Ask(f, "no closing difference is small enough and still reached: raise ", fuse)
 	}
-	return asking(f, "lower ", smaller)
+	return remedy.Ask(f, "lower ", smaller)
 }
 
 // smallerDifference is the greatest closing difference below the one set that passes and lies above what remains of the
@@ -69,12 +57,12 @@ func (a *assessment) remedyThreshold(f finding.Finding, low, high float64) findi
 		perVolt := a.over[ofInrush].High / float64(a.bypass.missing)
 		errors := float64(a.site.Source.Error() + a.site.Bus.Error())
 		needed := (low + errors) * perVolt * (1 + 1e-6)
-		return asking(f, "raise ", change("bypass.making_current", "A", float64(a.site.Bypass.MakingCurrent.Nominal), needed),
+		return remedy.Ask(f, "raise ", remedy.To("bypass.making_current", "A", float64(a.site.Bypass.MakingCurrent.Nominal), needed),
 			finding.Change{Key: keyDifference, Unit: "V", Was: set, Value: roundUp(low)})
 	case set < low:
-		return asking(f, "raise ", change(keyDifference, "V", set, low))
+		return remedy.Ask(f, "raise ", remedy.To(keyDifference, "V", set, low))
 	}
-	return asking(f, "lower ", change(keyDifference, "V", set, high))
+	return remedy.Ask(f, "lower ", remedy.To(keyDifference, "V", set, high))
 }
 
 // roundUp keeps five digits of v, upwards by less than the room that the making current above leaves.
@@ -86,7 +74,7 @@ func roundUp(v float64) float64 {
 func (a *assessment) remedyLiveBus(f finding.Finding) finding.Finding {
 	least := *f.Limit.High
 	if f.Value.High > least {
-		f = asking(f, "raise ", change("precharge.minimum_time", "s", least, f.Value.High))
+		f = remedy.Ask(f, "raise ", remedy.To("precharge.minimum_time", "s", least, f.Value.High))
 	}
 	if a.site.Precharge.Compares == "source-bus" {
 		words := `precharge.compares = "contactor"`

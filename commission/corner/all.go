@@ -44,7 +44,7 @@ func OverAll(axes []Axis, results int, f func(x, out []float64)) []Spread {
 	return spreads
 }
 
-// keep is take without a new slice for every better corner.
+// keep takes one more corner into the spread.
 func (s *Spread) keep(x []float64, result float64) {
 	switch {
 	case math.IsNaN(result) || math.IsNaN(s.Low):

@@ -42,6 +42,34 @@ func Describe(axes []Axis, x []float64) string {
 	return strings.Join(words, ", ")
 }
 
+// DescribeEnds says which corners give the least and the greatest result.
+func DescribeEnds(axes []Axis, s Spread) string {
+	if s.Low == s.High {
+		return "no tolerance enters"
+	}
+	return "least with " + Describe(axes, s.AtLow) + "; greatest with " + Describe(axes, s.AtHigh)
+}
+
+// DescribeMoving says where the inputs that move the result stand in one of its corners, "choke lowest"; the others are left
+// out, for a result on which many inputs have no bearing.
+func DescribeMoving(axes []Axis, s Spread, at []float64) string {
+	var words []string
+	for i, a := range axes {
+		if a.Low == a.High || s.Moves[i] == 0 {
+			continue
+		}
+		end := "highest"
+		if at[i] == a.Low {
+			end = "lowest"
+		}
+		words = append(words, a.Name+" "+end)
+	}
+	if len(words) == 0 {
+		return "every corner alike"
+	}
+	return strings.Join(words, ", ")
+}
+
 // Greatest is the greatest value of f over low…high and where it stands. The ends are always among the points tried; an
 // interior extremum is found by points evenly spaced and then narrowed by golden section to 1e-8 of the range. That finds
 // the greatest of a function whose peaks are wider than the spacing.

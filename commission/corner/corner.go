@@ -1,10 +1,6 @@
-// Package corner takes a calculation over all corners of its toleranced inputs.
-//
-// Start at [Over]. An input is an [Axis]; the calculation gets one number per axis, so a quantity that enters twice (the
-// resistance in a time constant and in an energy) has the same value in both places of one corner.
 package corner
 
-import "math"
+import "chargehand/commission/quantity"
 
 // Axis is one input with its tolerance, in SI. An axis without width is not varied.
 type Axis struct {
@@ -23,47 +19,18 @@ type Spread struct {
 	Moves              []float64
 }
 
+// Ends are the least, nominal and greatest result.
+func (s Spread) Ends() (low, nominal, high float64) { return s.Low, s.Nominal, s.High }
+
+// As gives the spread its quantity again.
+func As[Q quantity.Scalar](s Spread) quantity.Spread[Q] {
+	return quantity.Spread[Q]{Low: Q(s.Low), Nominal: Q(s.Nominal), High: Q(s.High)}
+}
+
 // Over evaluates f with every axis nominal and at each combination of low and high. That is exact where f is monotone in
 // each axis; where it is not, give the axis more points by searching inside f. A NaN corner makes both ends NaN.
 func Over(axes []Axis, f func(x []float64) float64) Spread {
-	x := make([]float64, len(axes))
-	var wide []int
-	for i, a := range axes {
-		x[i] = a.Nominal
-		if a.Low != a.High {
-			wide = append(wide, i)
-		}
-	}
-	nominal := f(x)
-	s := Spread{Low: nominal, Nominal: nominal, High: nominal, AtLow: clone(x), AtHigh: clone(x), Moves: make([]float64, len(axes))}
-	for _, i := range wide {
-		x[i] = axes[i].Low
-		low := f(x)
-		x[i] = axes[i].High
-		s.Moves[i] = math.Abs(f(x) - low)
-		x[i] = axes[i].Nominal
-	}
-	for corner := 0; corner < 1<<len(wide); corner++ {
-		for bit, i := range wide {
-			x[i] = axes[i].Low
-			if corner>>bit&1 == 1 {
-				x[i] = axes[i].High
-			}
-		}
-		s.take(x, f(x))
-	}
-	return s
-}
-
-func (s *Spread) take(x []float64, result float64) {
-	switch {
-	case math.IsNaN(result) || math.IsNaN(s.Low):
-		s.Low, s.High = math.NaN(), math.NaN()
-	case result < s.Low:
-		s.Low, s.AtLow = result, clone(x)
-	case result > s.High:
-		s.High, s.AtHigh = result, clone(x)
-	}
+	return OverAll(axes, 1, func(x, out []float64) { out[0] = f(x) })[0]
 }
 
 func clone(x []float64) []float64 { return append([]float64(nil), x...) }

@@ -23,21 +23,7 @@ func (a *assessment) explain(formula, source, validity string) *finding.Working 
 }
 
 func (a *assessment) over(w *finding.Working, s corner.Spread) *finding.Explanation {
-	var names []string
-	var moves []float64
-	for i, axis := range a.axes {
-		width := axis.High - axis.Low
-		if i == axisBleeder && width > 0 {
-			width = 1/axis.Low - 1/axis.High
-		}
-		if len(a.members[i]) < 2 || width == 0 {
-			names, moves = append(names, axis.Name), append(moves, s.Moves[i])
-			continue
-		}
-		for _, m := range a.members[i] {
-			names, moves = append(names, m.Name), append(moves, s.Moves[i]*(m.High-m.Low)/width)
-		}
-	}
+	names, moves := corner.Shares(a.axes, a.members, s.Moves)
 	w.Spread("greatest with "+corner.Describe(a.axes, s.AtHigh), names, moves)
 	return w.Done()
 }

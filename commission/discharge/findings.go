@@ -29,7 +29,7 @@ const (
 type assessment struct {
 	site    site.Site
 	axes    []corner.Axis
-	members [axisCount][]corner.Axis
+	members [][]corner.Axis  // what an axis stands for
 	from    quantity.Voltage // V₁, the highest bus voltage
 	spreads []corner.Spread
 }
@@ -52,44 +52,21 @@ func assess(s site.Site) *assessment {
 	return a
 }
 
-func axesOf(s site.Site) (axes []corner.Axis, members [axisCount][]corner.Axis) {
-	axes = make([]corner.Axis, axisCount)
-	axes[axisLink].Name = "bus.capacitance"
+func axesOf(s site.Site) (axes []corner.Axis, members [][]corner.Axis) {
+	axes, members = make([]corner.Axis, axisCount), make([][]corner.Axis, axisCount)
 	for _, b := range s.Bus.Capacitances {
-		bank := corner.Of(fmt.Sprintf("bus.capacitance %q", b.Name), b.Value)
-		axes[axisLink] = corner.Axis{Name: "bus.capacitance", Low: axes[axisLink].Low + bank.Low,
-			Nominal: axes[axisLink].Nominal + bank.Nominal, High: axes[axisLink].High + bank.High}
-		members[axisLink] = append(members[axisLink], bank)
+		members[axisLink] = append(members[axisLink], corner.Of(fmt.Sprintf("bus.capacitance %q", b.Name), b.Value))
 	}
-	if f := starFilter(s); f != nil {
+	axes[axisLink] = corner.Sum("bus.capacitance", members[axisLink])
+	if f := s.StarFilter(); f != nil {
 		axes[axisFilter] = corner.Of("converter.filter.capacitance", f.Capacitance)
 	}
-	axes[axisBleeder], members[axisBleeder] = bleeders(s.Bus.Bleeders)
+	var bleeders []corner.Axis
+	for _, b := range s.Bus.Bleeders {
+		bleeders = append(bleeders, corner.Of(fmt.Sprintf("bus.bleeder %q", b.Name), b.Value))
+	}
+	axes[axisBleeder], members[axisBleeder] = corner.Parallel("bus.bleeder", bleeders)
 	return axes, members
-}
-
-// bleeders in parallel are one resistance; 0 where there are none. Its members are conductances, for their shares.
-func bleeders(list []site.Bleeder) (corner.Axis, []corner.Axis) {
-	if len(list) == 0 {
-		return corner.Exact("bus.bleeder", 0), nil
-	}
-	var g corner.Axis
-	var members []corner.Axis
-	for _, b := range list {
-		m := corner.Axis{Name: fmt.Sprintf("bus.bleeder %q", b.Name),
-			Low: 1 / float64(b.Value.High), Nominal: 1 / float64(b.Value.Nominal), High: 1 / float64(b.Value.Low)}
-		g.Low, g.Nominal, g.High = g.Low+m.Low, g.Nominal+m.Nominal, g.High+m.High
-		members = append(members, m)
-	}
-	return corner.Axis{Name: "bus.bleeder", Low: 1 / g.High, Nominal: 1 / g.Nominal, High: 1 / g.Low}, members
-}
-
-// starFilter is the filter where it stands behind the bypass; before it, the source keeps it.
-func starFilter(s site.Site) *site.Filter {
-	if s.Converter == nil || s.Converter.Filter == nil || s.Converter.Filter.Position != site.AtStar {
-		return nil
-	}
-	return s.Converter.Filter
 }
 
 // bus is the discharging bus at one corner, without load: the worst case excludes it.
@@ -123,13 +100,9 @@ func (a *assessment) needsBus(m *finding.Missing) {
 	for _, b := range a.site.Bus.Bleeders {
 		m.Need("bus.bleeder", b.Value.IsGiven())
 	}
-	if f := starFilter(a.site); f != nil {
+	if f := a.site.StarFilter(); f != nil {
 		m.Need("converter.filter.capacitance", f.Capacitance.IsGiven())
 	}
-}
-
-func valueOf(s corner.Spread) finding.Value {
-	return finding.Value{Low: s.Low, Nominal: s.Nominal, High: s.High}
 }
 
 func (a *assessment) energy() finding.Finding {
@@ -138,7 +111,7 @@ func (a *assessment) energy() finding.Finding {
 	if a.needsBus(&m); m != nil {
 		return f.Lacking(m...)
 	}
-	f = f.Stated(valueOf(a.spreads[ofEnergy]))
+	f = f.Stated(finding.ValueOf(a.spreads[ofEnergy].Ends()))
 	f.Explanation = a.explainEnergy()
 	return f
 }
@@ -148,7 +121,7 @@ func (a *assessment) touchSafe() finding.Finding {
 	t := a.site.Bus.TouchSafe
 	var m finding.Missing
 	a.needsBus(&m)
-	if starFilter(a.site) != nil && a.site.Source.HighestRest() <= 0 {
+	if a.site.StarFilter() != nil && a.site.Source.HighestRest() <= 0 {
 		m.Add("source.max_voltage")
 	}
 	m.Need("bus.touch_safe", t != nil)
@@ -159,7 +132,7 @@ func (a *assessment) touchSafe() finding.Finding {
 	if m != nil {
 		return f.Lacking(m...)
 	}
-	f = f.Judged(valueOf(a.spreads[ofTime]), finding.AtMost(float64(t.Within.Nominal)), 0)
+	f = f.Judged(finding.ValueOf(a.spreads[ofTime].Ends()), finding.AtMost(float64(t.Within.Nominal)), 0)
 	f.Explanation = a.explainTime()
 	return a.labelled(f)
 }

@@ -65,7 +65,7 @@ func Predict(s site.Site, v0 quantity.Spread[quantity.Voltage]) Prediction {
 		bus, from := cornerBus(x)
 		out[predictTau], out[predictTime] = float64(bus.TimeConstant()), float64(bus.Time(from, touch))
 	})
-	p := Prediction{TimeConstant: spreadOf(over[predictTau]), TimeToTouchSafe: spreadOf(over[predictTime])}
+	p := Prediction{TimeConstant: corner.As[quantity.Seconds](over[predictTau]), TimeToTouchSafe: corner.As[quantity.Seconds](over[predictTime])}
 	end := p.TimeToTouchSafe.High
 	if math.IsInf(float64(end), 1) {
 		end = flat
@@ -81,7 +81,7 @@ func predictionAxes(s site.Site, v0 quantity.Spread[quantity.Voltage]) []corner.
 		axes[axisAuxiliary] = corner.Axis{Name: "bus.auxiliary.power", Nominal: float64(x.Power.Nominal), High: float64(x.Power.High)}
 		axes[axisStopsAt] = corner.Of("bus.auxiliary.stops_at", x.StopsAt)
 	}
-	if starFilter(s) != nil {
+	if s.StarFilter() != nil {
 		highest := float64(s.Source.HighestRest())
 		axes[axisHeld] = corner.Axis{Name: "rest voltage", Low: float64(s.Source.LowestRest()), Nominal: highest, High: highest}
 	}
@@ -116,8 +116,4 @@ func band(axes []corner.Axis, end quantity.Seconds) []Point {
 		return 0
 	})
 	return points
-}
-
-func spreadOf(s corner.Spread) quantity.Spread[quantity.Seconds] {
-	return quantity.Spread[quantity.Seconds]{Low: quantity.Seconds(s.Low), Nominal: quantity.Seconds(s.Nominal), High: quantity.Seconds(s.High)}
 }

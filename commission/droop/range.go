@@ -112,15 +112,10 @@ func easeLoad(s site.Site, regeneration bool, passes func(site.Site) bool) (stri
 	if regeneration {
 		change.Key, change.Was = "load.regeneration", float64(loadOf(s).Regeneration.Nominal)
 	}
-	value, ok := remedy.Least(change.Was, 0, func(v float64) bool {
-		change.Value = v
-		changed, err := remedy.Apply(s, change)
-		return err == nil && passes(changed)
-	})
+	change, ok := remedy.LeastChange(s, change, 0, passes)
 	if !ok {
 		return "", nil
 	}
-	change.Value = value
 	changes := []finding.Change{change}
 	return "limit the load: set " + remedy.Phrase(changes), changes
 }

@@ -63,6 +63,9 @@ type Value struct{ Low, Nominal, High float64 }
 // Exactly is a value without spread.
 func Exactly(v float64) Value { return Value{v, v, v} }
 
+// ValueOf is a value from its three components in rising order.
+func ValueOf(low, nominal, high float64) Value { return Value{low, nominal, high} }
+
 // NoValue has no number at all.
 func NoValue() Value { return Value{math.NaN(), math.NaN(), math.NaN()} }
 

@@ -1,8 +1,6 @@
 package precharge
 
 import (
-	"strings"
-
 	"chargehand/commission/corner"
 	"chargehand/commission/finding"
 )
@@ -86,49 +84,11 @@ func (w working) over(axes []corner.Axis, s corner.Spread, least bool) *finding.
 	if least {
 		at, which = s.AtLow, "least"
 	}
-	names, moves := w.a.shares(axes, s)
-	w.Spread(which+" with "+governing(axes, s, at), names, moves)
+	names, moves := corner.Shares(axes, w.a.members[:], s.Moves)
+	w.Spread(which+" with "+corner.DescribeMoving(axes, s, at), names, moves)
 	return w.Done()
 }
 
 func (w working) charged(result int, least bool) *finding.Explanation {
 	return w.over(w.a.axes[:], w.a.charge[result], least)
-}
-
-// shares splits what a sum of inputs moves among its members by their widths.
-func (a *assessment) shares(axes []corner.Axis, s corner.Spread) (names []string, moves []float64) {
-	for i, axis := range axes {
-		members := a.members[i]
-		width := axis.High - axis.Low
-		if i == axisBleeder && len(members) > 0 {
-			width = 1/axis.Low - 1/axis.High
-		}
-		if len(members) < 2 || width == 0 {
-			names, moves = append(names, axis.Name), append(moves, s.Moves[i])
-			continue
-		}
-		for _, m := range members {
-			names, moves = append(names, m.Name), append(moves, s.Moves[i]*(m.High-m.Low)/width)
-		}
-	}
-	return names, moves
-}
-
-// governing says where the inputs that matter stand in a corner.
-func governing(axes []corner.Axis, s corner.Spread, at []float64) string {
-	var words []string
-	for i, a := range axes {
-		if a.Low == a.High || s.Moves[i] == 0 {
-			continue
-		}
-		end := "highest"
-		if at[i] == a.Low {
-			end = "lowest"
-		}
-		words = append(words, a.Name+" "+end)
-	}
-	if len(words) == 0 {
-		return "every corner alike"
-	}
-	return strings.Join(words, ", ")
 }

@@ -5,6 +5,7 @@ import (
 	"math"
 	"strings"
 
+	"chargehand/commission/corner"
 	"chargehand/commission/finding"
 	"chargehand/commission/quantity"
 )
@@ -212,6 +213,6 @@ func (a *assessment) explainTimeout() *finding.Explanation {
 		w.Step("t_most", "t_w/1.25", "s", least.Low/belowLeastWithstand)
 	}
 	w.Step("t_set", "t_out", "s", float64(a.timeout()))
-	w.Spread("slowest charge with "+governing(a.closeAxes, slowest, slowest.AtHigh)+"; least withstand with "+governing(a.axes[:], least, least.AtLow), nil, nil)
+	w.Spread("slowest charge with "+corner.DescribeMoving(a.closeAxes, slowest, slowest.AtHigh)+"; least withstand with "+corner.DescribeMoving(a.axes[:], least, least.AtLow), nil, nil)
 	return w.Done()
 }

@@ -47,16 +47,12 @@ func (a *assessment) findings() []finding.Finding {
 
 func say(v float64, unit string) string { return quantity.Engineering(v, unit, 4) }
 
-func valueOf(s corner.Spread) finding.Value {
-	return finding.Value{Low: s.Low, Nominal: s.Nominal, High: s.High}
-}
-
 func (a *assessment) timeConstant() finding.Finding {
 	f := finding.Finding{ID: "precharge.time-constant", Title: "Time constant of the charge", Unit: "s", Basis: basisCharge}
 	if m := a.missing(a.needsCircuit); m != nil {
 		return f.Lacking(m...)
 	}
-	f = f.Stated(valueOf(a.charge[ofTau]))
+	f = f.Stated(finding.ValueOf(a.charge[ofTau].Ends()))
 	f.Explanation = a.explainTimeConstant()
 	return f
 }
@@ -66,7 +62,7 @@ func (a *assessment) finalVoltage() finding.Finding {
 	if m := a.missing(a.needsCircuit); m != nil {
 		return f.Lacking(m...)
 	}
-	f = f.Stated(valueOf(a.charge[ofFinal]))
+	f = f.Stated(finding.ValueOf(a.charge[ofFinal].Ends()))
 	f.Explanation = a.explainFinalVoltage()
 	return f
 }
@@ -78,7 +74,7 @@ func (a *assessment) stall() finding.Finding {
 		return f.Lacking(m...)
 	}
 	gap := a.closing[ofGap]
-	f = f.Judged(valueOf(gap), finding.AtMost(float64(a.difference-a.errors)), 0)
+	f = f.Judged(finding.ValueOf(gap.Ends()), finding.AtMost(float64(a.difference-a.errors)), 0)
 	f.Explanation = a.explainStall()
 	if net, ok := a.circuit(a.nominal()).LeastNetCurrent(a.site.Source.HighestRest() - a.difference); ok {
 		f.Parts = append(f.Parts, finding.Part{Name: "least net charging current", Unit: "A", Value: finding.Exactly(float64(net))})
@@ -103,7 +99,7 @@ func (a *assessment) timeToClose() finding.Finding {
 	if m := a.missing(a.needsCircuit, a.needsErrors); m != nil {
 		return f.Lacking(m...)
 	}
-	f = f.Stated(valueOf(a.closing[ofTimeToClose]))
+	f = f.Stated(finding.ValueOf(a.closing[ofTimeToClose].Ends()))
 	f = orNever(f)
 	f.Explanation = a.explainTimeToClose()
 	return f
@@ -130,7 +126,7 @@ func (a *assessment) peakCurrent() finding.Finding {
 	if m := a.missing(a.needsLoop); m != nil {
 		return f.Lacking(m...)
 	}
-	f = f.Stated(valueOf(a.charge[ofCurrent]))
+	f = f.Stated(finding.ValueOf(a.charge[ofCurrent].Ends()))
 	f.Explanation = a.explainPeakCurrent()
 	return f
 }
@@ -140,7 +136,7 @@ func (a *assessment) peakPower() finding.Finding {
 	if m := a.missing(a.needsLoop); m != nil {
 		return f.Lacking(m...)
 	}
-	f = f.Stated(valueOf(a.charge[ofPower]))
+	f = f.Stated(finding.ValueOf(a.charge[ofPower].Ends()))
 	f.Explanation = a.explainPeakPower()
 	return f
 }
@@ -150,7 +146,7 @@ func (a *assessment) energy() finding.Finding {
 	if m := a.missing(a.needsCircuit, a.needsEnergy); m != nil {
 		return f.Lacking(m...)
 	}
-	f = f.Stated(valueOf(a.charge[ofEnergy]))
+	f = f.Stated(finding.ValueOf(a.charge[ofEnergy].Ends()))
 	f.Explanation = a.explainEnergy()
 	return f
 }
@@ -165,7 +161,7 @@ func (a *assessment) pulse() finding.Finding {
 	if m := a.missing(a.needsCircuit, a.needsPulse, a.needsEnergy); m != nil {
 		return f.Lacking(m...)
 	}
-	f = orUnlimited(f.Judged(valueOf(a.charge[ofPulse]), finding.AtMost(1), 0))
+	f = orUnlimited(f.Judged(finding.ValueOf(a.charge[ofPulse].Ends()), finding.AtMost(1), 0))
 	f.Explanation = a.explainPulse()
 	if f.Verdict != finding.Pass {
 		f.Because = append(f.Because, fmt.Sprintf("the charge asks for %s times the pulse that the resistor may take", say(f.Value.High, "1")))
@@ -185,7 +181,7 @@ func (a *assessment) repeat() finding.Finding {
 	if m := a.missing(a.needsRepeat, a.needsEnergy); m != nil {
 		return f.Lacking(m...)
 	}
-	f = orUnlimited(f.Judged(valueOf(a.charge[ofRepeat]), limit, 0))
+	f = orUnlimited(f.Judged(finding.ValueOf(a.charge[ofRepeat].Ends()), limit, 0))
 	f.Explanation = a.explainRepeat()
 	if f.Verdict != finding.Pass {
 		f.Because = append(f.Because, fmt.Sprintf("%d attempts every %s heat the resistor beyond what it may take", a.site.Precharge.Attempts, say(float64(a.interval()), "s")))
@@ -207,7 +203,7 @@ func (a *assessment) wait() finding.Finding {
 	if m := a.missing(needs...); m != nil {
 		return f.Lacking(m...)
 	}
-	f = f.Judged(valueOf(a.closing[ofWait]), finding.AtMost(float64(a.interval())), 0)
+	f = f.Judged(finding.ValueOf(a.closing[ofWait].Ends()), finding.AtMost(float64(a.interval())), 0)
 	f = orNever(f)
 	f.Explanation = a.explainWait()
 	if f.Verdict != finding.Pass {
@@ -225,7 +221,7 @@ func (a *assessment) shortedBus() finding.Finding {
 		return f.Lacking(m...)
 	}
 	timeout := float64(a.timeout())
-	f = judgedTo(f, valueOf(a.charge[ofWithstand]), finding.AtLeast(belowLeastWithstand*timeout), finding.AtLeast(timeout))
+	f = judgedTo(f, finding.ValueOf(a.charge[ofWithstand].Ends()), finding.AtLeast(belowLeastWithstand*timeout), finding.AtLeast(timeout))
 	f = orUnlimited(f)
 	f.Explanation = a.explainShortedBus()
 	if f.Verdict != finding.Pass {
@@ -295,7 +291,7 @@ func (a *assessment) breaking() finding.Finding {
 	}); m != nil {
 		return f.Lacking(m...)
 	}
-	f = f.Judged(valueOf(a.charge[ofCurrent]), finding.AtMost(float64(contactor.BreakingCurrent.Nominal)), 0)
+	f = f.Judged(finding.ValueOf(a.charge[ofCurrent].Ends()), finding.AtMost(float64(contactor.BreakingCurrent.Nominal)), 0)
 	f.Parts = []finding.Part{{Name: "contactor voltage", Unit: "V", Value: finding.Exactly(float64(contactor.Voltage.Nominal))}}
 	f.Explanation = a.explainPeakCurrent()
 	if f.Verdict != finding.Pass {
@@ -347,5 +343,5 @@ func Remaining(s site.Site) (remaining quantity.Spread[quantity.Voltage], hiccup
 		hiccups = hiccups || how == Hiccups
 		return float64(remaining)
 	})
-	return quantity.Spread[quantity.Voltage]{Low: quantity.Voltage(gap.Low), Nominal: quantity.Voltage(gap.Nominal), High: quantity.Voltage(gap.High)}, hiccups
+	return corner.As[quantity.Voltage](gap), hiccups
 }

@@ -36,7 +36,6 @@ type path struct {
 	difference quantity.Voltage
 	errors     quantity.Voltage // source and bus measurement error together
 	rating     Rating
-	body       Body
 	hottest    quantity.Temperature // max_temperature
 	cool       map[[axisEMF]float64]float64
 }
@@ -44,10 +43,16 @@ type path struct {
 func pathOf(s site.Site) path {
 	p := path{site: s, difference: s.Precharge.ClosingDifference.Nominal, errors: s.Source.Error() + s.Bus.Error(),
 		cool: map[[axisEMF]float64]float64{}}
-	p.sum(axisSeries, seriesMembers(s))
+	p.members[axisSeries] = seriesMembers(s)
+	p.axes[axisSeries] = corner.Sum("source.internal_resistance", p.members[axisSeries])
 	p.axes[axisResistor] = corner.Of("precharge.resistance", s.Precharge.Resistance)
-	p.sum(axisLink, linkMembers(s))
-	p.axes[axisBleeder], p.members[axisBleeder] = bleeders(s.Bus.Bleeders)
+	p.members[axisLink] = linkMembers(s)
+	p.axes[axisLink] = corner.Sum("bus.capacitance", p.members[axisLink])
+	var bleeders []corner.Axis
+	for _, b := range s.Bus.Bleeders {
+		bleeders = append(bleeders, corner.Of(fmt.Sprintf("bus.bleeder %q", b.Name), b.Value))
+	}
+	p.axes[axisBleeder], p.members[axisBleeder] = corner.Parallel("bus.bleeder", bleeders)
 	p.axes[axisAuxiliary] = corner.Exact("bus.auxiliary.power", 0)
 	if a := s.Bus.Auxiliary; a != nil && a.Power.IsGiven() && a.StartsAt.IsGiven() && a.StopsAt.IsGiven() {
 		p.axes[axisAuxiliary] = corner.Axis{Name: "bus.auxiliary.power", Nominal: float64(a.Power.Nominal), High: float64(a.Power.High)}
@@ -69,73 +74,39 @@ func pathOf(s site.Site) path {
 	return p
 }
 
-// sum makes one axis of quantities that only enter as their sum.
-func (p *path) sum(axis int, members []corner.Axis) {
-	total := corner.Axis{Name: members[0].Name}
-	for _, m := range members {
-		total.Low += m.Low
-		total.Nominal += m.Nominal
-		total.High += m.High
-	}
-	p.axes[axis], p.members[axis] = total, members
-}
-
 func seriesMembers(s site.Site) []corner.Axis {
 	members := []corner.Axis{corner.Of("source.internal_resistance", s.Source.InternalResistance)}
 	if c := s.Converter; c != nil && c.Phases > 0 {
-		n := float64(c.Phases)
-		choke := corner.Of("converter.choke_resistance", c.ChokeResistance)
-		members = append(members, corner.Axis{Name: choke.Name, Low: choke.Low / n, Nominal: choke.Nominal / n, High: choke.High / n})
+		members = append(members, corner.Of("converter.choke_resistance", c.ChokeResistance).Scaled(1/float64(c.Phases)))
 	}
 	return members
 }
 
 // LinkCapacitance is what is charged through the resistor: every bank that is not isolated, and a filter at the star point.
 func LinkCapacitance(s site.Site) quantity.Spread[quantity.Capacitance] {
-	var c quantity.Spread[quantity.Capacitance]
-	for _, m := range linkMembers(s) {
-		c.Low += quantity.Capacitance(m.Low)
-		c.Nominal += quantity.Capacitance(m.Nominal)
-		c.High += quantity.Capacitance(m.High)
+	sum := corner.Sum("", linkMembers(s))
+	return quantity.Spread[quantity.Capacitance]{Low: quantity.Capacitance(sum.Low), Nominal: quantity.Capacitance(sum.Nominal),
+		High: quantity.Capacitance(sum.High)}
+}
+
+// Banks are the banks that are charged, those that are not isolated, after an empty place for their sum: so a single one is
+// named too.
+func Banks(s site.Site) []corner.Axis {
+	banks := []corner.Axis{corner.Exact("bus.capacitance", 0)}
+	for _, b := range s.Bus.Capacitances {
+		if !b.Isolated {
+			banks = append(banks, corner.Of(fmt.Sprintf("bus.capacitance %q", b.Name), b.Value))
+		}
 	}
-	return c
+	return banks
 }
 
 func linkMembers(s site.Site) []corner.Axis {
-	members := []corner.Axis{corner.Exact("bus.capacitance", 0)}
-	for _, b := range s.Bus.Capacitances {
-		if !b.Isolated {
-			members = append(members, corner.Of(fmt.Sprintf("bus.capacitance %q", b.Name), b.Value))
-		}
-	}
-	if f := StarFilter(s); f != nil {
+	members := Banks(s)
+	if f := s.StarFilter(); f != nil {
 		members = append(members, corner.Of("converter.filter.capacitance", f.Capacitance))
 	}
 	return members
-}
-
-// StarFilter is the filter where it stands at the star point, behind the bypass; nil where there is none.
-func StarFilter(s site.Site) *site.Filter {
-	if s.Converter == nil || s.Converter.Filter == nil || s.Converter.Filter.Position != site.AtStar {
-		return nil
-	}
-	return s.Converter.Filter
-}
-
-// bleeders in parallel are one resistance; 0 where there are none. Its members are conductances, for their shares.
-func bleeders(list []site.Bleeder) (corner.Axis, []corner.Axis) {
-	if len(list) == 0 {
-		return corner.Exact("bus.bleeder", 0), nil
-	}
-	var low, nominal, high float64
-	var members []corner.Axis
-	for _, b := range list {
-		g := corner.Axis{Name: fmt.Sprintf("bus.bleeder %q", b.Name),
-			Low: 1 / float64(b.Value.High), Nominal: 1 / float64(b.Value.Nominal), High: 1 / float64(b.Value.Low)}
-		low, nominal, high = low+g.Low, nominal+g.Nominal, high+g.High
-		members = append(members, g)
-	}
-	return corner.Axis{Name: "bus.bleeder", Low: 1 / high, Nominal: 1 / nominal, High: 1 / low}, members
 }
 
 func ratingOf(s site.Precharge) Rating {
@@ -205,7 +176,7 @@ func (p *path) needsCircuit(m *finding.Missing) {
 	if p.site.Source.Kind == site.Supercapacitor {
 		m.Need("source.capacitance", p.site.Source.Capacitance.IsGiven())
 	}
-	if f := StarFilter(p.site); f != nil {
+	if f := p.site.StarFilter(); f != nil {
 		m.Need("converter.filter.capacitance", f.Capacitance.IsGiven())
 	}
 }

@@ -74,10 +74,10 @@ func Predict(s site.Site, emf quantity.Spread[quantity.Voltage], v0 quantity.Vol
 		out[predictClose] = float64(c.TimeToClose(p.difference + quantity.Voltage(x[axisError])))
 	})
 	prediction := Prediction{
-		TimeConstant: spreadOf[quantity.Seconds](over[predictTau]),
-		Settled:      spreadOf[quantity.Voltage](over[predictSettled]),
-		PeakCurrent:  spreadOf[quantity.Current](over[predictCurrent]),
-		TimeToClose:  spreadOf[quantity.Seconds](over[predictClose]),
+		TimeConstant: corner.As[quantity.Seconds](over[predictTau]),
+		Settled:      corner.As[quantity.Voltage](over[predictSettled]),
+		PeakCurrent:  corner.As[quantity.Current](over[predictCurrent]),
+		TimeToClose:  corner.As[quantity.Seconds](over[predictClose]),
 	}
 	nominal := starts(p.nominal())
 	at := earlyShare * nominal.TimeConstant()
@@ -160,10 +160,6 @@ func (p Prediction) BusAt(t time.Duration) (quantity.Spread[quantity.Voltage], b
 		}
 	}
 	return quantity.Spread[quantity.Voltage]{}, false
-}
-
-func spreadOf[Q quantity.Scalar](s corner.Spread) quantity.Spread[Q] {
-	return quantity.Spread[Q]{Low: Q(s.Low), Nominal: Q(s.Nominal), High: Q(s.High)}
 }
 
 func duration(s quantity.Seconds) time.Duration {

@@ -10,17 +10,6 @@ import (
 	"chargehand/commission/site"
 )
 
-// asking gives the finding its remedy: the changes in words and as values.
-func asking(f finding.Finding, words string, changes ...finding.Change) finding.Finding {
-	f.Changes, f.Remedy = changes, words+remedy.Phrase(changes)
-	return f
-}
-
-// change asks for the figure needed, rounded so that it passes.
-func change(key, unit string, was, needed float64) finding.Change {
-	return finding.Change{Key: key, Unit: unit, Was: was, Value: remedy.AwayFrom(was, needed)}
-}
-
 // remedyStall takes power off the auxiliary supply where it hiccups; else it widens the closing difference to what remains.
 func (a *assessment) remedyStall(f finding.Finding) finding.Finding {
 	set := float64(a.difference)
@@ -28,13 +17,13 @@ func (a *assessment) remedyStall(f finding.Finding) finding.Finding {
 		was := float64(a.site.Bus.Auxiliary.Power.Nominal)
 		most, ok := remedy.Least(was, 0, func(v float64) bool { return a.stallWith(v).Verdict == finding.Pass })
 		if ok {
-			return asking(f, "during the charge lower ", finding.Change{Key: "bus.auxiliary.power", Unit: "W", Was: was, Value: most})
+			return remedy.Ask(f, "during the charge lower ", finding.Change{Key: "bus.auxiliary.power", Unit: "W", Was: was, Value: most})
 		}
 		f.Remedy = "the auxiliary supply must not start before the bypass has closed"
 		return f
 	}
 	needed := a.closing[ofGap].High + float64(a.errors)
-	return asking(f, "raise ", change("precharge.closing_difference", "V", set, needed))
+	return remedy.Ask(f, "raise ", remedy.To("precharge.closing_difference", "V", set, needed))
 }
 
 // stallWith judges the stall with another power of the auxiliary supply.
@@ -58,7 +47,7 @@ func (a *assessment) remedyRepeat(f finding.Finding) finding.Finding {
 	}
 	longest := 1000 * math.Max(was, float64(a.axes[axisThermalTime].High))
 	if interval, ok := remedy.Least(was, longest, func(v float64) bool { return hottest(v) <= limit }); ok {
-		return asking(f, "raise ", finding.Change{Key: "precharge.interval", Unit: "s", Was: was, Value: interval})
+		return remedy.Ask(f, "raise ", finding.Change{Key: "precharge.interval", Unit: "s", Was: was, Value: interval})
 	}
 	f.Remedy = "no interval is long enough: a single charge heats it too far, it needs a resistor of more thermal mass or more ohms"
 	return f
@@ -74,7 +63,7 @@ func (a *assessment) remedyWait(f finding.Finding) finding.Finding {
 		f.Remedy = "no interval is long enough: a charge never closes, or a single one heats the resistor too far"
 		return f
 	}
-	return asking(f, "raise ", change("precharge.interval", "s", float64(a.interval()), f.Value.High))
+	return remedy.Ask(f, "raise ", remedy.To("precharge.interval", "s", float64(a.interval()), f.Value.High))
 }
 
 // remedyBreaking asks for a stronger contactor, and says which resistance would spare it.
@@ -82,16 +71,16 @@ func (a *assessment) remedyBreaking(f finding.Finding) finding.Finding {
 	contactor, highest := a.site.Precharge.Contactor, float64(a.site.Source.HighestRest())
 	var changes []finding.Change
 	if f.Value.High > *f.Limit.High {
-		changes = append(changes, change("precharge.contactor.breaking_current", "A", *f.Limit.High, f.Value.High))
+		changes = append(changes, remedy.To("precharge.contactor.breaking_current", "A", *f.Limit.High, f.Value.High))
 	}
 	if float64(contactor.Voltage.Nominal) < highest {
-		changes = append(changes, change("precharge.contactor.voltage", "V", float64(contactor.Voltage.Nominal), highest))
+		changes = append(changes, remedy.To("precharge.contactor.voltage", "V", float64(contactor.Voltage.Nominal), highest))
 	}
-	f = asking(f, "raise ", changes...)
+	f = remedy.Ask(f, "raise ", changes...)
 	if f.Value.High > *f.Limit.High {
 		r := a.axes[axisResistor]
 		least := (highest / *f.Limit.High - a.axes[axisSeries].Low) * r.Nominal / r.Low
-		f.Remedy += fmt.Sprintf("; or raise %s", remedy.Phrase([]finding.Change{change(keyResistance, "Ω", r.Nominal, least)}))
+		f.Remedy += fmt.Sprintf("; or raise %s", remedy.Phrase([]finding.Change{remedy.To(keyResistance, "Ω", r.Nominal, least)}))
 	}
 	return f
 }

@@ -90,10 +90,10 @@ func Phase(s site.Site) finding.Finding {
 	duty := in.worstDuty(1)
 	axes := []corner.Axis{in.choke}
 	result := corner.Over(axes, func(x []float64) float64 { return float64(in.stage(duty, x[0]).PhaseSwing()) })
-	f = f.Stated(value(result))
+	f = f.Stated(finding.ValueOf(result.Ends()))
 	w := in.working(f.Basis, duty)
 	w.Step("dI", "V_bus * D * (1 - D) / (L * f_sw)", "A", result.Nominal)
-	w.Spread(governs(axes, result), corner.Names(axes), result.Moves)
+	w.Spread(corner.DescribeEnds(axes, result), corner.Names(axes), result.Moves)
 	f.Explanation = w.Done()
 	return f
 }
@@ -109,13 +109,13 @@ func Sum(s site.Site) finding.Finding {
 	duty := in.worstDuty(in.phases)
 	axes := []corner.Axis{in.choke}
 	result := corner.Over(axes, func(x []float64) float64 { return float64(in.stage(duty, x[0]).SumSwing()) })
-	f = f.Stated(value(result))
+	f = f.Stated(finding.ValueOf(result.Ends()))
 	w := in.working(f.Basis, duty)
 	whole := math.Round(float64(in.phases)*duty - fraction(float64(in.phases)*duty))
 	w.Given("m", "whole number of N·D", "1", whole)
 	w.Step("x", "N * D - m", "1", float64(in.phases)*duty-whole)
 	w.Step("dI", "V_bus * x * (1 - x) / (N * L * f_sw)", "A", result.Nominal)
-	w.Spread(governs(axes, result), corner.Names(axes), result.Moves)
+	w.Spread(corner.DescribeEnds(axes, result), corner.Names(axes), result.Moves)
 	f.Explanation = w.Done()
 	return f
 }
@@ -128,17 +128,6 @@ func (in inputs) working(formula string, duty float64) *finding.Working {
 	w.Given("L", "inductance of one choke", "H", in.choke.Nominal)
 	w.Given("f_sw", "switching frequency", "Hz", in.switching)
 	return w
-}
-
-func value(s corner.Spread) finding.Value {
-	return finding.Value{Low: s.Low, Nominal: s.Nominal, High: s.High}
-}
-
-func governs(axes []corner.Axis, s corner.Spread) string {
-	if s.Low == s.High {
-		return "no tolerance enters"
-	}
-	return "least with " + corner.Describe(axes, s.AtLow) + "; greatest with " + corner.Describe(axes, s.AtHigh)
 }
 
 // branches are filter and source loop of a site, the filter nominal; without a filter nothing of it is needed.
@@ -267,7 +256,7 @@ func Resonance(s site.Site) finding.Finding {
 		corner.Of("source.inductance", s.Source.Inductance), corner.Of("converter.filter.esl", filter.ESL)}
 	result := corner.Over(axes, func(x []float64) float64 { return float64(resonance(x[0], x[1]+x[2])) })
 	switching := float64(s.Converter.SwitchingFrequency.Nominal)
-	f = f.Judged(value(result), freeRange(result.Nominal, switching), 0)
+	f = f.Judged(finding.ValueOf(result.Ends()), freeRange(result.Nominal, switching), 0)
 	f.Because = append(f.Because, fmt.Sprintf("nearest is harmonic %d at %.5g Hz", nearest(result.Nominal, switching), float64(nearest(result.Nominal, switching))*switching))
 	f.Explanation = resonanceWorking(f, axes, result, switching)
 	if f.Verdict != finding.Pass {
@@ -327,7 +316,7 @@ func resonanceWorking(f finding.Finding, axes []corner.Axis, result corner.Sprea
 	w.Step("L", "L_s + ESL", "H", axes[1].Nominal+axes[2].Nominal)
 	w.Step("distance", "abs(k * f_sw * 2 * pi * sqrt(C_f * L) - 1)", "1", math.Abs(float64(k)*switching/result.Nominal-1))
 	w.Step("f_r", "1 / (2 * pi * sqrt(C_f * L))", "Hz", result.Nominal)
-	w.Spread(governs(axes, result), corner.Names(axes), result.Moves)
+	w.Spread(corner.DescribeEnds(axes, result), corner.Names(axes), result.Moves)
 	return w.Done()
 }
 

@@ -62,8 +62,7 @@ func checkAcross(t *document.Table, s Site) {
 	if d := s.Precharge.ClosingDifference; d.IsGiven() && high > 0 && d.Nominal >= high {
 		precharge.Refuse("closing_difference", "less than the highest source voltage, "+quantity.Engineering(float64(high), "V", 3), `closing_difference = "25 V"`)
 	}
-	atStar := s.Converter != nil && s.Converter.Filter != nil && s.Converter.Filter.Position == AtStar
-	if len(s.Bus.Capacitances) > 0 && !atStar && allIsolated(s.Bus.Capacitances) {
+	if len(s.Bus.Capacitances) > 0 && s.StarFilter() == nil && allIsolated(s.Bus.Capacitances) {
 		bus.RefuseTable("every bank isolated", "one capacitance that is charged through the resistor", "isolated = false")
 	}
 }

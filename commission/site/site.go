@@ -301,6 +301,15 @@ type Infeed struct {
 	Cable         *Cable
 }
 
+// StarFilter is the filter where it stands at the star point, behind the bypass; nil where there is none. Before the bypass the
+// source switch charges it and the source keeps it.
+func (s Site) StarFilter() *Filter {
+	if s.Converter == nil || s.Converter.Filter == nil || s.Converter.Filter.Position != AtStar {
+		return nil
+	}
+	return s.Converter.Filter
+}
+
 // Cable is an infeed's cable to the bus; both conductors carry the current.
 type Cable struct {
 	Length      quantity.Entered[quantity.Length] // one way

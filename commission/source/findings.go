@@ -33,10 +33,6 @@ func Findings(s site.Site) []finding.Finding {
 
 func say(v float64, unit string) string { return quantity.Engineering(v, unit, 4) }
 
-func valueOf(s corner.Spread) finding.Value {
-	return finding.Value{Low: s.Low, Nominal: s.Nominal, High: s.High}
-}
-
 func shortCircuit(s site.Site) finding.Finding {
 	f := finding.Finding{ID: "source.short-circuit", Title: "Prospective short circuit at the source", Unit: unitAmpere, Basis: basisShort, Guards: true}
 	fuse, highest := s.Source.Fuse, s.Source.HighestRest()
@@ -52,7 +48,7 @@ func shortCircuit(s site.Site) finding.Finding {
 	}
 	axes := []corner.Axis{corner.Of(keyInternal, s.Source.InternalResistance)}
 	over := corner.Over(axes, func(x []float64) float64 { return float64(ShortCircuit(highest, quantity.Resistance(x[0]))) })
-	f = f.Judged(valueOf(over), finding.AtMost(float64(fuse.BreakingCapacity.Nominal)), 0)
+	f = f.Judged(finding.ValueOf(over.Ends()), finding.AtMost(float64(fuse.BreakingCapacity.Nominal)), 0)
 	if math.IsInf(over.High, 1) {
 		f.State = finding.Unlimited
 	}
@@ -66,12 +62,12 @@ func shortCircuit(s site.Site) finding.Finding {
 	var changes []finding.Change
 	if f.Verdict != finding.Pass {
 		f.Because = append(f.Because, fmt.Sprintf("up to %s, the fuse breaks %s", say(over.High, unitAmpere), say(*f.Limit.High, unitAmpere)))
-		changes = append(changes, change("source.fuse.breaking_capacity", unitAmpere, *f.Limit.High, over.High))
+		changes = append(changes, remedy.To("source.fuse.breaking_capacity", unitAmpere, *f.Limit.High, over.High))
 	}
 	if fuse.Voltage.Nominal < highest {
 		f.Verdict = finding.Fail
 		f.Because = append(f.Because, fmt.Sprintf("the fuse's voltage, %s, is below the source's highest, %s", say(float64(fuse.Voltage.Nominal), unitVolt), say(float64(highest), unitVolt)))
-		changes = append(changes, change("source.fuse.voltage", unitVolt, float64(fuse.Voltage.Nominal), float64(highest)))
+		changes = append(changes, remedy.To("source.fuse.voltage", unitVolt, float64(fuse.Voltage.Nominal), float64(highest)))
 	}
 	return withRemedy(f, changes)
 }
@@ -86,13 +82,9 @@ func needsSource(s site.Site, m *finding.Missing) {
 // withRemedy asks for at least the figures in changes.
 func withRemedy(f finding.Finding, changes []finding.Change) finding.Finding {
 	if len(changes) > 0 {
-		f.Remedy, f.Changes = "raise "+remedy.Phrase(changes), changes
+		return remedy.Ask(f, "raise ", changes...)
 	}
 	return f
-}
-
-func change(key, unit string, was, needed float64) finding.Change {
-	return finding.Change{Key: key, Unit: unit, Was: was, Value: remedy.AwayFrom(was, needed)}
 }
 
 func isolation(s site.Site) finding.Finding {
@@ -116,7 +108,7 @@ func isolation(s site.Site) finding.Finding {
 		{Name: "voltage", Unit: unitVolt, Value: finding.Exactly(float64(isolator.Voltage.Nominal))},
 		{Name: "voltage needed", Unit: unitVolt, Value: finding.Exactly(float64(highest))},
 		{Name: "breaking current", Unit: unitAmpere, Value: finding.Exactly(float64(isolator.BreakingCurrent.Nominal))},
-		{Name: "breaking current needed", Unit: unitAmpere, Value: finding.Value{Low: float64(current.Low), Nominal: float64(current.Nominal), High: float64(current.High)}},
+		{Name: "breaking current needed", Unit: unitAmpere, Value: finding.ValueOf(float64(current.Low), float64(current.Nominal), float64(current.High))},
 	}
 	w := finding.Explain("poles >= 2, U >= E, I_b >= I", basisIsolate, "the current is that of window.current")
 	w.Given("poles", "poles opened", "1", float64(isolator.Poles))
@@ -136,7 +128,7 @@ func isolation(s site.Site) finding.Finding {
 	if isolator.Voltage.Nominal < highest {
 		f.Verdict = finding.Fail
 		f.Because = append(f.Because, fmt.Sprintf("its voltage, %s, is below the source's highest, %s", say(float64(isolator.Voltage.Nominal), unitVolt), say(float64(highest), unitVolt)))
-		changes = append(changes, change("source.switch.voltage", unitVolt, float64(isolator.Voltage.Nominal), float64(highest)))
+		changes = append(changes, remedy.To("source.switch.voltage", unitVolt, float64(isolator.Voltage.Nominal), float64(highest)))
 	}
 	switch {
 	case math.IsNaN(float64(current.High)):
@@ -145,7 +137,7 @@ func isolation(s site.Site) finding.Finding {
 	case isolator.BreakingCurrent.Nominal < current.High:
 		f.Verdict = finding.Fail
 		f.Because = append(f.Because, fmt.Sprintf("it breaks %s, at full power up to %s flow", say(float64(isolator.BreakingCurrent.Nominal), unitAmpere), say(float64(current.High), unitAmpere)))
-		changes = append(changes, change("source.switch.breaking_current", unitAmpere, float64(isolator.BreakingCurrent.Nominal), float64(current.High)))
+		changes = append(changes, remedy.To("source.switch.breaking_current", unitAmpere, float64(isolator.BreakingCurrent.Nominal), float64(current.High)))
 	}
 	return withRemedy(f, changes)
 }
@@ -163,7 +155,7 @@ func faultEnergy(s site.Site) finding.Finding {
 	over := corner.Over(axes, func(x []float64) float64 {
 		return float64(FaultEnergy(quantity.Resistance(x[0]), quantity.CurrentTime2(x[1])))
 	})
-	f = f.Stated(valueOf(over))
+	f = f.Stated(finding.ValueOf(over.Ends()))
 	w := finding.Explain("W = R_i*I2t", basisFault, validOhmic)
 	w.Given("R_i", "internal resistance", "Ω", axes[0].Nominal)
 	w.Given("I2t", "pre-arcing integral of the fuse", "A²s", axes[1].Nominal)

@@ -103,7 +103,7 @@ func chokePeak(s site.Site) finding.Finding {
 		f.Limit = limit
 		return f
 	}
-	f = f.Judged(ends(result), limit, 0)
+	f = f.Judged(finding.ValueOf(result.Ends()), limit, 0)
 	f.Explanation = d.working(f, axes, low, high, result)
 	return f
 }
@@ -139,6 +139,6 @@ func (d chokeDuty) working(f finding.Finding, axes []corner.Axis, low, high floa
 	w.Step("D", "1 - V_source / V_bus", "1", duty)
 	w.Step("dI", "abs(V_bus * D * (1 - D) / (L * f_sw))", "A", math.Abs(d.bus*duty*(1-duty)/(l*d.switching)))
 	w.Step("I_peak", "abs(I) / N * (1 + sigma) + dI / 2", "A", result.Nominal)
-	w.Spread(governs(axes, result), corner.Names(axes), result.Moves)
+	w.Spread(corner.DescribeEnds(axes, result), corner.Names(axes), result.Moves)
 	return w.Done()
 }

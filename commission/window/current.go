@@ -67,7 +67,7 @@ func current(s site.Site) finding.Finding {
 		f.Limit = finding.AtMost(limit)
 		return f
 	}
-	f = f.Judged(ends(result), finding.AtMost(limit), 0)
+	f = f.Judged(finding.ValueOf(result.Ends()), finding.AtMost(limit), 0)
 	f.Because = append(f.Because, who+" governs the limit")
 	f.Explanation = currentWorking(f, s, axes, result)
 	return f
@@ -118,6 +118,6 @@ func currentWorking(f finding.Finding, s site.Site, axes []corner.Axis, result c
 	e := float64(s.Source.LowestRest())
 	w.Step("root", "sqrt(E_low^2 - 4 * R_i * P)", "V", math.Sqrt(e*e-4*axes[0].Nominal*power))
 	w.Step("I", "2 * P / (E_low + root)", "A", result.Nominal)
-	w.Spread(governs(axes, result), corner.Names(axes), result.Moves)
+	w.Spread(corner.DescribeEnds(axes, result), corner.Names(axes), result.Moves)
 	return w.Done()
 }

@@ -100,18 +100,13 @@ func liftSource(s site.Site, passes func(site.Site) bool) (string, []finding.Cha
 		change.Key, change.Was = "source.cell_min", float64(s.Source.CellMin.Nominal)
 		limit /= float64(n)
 	}
-	value, ok := remedy.Least(change.Was, limit, func(v float64) bool {
-		change.Value = v
-		changed, err := remedy.Apply(s, change)
-		return err == nil && passes(changed)
-	})
+	change, ok := remedy.LeastChange(s, change, limit, passes)
 	if !ok {
 		return "", nil
 	}
-	change.Value = value
 	changes := []finding.Change{change}
 	text := "end the discharge earlier: set " + remedy.Phrase(changes)
-	rest := value
+	rest := change.Value
 	if n := s.Source.CellsInSeries; n > 0 {
 		rest *= float64(n)
 	}
@@ -124,15 +119,10 @@ func liftSource(s site.Site, passes func(site.Site) bool) (string, []finding.Cha
 // lowerPower is the remedy of a lower rating: the greatest converter.rated_power with which passes is true.
 func lowerPower(s site.Site, passes func(site.Site) bool) (string, []finding.Change) {
 	change := finding.Change{Key: "converter.rated_power", Unit: "W", Was: float64(s.Converter.RatedPower.Nominal)}
-	value, ok := remedy.Least(change.Was, 0, func(v float64) bool {
-		change.Value = v
-		changed, err := remedy.Apply(s, change)
-		return err == nil && passes(changed)
-	})
+	change, ok := remedy.LeastChange(s, change, 0, passes)
 	if !ok {
 		return "", nil
 	}
-	change.Value = value
 	changes := []finding.Change{change}
 	return "limit the power: set " + remedy.Phrase(changes), changes
 }

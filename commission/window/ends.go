@@ -95,7 +95,7 @@ func sourceEnd(s site.Site, rest quantity.Voltage, current quantity.Entered[quan
 	axes := []corner.Axis{e.internal, corner.Of(key, current)}
 	spread := corner.Over(axes, func(x []float64) float64 { return e.rest + sense*(x[1]*x[0]+e.errorBound) })
 	e.current = float64(current.Nominal)
-	e.values = ends(spread)
+	e.values = finding.ValueOf(spread.Ends())
 	return e, missing
 }
 
@@ -112,10 +112,6 @@ func restKeys(s site.Site, sense float64) []string {
 
 func internal(s site.Site) corner.Axis {
 	return corner.Of("source.internal_resistance", s.Source.InternalResistance)
-}
-
-func ends(s corner.Spread) finding.Value {
-	return finding.Value{Low: s.Low, Nominal: s.Nominal, High: s.High}
 }
 
 // busEnd is the lowest or the highest over all infeeds. Upwards the droop counts only for those that regenerate. All

@@ -73,14 +73,7 @@ func (e end) explained(s site.Site, f finding.Finding, missing finding.Missing, 
 // spreadOf notes the governing corner and the shares of a result over its axes.
 func spreadOf(w *finding.Working, axes []corner.Axis, f func(x []float64) float64) {
 	spread := corner.Over(axes, f)
-	w.Spread(governs(axes, spread), corner.Names(axes), spread.Moves)
-}
-
-func governs(axes []corner.Axis, s corner.Spread) string {
-	if s.Low == s.High {
-		return "no tolerance enters"
-	}
-	return "least with " + corner.Describe(axes, s.AtLow) + "; greatest with " + corner.Describe(axes, s.AtHigh)
+	w.Spread(corner.DescribeEnds(axes, spread), corner.Names(axes), spread.Moves)
 }
 
 func busFinding(s site.Site, high bool) finding.Finding {

@@ -40,7 +40,7 @@ func fullPower(s site.Site) finding.Finding {
 		f.Limit = permitted
 		return f
 	}
-	f = f.Judged(ends(result), permitted, 0)
+	f = f.Judged(finding.ValueOf(result.Ends()), permitted, 0)
 	f.Because = append(f.Because, d.governs(result.Nominal, axes, limit, who))
 	if part, known := chargeAt(s, f.Value); known {
 		f.Parts = append(f.Parts, part)
@@ -116,7 +116,7 @@ func (d chokeDuty) fullPowerWorking(f finding.Finding, axes []corner.Axis, limit
 	}
 	w.Given("E_sat", "least rest voltage at which no choke saturates, by halving; 0 where it does not bind", "V", saturation)
 	w.Step("E", "max(E_current, E_sat)", "V", result.Nominal)
-	w.Spread(governs(axes, result), corner.Names(axes), result.Moves)
+	w.Spread(corner.DescribeEnds(axes, result), corner.Names(axes), result.Moves)
 	return w.Done()
 }
 

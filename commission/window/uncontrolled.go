@@ -100,7 +100,7 @@ func Uncontrolled(s site.Site) finding.Finding {
 			ChokeInductance: quantity.Inductance(x[2]), Stray: quantity.Inductance(x[3]), Phases: c.Phases}
 	}
 	final := corner.Over(axes[:2], func(x []float64) float64 { return float64(loop([]float64{x[0], x[1], 0, 0}).Final()) })
-	f = f.Stated(ends(final))
+	f = f.Stated(finding.ValueOf(final.Ends()))
 	f.Because = append(f.Because, "blocking the pulses does not stop it; only fuse or contactor do")
 	f = uncontrolledParts(s, f, axes, loop)
 	w := finding.Explain(f.Basis, circuitTheory, "bus held at 0 V; chokes not saturated, which makes the real slope steeper")
@@ -110,7 +110,7 @@ func Uncontrolled(s site.Site) finding.Finding {
 	w.Given("N", "phases", "1", float64(c.Phases))
 	w.Step("R", "R_i + R_choke / N", "Ω", axes[0].Nominal+axes[1].Nominal/float64(c.Phases))
 	w.Step("I", "E_high / R", "A", f.Value.Nominal)
-	w.Spread(governs(axes[:2], final), corner.Names(axes[:2]), final.Moves)
+	w.Spread(corner.DescribeEnds(axes[:2], final), corner.Names(axes[:2]), final.Moves)
 	f.Explanation = w.Done()
 	return f
 }
@@ -125,7 +125,7 @@ func uncontrolledParts(s site.Site, f finding.Finding, axes []corner.Axis, loop 
 			}
 			return
 		}
-		f.Parts = append(f.Parts, finding.Part{Name: name, Unit: unit, Value: ends(corner.Over(axes, value))})
+		f.Parts = append(f.Parts, finding.Part{Name: name, Unit: unit, Value: finding.ValueOf(corner.Over(axes, value).Ends())})
 	}
 	c := converter(s)
 	var inductive finding.Missing
@@ -169,14 +169,14 @@ func Backfeed(s site.Site) finding.Finding {
 	axes := []corner.Axis{internal(s), corner.Of("converter.choke_resistance", c.ChokeResistance)}
 	drive := math.Max(0, bus.values.High-float64(s.Source.LowestRest()))
 	result := corner.Over(axes, func(x []float64) float64 { return drive / (x[0] + x[1]) })
-	f = f.Stated(ends(result))
+	f = f.Stated(finding.ValueOf(result.Ends()))
 	w := finding.Explain(f.Basis, circuitTheory, "steady; the bus held by its other infeeds, else only its capacitors discharge")
 	w.Given("V_bus_high", "highest steady bus voltage", "V", bus.values.High)
 	w.Given("E_low", "rest voltage at the bottom", "V", float64(s.Source.LowestRest()))
 	w.Given("R_i", "internal resistance of the source", "Ω", axes[0].Nominal)
 	w.Given("R_choke", "resistance of one choke", "Ω", axes[1].Nominal)
 	w.Step("I", "max(0, V_bus_high - E_low) / (R_i + R_choke)", "A", result.Nominal)
-	w.Spread(governs(axes, result), corner.Names(axes), result.Moves)
+	w.Spread(corner.DescribeEnds(axes, result), corner.Names(axes), result.Moves)
 	f.Explanation = w.Done()
 	return f
 }
