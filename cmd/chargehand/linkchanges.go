@@ -13,6 +13,7 @@ import (
 type changes struct {
 	told map[signal.Name]told
 	up   bool
+	down time.Time // when it was last told that the link is down
 }
 
 // told is a reading as it was last told.
@@ -23,7 +24,7 @@ type told struct {
 
 // How much a value must move to be worth a line, and after how long less will do.
 const (
-	toldSteps = 3     // steps of its register
+	toldSteps = 10    // steps of its register
 	toldShare = 0.005 // of its value
 	toldAgain = 10 * time.Second
 )
@@ -54,22 +55,22 @@ func (t told) isWorthALine(p registermap.Point, r signal.Reading, at time.Time) 
 }
 
 // since gives a line for the link where it came or went, and for each signal that changed, once a second at most; while the
-// link is down it alone is told.
+// link is down it alone is told, every ten seconds.
 func (c *changes) since(m registermap.Map, b signal.Batch) []string {
 	var lines []string
 	clock := b.At.Format(time.TimeOnly)
-	if b.Link.Up != c.up {
-		c.up = b.Link.Up
-		if c.up {
-			lines = append(lines, fmt.Sprintf("%s  link up again, %d reconnects", clock, b.Link.Reconnects))
-		} else {
-			line := fmt.Sprintf("%s  link down, values withdrawn: %s", clock, b.Link.Why)
-			if wait := b.Link.NextTry.Sub(b.At); !b.Link.NextTry.IsZero() && wait > 0 {
-				line += fmt.Sprintf("; next try in %v", wait.Round(100*time.Millisecond))
-			}
-			lines = append(lines, line)
+	switch {
+	case b.Link.Up && !c.up:
+		lines = append(lines, fmt.Sprintf("%s  link up again, %d reconnects", clock, b.Link.Reconnects))
+	case !b.Link.Up && (c.up || b.At.Sub(c.down) > toldAgain):
+		c.down = b.At
+		line := fmt.Sprintf("%s  link down, values withdrawn: %s", clock, b.Link.Why)
+		if wait := b.Link.NextTry.Sub(b.At); !b.Link.NextTry.IsZero() && wait > 0 {
+			line += fmt.Sprintf("; next try in %v", wait.Round(100*time.Millisecond))
 		}
+		lines = append(lines, line)
 	}
+	c.up = b.Link.Up
 	if !c.up {
 		return lines
 	}

@@ -34,7 +34,8 @@ func TestChangesTellWhatIsWorthALine(t *testing.T) {
 		{"missing at once", batch(20100*time.Millisecond, true, 0, signal.Missing, signal.Good, 1), []string{"no value, missing"}},
 		{"link lost", batch(21*time.Second, false, 0, signal.Stale, signal.Stale, 0), []string{"link down, values withdrawn: no answer within 1s; next try in 2s"}},
 		{"still lost", batch(22*time.Second, false, 0, signal.Stale, signal.Stale, 0), nil},
-		{"back", batch(23*time.Second, true, 1006.1, signal.Good, signal.Good, 1), []string{"link up again", "bus-voltage"}},
+		{"lost for long", batch(32*time.Second, false, 0, signal.Stale, signal.Stale, 0), []string{"09:00:32  link down"}},
+		{"back", batch(33*time.Second, true, 1006.1, signal.Good, signal.Good, 1), []string{"link up again", "bus-voltage"}},
 	}
 	for _, step := range steps {
 		got := strings.Join(c.since(m, step.batch), "\n")
