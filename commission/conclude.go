@@ -255,10 +255,10 @@ func (r *Run) pacing() {
 	switch rec := r.recorder; {
 	case !r.state.IsRehearsal() || r.opt.Speed <= 1:
 	case rec != nil && rec.phase == Running && rec.kindSlow() && r.opt.Clock.Pace() == 1:
-		factor := math.Floor(math.Min(r.opt.Speed, rec.tau/(samplesPerTau*focusPeriod.Seconds())))
+		factor := math.Floor(math.Min(r.opt.Speed, rec.tau/(samplesPerTau*slowPeriod.Seconds())))
 		if factor > 1 {
 			_, _ = r.hasten(walk.Hastened{Hastened: record.Hastened{What: "discharge", Factor: factor}})
-			rec.thin(time.Duration(factor) * focusPeriod)
+			rec.thin(time.Duration(factor) * slowPeriod)
 		}
 	case rec == nil && r.hurrying == coolDown && r.state.CoolsFor(now) == 0:
 		r.opt.Clock.Hasten(1)
@@ -269,5 +269,5 @@ func (r *Run) pacing() {
 const (
 	coolDown      = "cool-down"
 	samplesPerTau = 100                   // of a hastened discharge, at least
-	focusPeriod   = 25 * time.Millisecond // of a poller that looks at a capture's signals only
+	slowPeriod    = 50 * time.Millisecond // of a poller on a busy computer; one at leisure is twice as fast
 )

@@ -118,10 +118,11 @@ func observe(subject string, c capture.Capture) observation {
 	return between(edge(c, signal.Fault, true), blocked, "pulses blocked")
 }
 
-// change is the sample at which a state bit is first seen to have changed.
+// change is where a state bit is first seen to have changed. It happened at some time in the step before that sample, so the
+// middle of the step is its best time.
 type change struct {
 	ok   bool
-	i    int
+	i    int // of the sample
 	at   time.Duration
 	step time.Duration // since the sample before
 }
@@ -138,7 +139,7 @@ func edge(c capture.Capture, n signal.Name, to bool) change {
 		if on := s.Values[k].V != 0; on != to {
 			before, had = s, true
 		} else if had {
-			return change{true, i, s.At, s.At - before.At}
+			return change{true, i, (before.At + s.At) / 2, s.At - before.At}
 		}
 	}
 	return change{}
