@@ -284,7 +284,7 @@ func (m Model) pressedAtPoint(msg tea.KeyMsg) (Model, tea.Cmd) {
 	case key.Matches(msg, k.Fail):
 		return m.ask(m.askFail(p)), nil
 	case key.Matches(msg, k.NotApplicable):
-		if !p.MayOmit {
+		if !mayOmit(m.snapshot.State, p) {
 			return m.refuse(p.ID + " cannot be left out; fail it with a deviation instead"), nil
 		}
 		return m.ask(m.askOmit(p)), nil

@@ -133,14 +133,20 @@ func nextReading(s commission.Snapshot, p walk.Point) action {
 		return action{step: stepArm, point: p.ID, label: "arm the capture"}
 	case assessed.Result == walk.Open && comparesFirst(assessed):
 		return action{step: stepPass, point: p.ID, label: "compare and pass"}
-	case assessed.Result == walk.Open && p.MayOmit:
+	case assessed.Result == walk.Open && mayOmit(state, p):
 		return action{step: stepPass, point: p.ID, label: "pass (x not applicable)", reason: because(assessed)}
 	case assessed.Result == walk.Open:
-		return action{step: stepPass, point: p.ID, label: "pass (something is missing)", reason: because(assessed)}
+		return action{step: stepPass, point: p.ID, label: "pass, though something is missing (u fails it)", reason: because(assessed)}
 	case p.Kind == walk.Hold:
 		return action{step: stepPass, point: p.ID, label: "pass and sign"}
 	}
 	return action{step: stepPass, point: p.ID, label: "pass"}
+}
+
+// mayOmit tells whether a point can be left out: it is optional, and the case in which it is has not been ruled out.
+func mayOmit(state walk.State, p walk.Point) bool {
+	found := state.BusBefore()
+	return p.MayOmit && (p.OmitWhen == "" || found == "" || found == p.OmitWhen)
 }
 
 // comparesFirst tells whether all that is missing are findings that the verdict itself makes of the readings.

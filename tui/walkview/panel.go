@@ -33,7 +33,15 @@ func (m Model) panel(width, height int) []string {
 // showsChart tells whether a point's chart is shown or its text: the running capture always first, one that has ended where
 // there is room for the caution beside it. Tab shows the other.
 func (m Model) showsChart(p walk.Point, c commission.Progress, height int) bool {
-	return (m.isRunning(c) || !p.IsHazardous() || height >= roomForBoth) != m.words
+	speaksForItself := !p.IsHazardous() && !m.hasTrouble(p)
+	return (m.isRunning(c) || speaksForItself || height >= roomForBoth) != m.words
+}
+
+// hasTrouble tells whether a measured finding of the point is not passed: its reasons must be read.
+func (m Model) hasTrouble(p walk.Point) bool {
+	return slices.ContainsFunc(p.Findings, func(id string) bool {
+		return slices.ContainsFunc(m.snapshot.State.Measured(id), func(f finding.Finding) bool { return f.Verdict == finding.Fail || f.Verdict == finding.Undecided })
+	})
 }
 
 const roomForBoth = 20
