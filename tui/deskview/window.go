@@ -28,7 +28,7 @@ func (m Model) windowChart() chart.Chart {
 			band.X, band.Low, band.High = append(band.X, x), append(band.Low, float64(row.Terminal.Low)), append(band.High, float64(row.Terminal.High))
 		}
 	}
-	picture.Bands, picture.Nominal, picture.Traces = []chart.Band{band}, []chart.Series{low}, []chart.Series{rest}
+	picture.Bands, picture.Nominal, picture.Fitted = []chart.Band{band}, []chart.Series{low}, []chart.Series{rest}
 	for _, limit := range []struct{ id, label string }{{"window.bus-low", "lowest bus"}, {"window.source-high", "charging"}} {
 		if f, ok := m.find(limit.id); ok && f.State == finding.Finite {
 			at := f.Value.High

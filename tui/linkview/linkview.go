@@ -154,11 +154,12 @@ func (m Model) maxAge() time.Duration {
 // columns sets a row: the place gets what room is left.
 func (m Model) columns(name, value, words, place, age, quality string) string {
 	t := m.theme
-	row := "  " + t.Fit(name, 22) + t.Fit(value, 13) + t.Fit(words, 10)
-	if wide := m.width - 2 - 22 - 13 - 10 - 9 - 8; wide >= 16 {
-		row += t.Fit(place, min(wide, 34))
+	const named, valued, worded, aged, judged = 22, 11, 10, 7, 7
+	row := "  " + t.Fit(name, named) + t.Fit(value, valued) + t.Fit(words, worded)
+	if wide := m.width - 2 - named - valued - worded - aged - judged; wide >= 16 {
+		row += t.Fit(t.Clip(place, wide-1), min(wide, 34))
 	}
-	return row + t.Fit(age, 9) + quality
+	return row + t.Fit(age, aged) + quality
 }
 
 func (m Model) row(name signal.Name) string {
