@@ -287,8 +287,8 @@ func (t *linkTrial) units() []registermap.Map {
 }
 
 func (t *linkTrial) opinion() opinion {
-	samples, expected := compared(t.samples)
-	return opinionOf(t.papers, registermap.Diagnose(t.papers.registers, t.papers.unit(), samples), expected, t.refused)
+	d, expected := judge(t.papers.registers, t.papers.unit(), t.samples)
+	return opinionOf(t.papers, d, expected, t.refused)
 }
 
 func allHaveValues(b signal.Batch) bool {
@@ -329,7 +329,7 @@ func (t *linkTrial) printLook() {
 	}
 	tell("")
 	tell("Around each signal; * agrees with what is expected")
-	_, expected := compared(t.samples)
+	_, expected := compared(t.samples, narrowly)
 	words := t.samples[len(t.samples)-1].words
 	for i, p := range m.Points {
 		if i > 0 && p.Type == registermap.Bit && sameRegister(p, m.Points[i-1]) {

@@ -21,8 +21,8 @@ type linkSample struct {
 }
 
 // compared are the samples as the diagnosis wants them. A signal that a hand meter was ever held against is judged by the meter
-// alone. latest is what was last expected of each.
-func compared(samples []linkSample) (all []registermap.Sample, latest map[signal.Name]expectation) {
+// alone. latest is what was last expected of each; of says which of its two ranges is asked for.
+func compared(samples []linkSample, of func(expectation) registermap.Expected) (all []registermap.Sample, latest map[signal.Name]expectation) {
 	metered := map[signal.Name]bool{}
 	for _, s := range samples {
 		for n := range s.meters {
@@ -32,7 +32,7 @@ func compared(samples []linkSample) (all []registermap.Sample, latest map[signal
 	latest = map[signal.Name]expectation{}
 	for _, s := range samples {
 		x := registermap.Sample{Words: s.words, Expected: map[signal.Name]registermap.Expected{}}
-		put := func(n signal.Name, e expectation) { x.Expected[n], latest[n] = e.Expected, e }
+		put := func(n signal.Name, e expectation) { x.Expected[n], latest[n] = of(e), e }
 		for n, e := range s.site {
 			if !metered[n] {
 				put(n, e)
@@ -44,6 +44,20 @@ func compared(samples []linkSample) (all []registermap.Sample, latest map[signal
 		all = append(all, x)
 	}
 	return all, latest
+}
+
+func narrowly(e expectation) registermap.Expected { return e.Expected }
+
+func widely(e expectation) registermap.Expected { return e.wide }
+
+// judge compares all samples with what was expected of them. One change to the whole map must leave room for a side that is
+// dead, since a plant half of which is dead is common; a single signal in between dead and its window is asked for the window.
+func judge(m registermap.Map, own uint8, samples []linkSample) (registermap.Diagnosis, map[signal.Name]expectation) {
+	all, expected := compared(samples, narrowly)
+	d := registermap.Diagnose(m, own, all)
+	all, _ = compared(samples, widely)
+	d.Whole = registermap.Diagnose(m, own, all).Whole
+	return d, expected
 }
 
 // opinion is what is to be thought of a map, in lines for people.
@@ -78,7 +92,7 @@ func opinionOf(p papers, d registermap.Diagnosis, expected map[signal.Name]expec
 		case s.Verdict == registermap.NotRead && !mended[s.Point.Name]:
 			has := isRefused(s.Point, p.unit(), refused)
 			unread[has] = append(unread[has], string(s.Point.Name))
-		case !mended[s.Point.Name]:
+		case !mended[s.Point.Name] && (len(mended) == 0 || e.basis != byRest):
 			o.signal(p, s, e)
 		}
 	}

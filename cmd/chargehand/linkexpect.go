@@ -16,7 +16,8 @@ type expectation struct {
 	registermap.Expected
 	basis basis
 	why   string
-	gap   [2]float64 // values within it do not agree: neither dead nor in the window; none where both are 0
+	gap   [2]float64           // values within it do not agree: neither dead nor in the window; none where both are 0
+	wide  registermap.Expected // with the gap in it; what one change to the whole map must meet
 }
 
 // basis is where an expectation comes from.
@@ -42,7 +43,8 @@ const (
 
 // between is the expectation of any value from low to high.
 func between(low, high float64, b basis, why string) expectation {
-	return expectation{Expected: registermap.Expected{Value: (low + high) / 2, Tolerance: (high - low) / 2}, basis: b, why: why}
+	e := registermap.Expected{Value: (low + high) / 2, Tolerance: (high - low) / 2}
+	return expectation{Expected: e, wide: e, basis: b, why: why}
 }
 
 // expectedNow says what a site's signals ought to read, given what they do read: a side is dead or in its window, currents
@@ -158,7 +160,7 @@ func (e expectation) isNarrow() bool {
 // register, or a thousandth of the value, and not in the gap.
 func (e expectation) agrees(p registermap.Point, value float64) bool {
 	step := 0.0
-	if p.Type != registermap.F32 && p.Type != registermap.F64 {
+	if !isFloat(p) {
 		step = math.Abs(p.Scale * p.UnitFactor)
 	}
 	within := max(0.001*math.Abs(e.Value), (e.Tolerance+step/2)*(1+1e-9))

@@ -79,14 +79,18 @@ func shown(p registermap.Point, value float64) string {
 		return "no value"
 	case p.Values != nil || unit == "":
 		return strconv.FormatFloat(value, 'g', 6, 64)
+	case math.Abs(value) >= 1e10 || value != 0 && math.Abs(value) < 1e-4 && isFloat(p): // no plant's, but what the words say
+		return strconv.FormatFloat(value, 'g', 3, 64) + " " + unit
 	case math.Abs(value) >= 1e5:
 		return quantity.Engineering(value, unit, 5)
-	case p.Type == registermap.F32 || p.Type == registermap.F64 || step == 0:
+	case isFloat(p) || step == 0:
 		return strconv.FormatFloat(value, 'g', 6, 64) + " " + unit
 	}
 	decimals := max(0, int(math.Ceil(-math.Log10(step)-1e-9)))
 	return strconv.FormatFloat(value, 'f', decimals, 64) + " " + unit
 }
+
+func isFloat(p registermap.Point) bool { return p.Type == registermap.F32 || p.Type == registermap.F64 }
 
 func tableHead() string {
 	return fmt.Sprintf("%-21s %-22s %-9s %10s %6s %s", "signal", "place", "raw", "value", "age", "state")
