@@ -22,14 +22,21 @@ type assessment struct {
 	charge    []corner.Spread
 	closeAxes []corner.Axis
 	closing   []corner.Spread
-	remedies  bool // findings that do not pass say what would help
+
+	other              *choice // of the resistor, where a finding asks for it
+	workings, remedies bool    // findings carry their calculation, and what would make them pass
 }
 
 // Findings are the pre-charge findings of a site, in the order of the catalogue.
-func Findings(s site.Site) []finding.Finding { return assess(s, true).findings() }
+func Findings(s site.Site) []finding.Finding {
+	a := assess(s)
+	a.workings, a.remedies = true, true
+	return a.findings()
+}
 
-func assess(s site.Site, remedies bool) *assessment {
-	a := &assessment{path: pathOf(s), remedies: remedies}
+// assess works the site through for the verdicts alone, as the search for a remedy does with many sites.
+func assess(s site.Site) *assessment {
+	a := &assessment{path: pathOf(s)}
 	if a.missing(a.needsLoop) != nil {
 		return a
 	}
@@ -45,26 +52,39 @@ func (a *assessment) findings() []finding.Finding {
 	}
 }
 
+// stated is a finding without a limit: one result of the charge.
+func (a *assessment) stated(f finding.Finding, result int, explain func() *finding.Explanation, needs ...func(*finding.Missing)) finding.Finding {
+	if m := a.missing(needs...); m != nil {
+		return f.Lacking(m...)
+	}
+	return a.explained(f.Stated(finding.ValueOf(a.charge[result].Ends())), explain)
+}
+
+func (a *assessment) explained(f finding.Finding, explain func() *finding.Explanation) finding.Finding {
+	if a.workings {
+		f.Explanation = explain()
+	}
+	return f
+}
+
+// mended adds what would help where the finding does not pass.
+func (a *assessment) mended(f finding.Finding, remedy func(finding.Finding) finding.Finding) finding.Finding {
+	if !a.remedies || f.Verdict == finding.Pass {
+		return f
+	}
+	return remedy(f)
+}
+
 func say(v float64, unit string) string { return quantity.Engineering(v, unit, 4) }
 
 func (a *assessment) timeConstant() finding.Finding {
 	f := finding.Finding{ID: "precharge.time-constant", Title: "Time constant of the charge", Unit: "s", Basis: basisCharge}
-	if m := a.missing(a.needsCircuit); m != nil {
-		return f.Lacking(m...)
-	}
-	f = f.Stated(finding.ValueOf(a.charge[ofTau].Ends()))
-	f.Explanation = a.explainTimeConstant()
-	return f
+	return a.stated(f, ofTau, a.explainTimeConstant, a.needsCircuit)
 }
 
 func (a *assessment) finalVoltage() finding.Finding {
 	f := finding.Finding{ID: "precharge.final-voltage", Title: "Voltage at which the charge settles", Unit: "V", Basis: basisLoad}
-	if m := a.missing(a.needsCircuit); m != nil {
-		return f.Lacking(m...)
-	}
-	f = f.Stated(finding.ValueOf(a.charge[ofFinal].Ends()))
-	f.Explanation = a.explainFinalVoltage()
-	return f
+	return a.stated(f, ofFinal, a.explainFinalVoltage, a.needsCircuit)
 }
 
 func (a *assessment) stall() finding.Finding {
@@ -75,7 +95,7 @@ func (a *assessment) stall() finding.Finding {
 	}
 	gap := a.closing[ofGap]
 	f = f.Judged(finding.ValueOf(gap.Ends()), finding.AtMost(float64(a.difference-a.errors)), 0)
-	f.Explanation = a.explainStall()
+	f = a.explained(f, a.explainStall)
 	if net, ok := a.circuit(a.nominal()).LeastNetCurrent(a.site.Source.HighestRest() - a.difference); ok {
 		f.Parts = append(f.Parts, finding.Part{Name: "least net charging current", Unit: "A", Value: finding.Exactly(float64(net))})
 	}
@@ -86,10 +106,7 @@ func (a *assessment) stall() finding.Finding {
 		f.Verdict = finding.Fail
 		f.Because = append(f.Because, "the auxiliary supply starts, pulls the bus down, stops, and again: the bus never comes up")
 	}
-	if f.Verdict != finding.Pass && a.remedies {
-		f = a.remedyStall(f)
-	}
-	return f
+	return a.mended(f, a.remedyStall)
 }
 
 func (a *assessment) hiccups() bool { return a.closing[ofHiccup].High > 0 }
@@ -101,7 +118,7 @@ func (a *assessment) timeToClose() finding.Finding {
 	}
 	f = f.Stated(finding.ValueOf(a.closing[ofTimeToClose].Ends()))
 	f = orNever(f)
-	f.Explanation = a.explainTimeToClose()
+	f = a.explained(f, a.explainTimeToClose)
 	return f
 }
 
@@ -123,32 +140,17 @@ func orNever(f finding.Finding) finding.Finding {
 
 func (a *assessment) peakCurrent() finding.Finding {
 	f := finding.Finding{ID: "precharge.peak-current", Title: "Current at the first instant", Unit: "A", Basis: basisPeak}
-	if m := a.missing(a.needsLoop); m != nil {
-		return f.Lacking(m...)
-	}
-	f = f.Stated(finding.ValueOf(a.charge[ofCurrent].Ends()))
-	f.Explanation = a.explainPeakCurrent()
-	return f
+	return a.stated(f, ofCurrent, a.explainPeakCurrent, a.needsLoop)
 }
 
 func (a *assessment) peakPower() finding.Finding {
 	f := finding.Finding{ID: "precharge.peak-power", Title: "Power in the resistor at the first instant", Unit: "W", Basis: basisPeak}
-	if m := a.missing(a.needsLoop); m != nil {
-		return f.Lacking(m...)
-	}
-	f = f.Stated(finding.ValueOf(a.charge[ofPower].Ends()))
-	f.Explanation = a.explainPeakPower()
-	return f
+	return a.stated(f, ofPower, a.explainPeakPower, a.needsLoop)
 }
 
 func (a *assessment) energy() finding.Finding {
 	f := finding.Finding{ID: "precharge.energy", Title: "Energy in the resistor, one charge", Unit: "J", Basis: basisEnergy}
-	if m := a.missing(a.needsCircuit, a.needsEnergy); m != nil {
-		return f.Lacking(m...)
-	}
-	f = f.Stated(finding.ValueOf(a.charge[ofEnergy].Ends()))
-	f.Explanation = a.explainEnergy()
-	return f
+	return a.stated(f, ofEnergy, a.explainEnergy, a.needsCircuit, a.needsEnergy)
 }
 
 // needsEnergy asks for the time-out where a charge may never close.
@@ -162,14 +164,11 @@ func (a *assessment) pulse() finding.Finding {
 		return f.Lacking(m...)
 	}
 	f = orUnlimited(f.Judged(finding.ValueOf(a.charge[ofPulse].Ends()), finding.AtMost(1), 0))
-	f.Explanation = a.explainPulse()
+	f = a.explained(f, a.explainPulse)
 	if f.Verdict != finding.Pass {
 		f.Because = append(f.Because, fmt.Sprintf("the charge asks for %s times the pulse that the resistor may take", say(f.Value.High, "1")))
-		if a.remedies {
-			f = a.remedyResistor(f)
-		}
 	}
-	return f
+	return a.mended(f, a.remedyResistor)
 }
 
 func (a *assessment) repeat() finding.Finding {
@@ -182,14 +181,11 @@ func (a *assessment) repeat() finding.Finding {
 		return f.Lacking(m...)
 	}
 	f = orUnlimited(f.Judged(finding.ValueOf(a.charge[ofRepeat].Ends()), limit, 0))
-	f.Explanation = a.explainRepeat()
+	f = a.explained(f, a.explainRepeat)
 	if f.Verdict != finding.Pass {
 		f.Because = append(f.Because, fmt.Sprintf("%d attempts every %s heat the resistor beyond what it may take", a.site.Precharge.Attempts, say(float64(a.interval()), "s")))
-		if a.remedies {
-			f = a.remedyRepeat(f)
-		}
 	}
-	return f
+	return a.mended(f, a.remedyRepeat)
 }
 
 func (a *assessment) wait() finding.Finding {
@@ -205,14 +201,11 @@ func (a *assessment) wait() finding.Finding {
 	}
 	f = f.Judged(finding.ValueOf(a.closing[ofWait].Ends()), finding.AtMost(float64(a.interval())), 0)
 	f = orNever(f)
-	f.Explanation = a.explainWait()
+	f = a.explained(f, a.explainWait)
 	if f.Verdict != finding.Pass {
 		f.Because = append(f.Because, "attempt after attempt at this interval the resistor warms beyond its limit, or the next begins before the last has ended")
-		if a.remedies {
-			f = a.remedyWait(f)
-		}
 	}
-	return f
+	return a.mended(f, a.remedyWait)
 }
 
 func (a *assessment) shortedBus() finding.Finding {
@@ -223,14 +216,11 @@ func (a *assessment) shortedBus() finding.Finding {
 	timeout := float64(a.timeout())
 	f = judgedTo(f, finding.ValueOf(a.charge[ofWithstand].Ends()), finding.AtLeast(belowLeastWithstand*timeout), finding.AtLeast(timeout))
 	f = orUnlimited(f)
-	f.Explanation = a.explainShortedBus()
+	f = a.explained(f, a.explainShortedBus)
 	if f.Verdict != finding.Pass {
 		f.Because = append(f.Because, fmt.Sprintf("a shorted bus may last until the time-out, %s; the resistor stands it %s", say(timeout, "s"), say(f.Value.Low, "s")))
-		if a.remedies {
-			f = a.remedyResistor(f)
-		}
 	}
-	return f
+	return a.mended(f, a.remedyResistor)
 }
 
 func (a *assessment) needsShortedBus(m *finding.Missing) {
@@ -256,14 +246,11 @@ func (a *assessment) timeOut() finding.Finding {
 		{Name: "slowest charge", Unit: "s", Value: finding.Exactly(slowest)},
 		{Name: "least withstand", Unit: "s", Value: finding.Exactly(least)},
 	}
-	f.Explanation = a.explainTimeout()
+	f = a.explained(f, a.explainTimeout)
 	if f.Verdict != finding.Pass {
 		f.Because = a.timeoutReasons(slowest, least)
-		if a.remedies {
-			f = a.remedyResistor(f)
-		}
 	}
-	return f
+	return a.mended(f, a.remedyResistor)
 }
 
 func pointer(v float64) *float64 { return &v }
@@ -293,7 +280,7 @@ func (a *assessment) breaking() finding.Finding {
 	}
 	f = f.Judged(finding.ValueOf(a.charge[ofCurrent].Ends()), finding.AtMost(float64(contactor.BreakingCurrent.Nominal)), 0)
 	f.Parts = []finding.Part{{Name: "contactor voltage", Unit: "V", Value: finding.Exactly(float64(contactor.Voltage.Nominal))}}
-	f.Explanation = a.explainPeakCurrent()
+	f = a.explained(f, a.explainPeakCurrent)
 	if f.Verdict != finding.Pass {
 		f.Because = append(f.Because, fmt.Sprintf("it breaks up to %s and may break %s", say(f.Value.High, "A"), say(*f.Limit.High, "A")))
 	}
@@ -301,10 +288,7 @@ func (a *assessment) breaking() finding.Finding {
 		f.Verdict = finding.Fail
 		f.Because = append(f.Because, fmt.Sprintf("its voltage, %s, is below the source's highest, %s", say(float64(contactor.Voltage.Nominal), "V"), say(float64(highest), "V")))
 	}
-	if f.Verdict != finding.Pass && a.remedies {
-		f = a.remedyBreaking(f)
-	}
-	return f
+	return a.mended(f, a.remedyBreaking)
 }
 
 // missing asks each group of needs; nil when nothing is missing.

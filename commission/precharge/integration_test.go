@@ -171,7 +171,7 @@ func TestSettledAgreesWithIntegration(t *testing.T) {
 		if how != c.how {
 			t.Errorf("%s: Settled() how = %v, want %v", c.name, how, c.how)
 		}
-		end := simulate(c.Circuit, 60, nil)
+		end := simulate(c.Circuit, 30, nil)
 		if end.hiccup != (c.how == Hiccups) {
 			t.Errorf("%s: integration hiccups = %v, want %v", c.name, end.hiccup, c.how == Hiccups)
 		}
@@ -182,8 +182,8 @@ func TestSettledAgreesWithIntegration(t *testing.T) {
 			if got != c.StartsAt {
 				t.Errorf("%s: Settled() = %v, want the upper level %v", c.name, got, c.StartsAt)
 			}
-			if bound := float64(c.EnergyUntil(60)); bound < end.pre {
-				t.Errorf("%s: EnergyUntil(60 s) = %v J, want at least the %v J by integration", c.name, bound, end.pre)
+			if bound := float64(c.EnergyUntil(30)); bound < end.pre {
+				t.Errorf("%s: EnergyUntil(30 s) = %v J, want at least the %v J by integration", c.name, bound, end.pre)
 			}
 		}
 	}

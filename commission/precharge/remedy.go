@@ -5,7 +5,6 @@ import (
 	"math"
 
 	"chargehand/commission/finding"
-	"chargehand/commission/quantity"
 	"chargehand/commission/remedy"
 	"chargehand/commission/site"
 )
@@ -14,10 +13,10 @@ import (
 func (a *assessment) remedyStall(f finding.Finding) finding.Finding {
 	set := float64(a.difference)
 	if a.hiccups() {
-		was := float64(a.site.Bus.Auxiliary.Power.Nominal)
-		most, ok := remedy.Least(was, 0, func(v float64) bool { return a.stallWith(v).Verdict == finding.Pass })
+		lower := finding.Change{Key: "bus.auxiliary.power", Unit: "W", Was: float64(a.site.Bus.Auxiliary.Power.Nominal)}
+		lower, ok := remedy.LeastChange(a.site, lower, 0, func(s site.Site) bool { return assess(s).stall().Verdict == finding.Pass })
 		if ok {
-			return remedy.Ask(f, "during the charge lower ", finding.Change{Key: "bus.auxiliary.power", Unit: "W", Was: was, Value: most})
+			return remedy.Ask(f, "during the charge lower ", lower)
 		}
 		f.Remedy = "the auxiliary supply must not start before the bypass has closed"
 		return f
@@ -26,36 +25,17 @@ func (a *assessment) remedyStall(f finding.Finding) finding.Finding {
 	return remedy.Ask(f, "raise ", remedy.To("precharge.closing_difference", "V", set, needed))
 }
 
-// stallWith judges the stall with another power of the auxiliary supply.
-func (a *assessment) stallWith(power float64) finding.Finding {
-	s := a.site
-	auxiliary := *s.Bus.Auxiliary
-	was := auxiliary.Power
-	auxiliary.Power.Spread = quantity.Exactly(quantity.Power(power))
-	if was.Nominal > 0 {
-		auxiliary.Power.Low, auxiliary.Power.High = was.Low/was.Nominal*quantity.Power(power), was.High/was.Nominal*quantity.Power(power)
-	}
-	s.Bus.Auxiliary = &auxiliary
-	return assess(s, false).stall()
-}
-
 // remedyRepeat lengthens the interval; where even a single charge is too much it says so.
 func (a *assessment) remedyRepeat(f finding.Finding) finding.Finding {
 	was, limit := float64(a.interval()), *f.Limit.High
-	hottest := func(interval float64) float64 {
-		return assess(withInterval(a.site, interval), false).charge[ofRepeat].High
-	}
 	longest := 1000 * math.Max(was, float64(a.axes[axisThermalTime].High))
-	if interval, ok := remedy.Least(was, longest, func(v float64) bool { return hottest(v) <= limit }); ok {
-		return remedy.Ask(f, "raise ", finding.Change{Key: "precharge.interval", Unit: "s", Was: was, Value: interval})
+	longer := finding.Change{Key: "precharge.interval", Unit: "s", Was: was}
+	longer, ok := remedy.LeastChange(a.site, longer, longest, func(s site.Site) bool { return assess(s).charge[ofRepeat].High <= limit })
+	if ok {
+		return remedy.Ask(f, "raise ", longer)
 	}
 	f.Remedy = "no interval is long enough: a single charge heats it too far, it needs a resistor of more thermal mass or more ohms"
 	return f
-}
-
-func withInterval(s site.Site, interval float64) site.Site {
-	s.Precharge.Interval.Spread = quantity.Exactly(quantity.Seconds(interval))
-	return s
 }
 
 func (a *assessment) remedyWait(f finding.Finding) finding.Finding {

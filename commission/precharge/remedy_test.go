@@ -8,6 +8,7 @@ import (
 	"chargehand/commission/finding"
 	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/quantity"
+	"chargehand/commission/remedy"
 	"chargehand/commission/site"
 )
 
@@ -18,31 +19,11 @@ func set[Q quantity.Scalar](e *quantity.Entered[Q], v float64) {
 // put puts one change of a remedy into a copy of the site.
 func put(t *testing.T, s site.Site, c finding.Change) site.Site {
 	t.Helper()
-	switch c.Key {
-	case keyResistance:
-		return withResistance(s, c.Value)
-	case keyTimeout:
-		set(&s.Precharge.Timeout, c.Value)
-	case "precharge.interval":
-		set(&s.Precharge.Interval, c.Value)
-	case "precharge.closing_difference":
-		set(&s.Precharge.ClosingDifference, c.Value)
-	case "bus.auxiliary.power":
-		auxiliary := *s.Bus.Auxiliary
-		set(&auxiliary.Power, c.Value)
-		s.Bus.Auxiliary = &auxiliary
-	case "precharge.contactor.breaking_current", "precharge.contactor.voltage":
-		contactor := *s.Precharge.Contactor
-		if strings.HasSuffix(c.Key, "voltage") {
-			set(&contactor.Voltage, c.Value)
-		} else {
-			set(&contactor.BreakingCurrent, c.Value)
-		}
-		s.Precharge.Contactor = &contactor
-	default:
-		t.Fatalf("remedy changes %s, which no finding of this family asks for", c.Key)
+	changed, err := remedy.Apply(s, c)
+	if err != nil {
+		t.Fatal(err)
 	}
-	return s
+	return changed
 }
 
 func find(t *testing.T, s site.Site, id string) finding.Finding {

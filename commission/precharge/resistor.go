@@ -16,21 +16,39 @@ type hardest struct{ pulse, withstand, slowest float64 }
 // that is there.
 type choice struct {
 	a                         *assessment
-	judgesShort, judgesCharge bool // withstand and slowest charge are known
-	at                        func(r float64) hardest
+	judgesShort, judgesCharge bool                // withstand and slowest charge are known
+	tried                     map[float64]hardest // pulse, shorted bus and time-out ask for the same resistances
 }
 
-func (a *assessment) choice() choice {
-	c := choice{a: a}
-	c.judgesShort = a.missing(a.needsShortedBus) == nil
-	c.judgesCharge = c.judgesShort && a.missing(a.needsErrors) == nil
-	c.at = c.inCorners
-	return c
+// choice is made once for all findings that ask for it.
+func (a *assessment) choice() *choice {
+	if a.other == nil {
+		c := &choice{a: a, tried: map[float64]hardest{}}
+		c.judgesShort = a.missing(a.needsShortedBus) == nil
+		c.judgesCharge = c.judgesShort && a.missing(a.needsErrors) == nil
+		a.other = c
+	}
+	return a.other
+}
+
+// at is what one resistance is up against.
+func (c *choice) at(r float64) hardest {
+	h, known := c.tried[r]
+	switch {
+	case known:
+		return h
+	case c.isCertain():
+		h = c.inCorners(r)
+	default:
+		h = c.overAll(r)
+	}
+	c.tried[r] = h
+	return h
 }
 
 // inCorners takes the corners that are worst with the present resistance: which corner is worst does not change with it, as
 // every figure is monotone in every input. A remedy is checked over all corners before it is given.
-func (c choice) inCorners(r float64) hardest {
+func (c *choice) inCorners(r float64) hardest {
 	scale := r / c.a.axes[axisResistor].Nominal
 	with := func(x []float64) []float64 {
 		y := append([]float64(nil), x...)
@@ -49,14 +67,14 @@ func (c choice) inCorners(r float64) hardest {
 
 // isCertain tells whether the worst corners are known: among corners that never close, or stand nothing or everything,
 // none is worse than another.
-func (c choice) isCertain() bool {
+func (c *choice) isCertain() bool {
 	withstand := c.a.charge[ofWithstand].Low
 	return !math.IsInf(c.a.closing[ofTimeToClose].High, 1) && withstand > 0 && !math.IsInf(withstand, 1)
 }
 
 // overAll takes all corners again.
-func (c choice) overAll(r float64) hardest {
-	b := assess(withResistance(c.a.site, r), false)
+func (c *choice) overAll(r float64) hardest {
+	b := assess(withResistance(c.a.site, r))
 	return hardest{b.charge[ofPulse].High, b.charge[ofWithstand].Low, b.closing[ofTimeToClose].High}
 }
 
@@ -68,21 +86,21 @@ func withResistance(s site.Site, r float64) site.Site {
 	return s
 }
 
-func (c choice) present() float64 { return c.a.axes[axisResistor].Nominal }
+func (c *choice) present() float64 { return c.a.axes[axisResistor].Nominal }
 
 // standsPulse and the others are the three conditions; one that cannot be judged does not stand in the way.
 func (h hardest) standsPulse() bool { return h.pulse <= 1 }
 
-func (c choice) standsShort(h hardest, timeout float64) bool {
+func (c *choice) standsShort(h hardest, timeout float64) bool {
 	return !c.judgesShort || h.withstand >= belowLeastWithstand*timeout
 }
 
-func (c choice) closesInTime(h hardest, timeout float64) bool {
+func (c *choice) closesInTime(h hardest, timeout float64) bool {
 	return !c.judgesCharge || aboveSlowestCharge*h.slowest <= timeout
 }
 
 // window is the admissible time-out at one resistance.
-func (c choice) window(r float64) (low, high float64) {
+func (c *choice) window(r float64) (low, high float64) {
 	h := c.at(r)
 	return aboveSlowestCharge * h.slowest, h.withstand / belowLeastWithstand
 }
@@ -107,7 +125,7 @@ const reach = 100 // how far from the present resistance, as a factor
 
 // admissible is the range of resistances that meet pulse, shorted bus and time-out together with the time-out as set:
 // larger ones ease pulse and shorted bus, smaller ones charge faster.
-func (c choice) admissible(timeout float64) (least, greatest float64, ok bool) {
+func (c *choice) admissible(timeout float64) (least, greatest float64, ok bool) {
 	from, to := c.present()/reach, c.present()*reach
 	strong := func(r float64) bool { h := c.at(r); return h.standsPulse() && c.standsShort(h, timeout) }
 	fast := func(r float64) bool { return c.closesInTime(c.at(r), timeout) }
@@ -125,7 +143,7 @@ func (c choice) admissible(timeout float64) (least, greatest float64, ok bool) {
 }
 
 // leastWithWindow is the least resistance that stands the pulse and leaves room for some time-out.
-func (c choice) leastWithWindow() (float64, bool) {
+func (c *choice) leastWithWindow() (float64, bool) {
 	fits := func(r float64) bool {
 		h := c.at(r)
 		return h.standsPulse() && aboveSlowestCharge*h.slowest < h.withstand/belowLeastWithstand
@@ -157,9 +175,6 @@ func between(low, high float64) float64 {
 // else both; or which of them exclude each other and by how much.
 func (a *assessment) remedyResistor(f finding.Finding) finding.Finding {
 	c := a.choice()
-	if !c.isCertain() {
-		c.at = c.overAll
-	}
 	for _, way := range []func(finding.Finding) (finding.Finding, bool){c.otherTimeout, c.otherResistor, c.both} {
 		if g, ok := way(f); ok && a.passesWith(f.ID, g.Changes) {
 			return g
@@ -171,16 +186,11 @@ func (a *assessment) remedyResistor(f finding.Finding) finding.Finding {
 
 // passesWith judges the finding again with the changes in place.
 func (a *assessment) passesWith(id string, changes []finding.Change) bool {
-	s := a.site
-	for _, c := range changes {
-		switch c.Key {
-		case keyResistance:
-			s = withResistance(s, c.Value)
-		case keyTimeout:
-			s.Precharge.Timeout.Spread = quantity.Exactly(quantity.Seconds(c.Value))
-		}
+	s, err := remedy.Apply(a.site, changes...)
+	if err != nil {
+		return false
 	}
-	for _, f := range assess(s, false).findings() {
+	for _, f := range assess(s).findings() {
 		if f.ID == id {
 			return f.Verdict == finding.Pass
 		}
@@ -194,7 +204,7 @@ const (
 )
 
 // otherTimeout keeps the resistor.
-func (c choice) otherTimeout(f finding.Finding) (finding.Finding, bool) {
+func (c *choice) otherTimeout(f finding.Finding) (finding.Finding, bool) {
 	h := c.at(c.present())
 	low, high := c.window(c.present())
 	if !c.judgesCharge || !h.standsPulse() || low > high {
@@ -211,7 +221,7 @@ func (c choice) otherTimeout(f finding.Finding) (finding.Finding, bool) {
 }
 
 // otherResistor keeps the time-out.
-func (c choice) otherResistor(f finding.Finding) (finding.Finding, bool) {
+func (c *choice) otherResistor(f finding.Finding) (finding.Finding, bool) {
 	least, greatest, ok := c.admissible(float64(c.a.timeout()))
 	if !ok {
 		return f, false
@@ -233,7 +243,7 @@ func (c choice) otherResistor(f finding.Finding) (finding.Finding, bool) {
 }
 
 // preferred names the preferred value of a range.
-func (c choice) preferred(least, greatest float64) string {
+func (c *choice) preferred(least, greatest float64) string {
 	was := c.a.site.Precharge.Resistance
 	tolerance := quantity.Ratio(max(was.High-was.Nominal, was.Nominal-was.Low) / was.Nominal)
 	series := Series(tolerance)
@@ -245,7 +255,7 @@ func (c choice) preferred(least, greatest float64) string {
 }
 
 // both changes resistor and time-out.
-func (c choice) both(f finding.Finding) (finding.Finding, bool) {
+func (c *choice) both(f finding.Finding) (finding.Finding, bool) {
 	if !c.judgesCharge {
 		return f, false
 	}
@@ -267,7 +277,7 @@ func (c choice) both(f finding.Finding) (finding.Finding, bool) {
 }
 
 // exclusion says which conditions exclude each other, and what a resistor of the same value must stand instead.
-func (c choice) exclusion() string {
+func (c *choice) exclusion() string {
 	h := c.at(c.present())
 	switch {
 	case !h.standsPulse() && !c.judgesCharge:
