@@ -173,10 +173,14 @@ func TestKilledAndResumed(t *testing.T) {
 	for k := 1; k <= kills; k++ {
 		c, _, out, errs := startProgram(t, folder, "rehearse", "--unattended", "--log", log)
 		go io.Copy(io.Discard, out)
-		acknowledged, ended := killAt(t, c.Process, errs, k, random)
+		acknowledged, said := killAt(t, c.Process, errs, k, random)
 		_ = c.Wait()
-		if holds(t, log) < acknowledged {
-			t.Fatalf("kill %d: record %d was acknowledged, the log holds %d", k, acknowledged, holds(t, log))
+		ended := c.ProcessState.Exited()
+		if ended && c.ProcessState.ExitCode() == exitUnable {
+			t.Fatalf("kill %d: %s cannot be gone on with\n%s", k, filepath.Base(log), withoutRecords(said))
+		}
+		if lastWhole(t, log) < acknowledged {
+			t.Fatalf("kill %d: record %d was acknowledged, the log holds %d", k, acknowledged, lastWhole(t, log))
 		}
 		if ended {
 			verified(t, folder, log, c.ProcessState.ExitCode())
@@ -193,8 +197,8 @@ func TestKilledAndResumed(t *testing.T) {
 }
 
 // killAt reads the acknowledgements until the moment comes, and kills. It gives the last record that was acknowledged, and
-// whether the walk had ended before.
-func killAt(t *testing.T, p *os.Process, errs io.Reader, k int, random *rand.Rand) (acknowledged int64, ended bool) {
+// all that was said.
+func killAt(t *testing.T, p *os.Process, errs io.Reader, k int, random *rand.Rand) (acknowledged int64, said string) {
 	t.Helper()
 	acknowledged = -1
 	lines := make(chan string, 1024)
@@ -212,8 +216,9 @@ func killAt(t *testing.T, p *os.Process, errs io.Reader, k int, random *rand.Ran
 		select {
 		case line, open := <-lines:
 			if !open {
-				return acknowledged, true
+				return acknowledged, said
 			}
+			said += line + "\n"
 			var n int64
 			if _, err := fmt.Sscanf(line, "seq %d ", &n); err == nil {
 				acknowledged = n
@@ -231,15 +236,15 @@ func killAt(t *testing.T, p *os.Process, errs io.Reader, k int, random *rand.Ran
 					acknowledged = n
 				}
 			}
-			return acknowledged, false
+			return acknowledged, said
 		case <-time.After(3 * time.Minute):
 			t.Fatalf("kill %d: nothing for three minutes", k)
 		}
 	}
 }
 
-// holds is the last whole record of a log; a torn line behind it is not counted. -1 without a log.
-func holds(t *testing.T, path string) int64 {
+// lastWhole is the last whole record of a log; a torn line behind it is not counted. -1 without a log.
+func lastWhole(t *testing.T, path string) int64 {
 	t.Helper()
 	f, err := os.Open(path)
 	if err != nil {
@@ -260,7 +265,7 @@ func holds(t *testing.T, path string) int64 {
 func verified(t *testing.T, folder, log string, code int) {
 	t.Helper()
 	if code == 2 {
-		t.Errorf("%s: the walk could not be gone on with", filepath.Base(log))
+		t.Errorf("%s: the walk could not be gone on with to its end", filepath.Base(log))
 		return
 	}
 	said, err := program(folder, "verify", log).CombinedOutput()

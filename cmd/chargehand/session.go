@@ -51,11 +51,13 @@ type session struct {
 	clock    *clock.Plant
 	operator *simulatedPlant // nil on a real device
 	signer   signing.Signer
-	unsigned string
-	maxAge   time.Duration
-	person   string
-	sealed   bool
-	begun    walk.State // as the log was when it was opened
+	// throwAway tells that signer was made for this process only.
+	throwAway bool
+	unsigned  string
+	maxAge    time.Duration
+	person    string
+	sealed    bool
+	begun     walk.State // as the log was when it was opened
 
 	writer *chlog.Writer
 	stop   context.CancelFunc
@@ -120,7 +122,7 @@ func (a *app) findSigner(s *session, o walkOptions) error {
 		if err != nil {
 			return err
 		}
-		s.signer = key
+		s.signer, s.throwAway = key, true
 		o.say("rehearsal: signed with a throw-away key, " + key.Fingerprint())
 	default:
 		s.unsigned = "no key was given; chargehand key new makes one"
@@ -172,7 +174,25 @@ func (s *session) resume(path string, options chlog.Options, o walkOptions) (wal
 		return state, errors.Join(fmt.Errorf("%s is the log of a %s, not of a %s", filepath.Base(path), state.Opened().Mode,
 			map[bool]string{true: "rehearsal", false: "walk at a site"}[o.rehearse]), writer.Close())
 	}
-	return state, nil
+	if !s.throwAway {
+		return state, nil
+	}
+	return s.rekey(state)
+}
+
+// rekey enters the new throw-away key of a rehearsal that is gone on with: the old one was thrown away with its process.
+func (s *session) rekey(state walk.State) (walk.State, error) {
+	if state.Sealed() != nil || len(state.People()) == 0 {
+		return state, nil
+	}
+	person := state.People()[0]
+	fingerprint := s.signer.Fingerprint()
+	person.Key = &fingerprint
+	line, err := s.writer.Append(person)
+	if err != nil {
+		return state, err
+	}
+	return state.With(walk.Line{Seq: line.Seq, At: line.At, Body: person}).Ready(), nil
 }
 
 func deviceName(p papers, o walkOptions) string {

@@ -488,3 +488,13 @@ func TestAWholeWalkPasses(t *testing.T) {
 		t.Errorf("desk finding %s fails", b.state.Desk()[i].ID)
 	}
 }
+
+func TestALaterPersonReplacesTheEarlierOne(t *testing.T) {
+	b := example(t)
+	key := "SHA256:new"
+	b.take(record.Person{ID: "p1", Name: "A. Example", Role: "technician", Key: &key})
+	people := b.state.People()
+	if len(people) != 2 || people[0].Key == nil || *people[0].Key != key {
+		t.Errorf("People = %+v, want two, the first with the new key", people)
+	}
+}

@@ -72,7 +72,7 @@ func (s State) With(line Line) State {
 	case record.File:
 		s = s.withFile(b)
 	case record.Person:
-		s.people = append(slices.Clip(s.people), b)
+		s = s.withPerson(b)
 	case record.Instrument:
 		s.instruments = append(slices.Clip(s.instruments), b)
 	case record.Reading:
@@ -124,6 +124,19 @@ func (s State) withFile(f record.File) State {
 	s.siteName, s.siteText, s.siteHash = f.Name, f.Text, f.SHA256
 	s.desk = nil
 	s.points = nil
+	return s
+}
+
+// withPerson takes a person in; a later record with the same id replaces the earlier one.
+func (s State) withPerson(p record.Person) State {
+	s.people = slices.Clone(s.people)
+	for i, known := range s.people {
+		if known.ID == p.ID {
+			s.people[i] = p
+			return s
+		}
+	}
+	s.people = append(s.people, p)
 	return s
 }
 
