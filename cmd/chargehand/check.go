@@ -5,6 +5,7 @@ import (
 	"encoding/json"
 	"errors"
 	"fmt"
+	"io"
 	"io/fs"
 	"os"
 	"path/filepath"
@@ -182,7 +183,16 @@ func (a *app) readSmall(file string) ([]byte, error) {
 	if info.Size() > largestFile {
 		return nil, fmt.Errorf("%s has %d bytes; a site or map file has at most %d", file, info.Size(), largestFile)
 	}
-	return os.ReadFile(a.path(file))
+	f, err := os.Open(a.path(file))
+	if err != nil {
+		return nil, err
+	}
+	defer f.Close()
+	text, err := io.ReadAll(io.LimitReader(f, largestFile+1)) // a device or a pipe has no size that could be asked for
+	if err == nil && len(text) > largestFile {
+		err = fmt.Errorf("%s gives more than %d bytes; a site or map file has at most that", file, largestFile)
+	}
+	return text, err
 }
 
 func (a *app) printChecked(r checked, o checkOptions, first bool) error {

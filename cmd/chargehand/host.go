@@ -97,12 +97,13 @@ func (h *host) unfinished(sites []string) []start.Entry {
 	return entries
 }
 
-// besideLog is the site file that a log names, where it lies beside it; empty for the built-in example.
+// besideLog is the site file that a log names, where it lies beside it; empty for the built-in example. A log that names another
+// folder is not followed there.
 func besideLog(log, siteFile string) string {
 	if siteFile == site.ExampleName {
 		return ""
 	}
-	return filepath.Join(filepath.Dir(log), siteFile)
+	return filepath.Join(filepath.Dir(log), filepath.Base(siteFile))
 }
 
 // Open opens what was chosen on the start screen.
@@ -302,6 +303,9 @@ func (a *app) remember(file string) {
 	files := append([]string{full}, slices.DeleteFunc(a.recent(), func(f string) bool { return f == full })...)
 	text, err := json.Marshal(files[:min(len(files), mostRecent)])
 	if err == nil && os.MkdirAll(folder, 0o700) == nil {
-		_ = os.WriteFile(filepath.Join(folder, recentFile), text, 0o600) // a convenience only
+		_ = writeFile(filepath.Join(folder, recentFile), true, func(w io.Writer) error { // a convenience only
+			_, err := w.Write(text)
+			return err
+		})
 	}
 }

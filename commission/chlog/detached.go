@@ -44,7 +44,7 @@ func SignFile(path string, signer FileSigner) (signature string, err error) {
 		return "", err
 	}
 	for _, e := range existing {
-		text, err := os.ReadFile(e.path)
+		text, err := readUpTo(e.path, 1<<20)
 		if err != nil {
 			return "", err
 		}

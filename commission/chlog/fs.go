@@ -37,9 +37,22 @@ type Disk struct{}
 
 var _ FS = Disk{}
 
-// OpenFile opens a file.
+// OpenFile opens a file. To write, it follows no symbolic link: whoever may put one into a folder could else have another file
+// written to, or cut.
 func (Disk) OpenFile(name string, flag int, mode fs.FileMode) (File, error) {
+	if flag&(os.O_WRONLY|os.O_RDWR) != 0 {
+		if err := noLink(name); err != nil {
+			return nil, err
+		}
+	}
 	return os.OpenFile(name, flag, mode)
+}
+
+func noLink(name string) error {
+	if info, err := os.Lstat(name); err == nil && info.Mode()&fs.ModeSymlink != 0 {
+		return fmt.Errorf("%s is a symbolic link, and nothing is written through one; name the file itself", filepath.Base(name))
+	}
+	return nil
 }
 
 // SyncDir syncs a folder. Windows has no such thing and needs none.
@@ -57,6 +70,9 @@ func (Disk) SyncDir(name string) error {
 // Lock locks a file that exists for nothing else: on Windows a locked file cannot be read by others, and the log must be.
 // The file stays; deleting it would let two writers lock two files of one name.
 func (Disk) Lock(name string) (io.Closer, error) {
+	if err := noLink(name); err != nil {
+		return nil, err
+	}
 	l := flock.New(name)
 	got, err := l.TryLock()
 	if _, unopened := errors.AsType[*fs.PathError](err); unopened {
@@ -71,12 +87,18 @@ func (Disk) Lock(name string) (io.Closer, error) {
 	return l, nil
 }
 
+// mostKept is the largest file that is taken into memory: many times the log of any walk.
+const mostKept = 256 << 20
+
 // readAll reads a whole file.
 func readAll(fsys FS, name string) ([]byte, error) {
 	f, err := fsys.OpenFile(name, os.O_RDONLY, 0)
 	if err != nil {
 		return nil, err
 	}
-	text, err := io.ReadAll(f)
+	text, err := io.ReadAll(io.LimitReader(f, mostKept+1))
+	if err == nil && len(text) > mostKept {
+		err = fmt.Errorf("%s is larger than %d bytes, which no walk's log is; verify reads it all the same", filepath.Base(name), mostKept)
+	}
 	return text, errors.Join(err, f.Close())
 }
