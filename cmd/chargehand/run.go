@@ -106,7 +106,7 @@ never stands for absence of voltage.`,
 				fmt.Fprintln(a.out, "chargehand "+version())
 				return nil
 			}
-			if !a.hasTerminal() {
+			if !a.plain && !a.hasTerminal() {
 				_ = cmd.Help()
 				return unable
 			}

@@ -14,6 +14,7 @@ import (
 	"chargehand/commission/unattended"
 	"chargehand/protocol/simulator"
 	"chargehand/tui"
+	"chargehand/tui/plain"
 	"chargehand/tui/start"
 	"chargehand/tui/theme"
 )
@@ -172,8 +173,12 @@ func (a *app) ended(ctx context.Context, s *session, verdict finding.Verdict, er
 
 // screen opens one walk in the terminal.
 func (a *app) screen(ctx context.Context, entry start.Entry, o walkOptions) error {
+	if a.plain {
+		h := &host{app: a, ctx: ctx, options: o}
+		return h.lineByLine(ctx, entry, plain.Lines(ctx, a.in))
+	}
 	if !a.hasTerminal() {
-		return fmt.Errorf("there is no terminal to draw on; --unattended needs none")
+		return fmt.Errorf("there is no terminal to draw on; --plain and --unattended need none")
 	}
 	t, err := a.theme(a.out)
 	if err != nil {
@@ -184,11 +189,36 @@ func (a *app) screen(ctx context.Context, entry start.Entry, o walkOptions) erro
 
 // startScreen opens the start screen.
 func (a *app) startScreen(ctx context.Context) error {
+	if a.plain {
+		h := &host{app: a, ctx: ctx, options: walkOptions{seed: 1, speed: 100}}
+		lines := plain.Lines(ctx, a.in)
+		chosen, ok := plain.Choose(ctx, h.Entries(ctx), lines, a.out)
+		switch {
+		case !ok:
+			return nil
+		case chosen.Kind == start.Check:
+			_, sheet, err := h.Check(ctx, chosen.Site)
+			if err != nil {
+				return err
+			}
+			return sheet.WriteTable(a.out, finding.TableOptions{Width: a.columns(), ASCII: a.ascii})
+		}
+		return h.lineByLine(ctx, chosen, lines)
+	}
 	t, err := a.theme(a.out)
 	if err != nil {
 		return err
 	}
 	return a.program(ctx, tui.New(&host{app: a, ctx: ctx, options: walkOptions{seed: 1, speed: 100}}, t))
+}
+
+// lineByLine goes a walk without drawing.
+func (h *host) lineByLine(ctx context.Context, entry start.Entry, lines <-chan string) error {
+	session, err := h.Open(ctx, entry)
+	if err != nil {
+		return err
+	}
+	return errors.Join(plain.Walk(ctx, session, lines, h.app.out), session.Close())
 }
 
 func (a *app) program(ctx context.Context, m tui.Model) error {

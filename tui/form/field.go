@@ -67,6 +67,9 @@ func (f Field) hasBlank() bool { return !f.IsChoice() && strings.Contains(f.edit
 // IsChoice tells whether the field offers options instead of taking text; letters then stay free for other keys.
 func (f Field) IsChoice() bool { return f.options != nil }
 
+// Options are what a choice offers; nil for a field that takes text.
+func (f Field) Options() []string { return slices.Clone(f.options) }
+
 // Verdict is what the check says to the present value.
 func (f Field) Verdict() (ok bool, message string) {
 	if f.hasBlank() {
