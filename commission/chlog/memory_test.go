@@ -18,6 +18,7 @@ type stream struct {
 	seq    int64
 	prev   string
 	buffer bytes.Reader
+	live   uint64 // the most that was reachable at any line, bytes
 }
 
 func (s *stream) Read(p []byte) (int, error) {
@@ -41,24 +42,30 @@ func (s *stream) line() []byte {
 	}
 	line := chlog.Encode(s.prev, s.seq, chlogtest.Start, kind, body)
 	s.seq, s.prev = s.seq+1, chlog.HashOf(line)
+	// Only what is reachable says how much Verify needs: what the heap holds beside it is a matter of when it was swept.
+	runtime.GC()
+	var now runtime.MemStats
+	runtime.ReadMemStats(&now)
+	s.live = max(s.live, now.HeapAlloc)
 	return line
 }
 
-// Verify needs no more memory for a long log than for a short one: less than 64 MB (the log is longer than that), here
-// counted as everything the runtime took from the system, the maker's own lines included.
+// Verify needs no more memory for a long log than for a short one. The collector lets a heap grow to twice what is reachable
+// (GOGC 100), so half of the 64 MB may be reachable at any line, the maker's own lines included.
 func TestVerifyStreams(t *testing.T) {
 	key := chlogtest.Key(t)
 	signature := read(t, chlogtest.Sealed(t, record.SiteMode, key)+".sig")
-	var before, after runtime.MemStats
 	runtime.GC()
+	var before runtime.MemStats
 	runtime.ReadMemStats(&before)
 	s := &stream{left: 100 << 20, prev: chlog.NoPrev}
 	r := chlog.Verifier{Now: now}.VerifyReader(s, signature)
-	runtime.ReadMemStats(&after)
 	if r.Records < 25 || r.Damage != nil {
 		t.Fatalf("Verify = %s after %d records, want an intact log without its seal", r, r.Records)
 	}
-	if took := int64(after.HeapSys-before.HeapSys) + int64(before.HeapSys-before.HeapInuse); took > 64e6 {
-		t.Errorf("Verify of %d MB took %d MB, want at most 64", r.Bytes>>20, took>>20)
+	if reached := int64(s.live) - int64(before.HeapAlloc); reached > 32e6 {
+		t.Errorf("Verify of %d MB holds %.1f MB, want at most 32", r.Bytes>>20, float64(reached)/1e6)
+	} else {
+		t.Logf("Verify of %d MB holds %.1f MB at the most", r.Bytes>>20, float64(reached)/1e6)
 	}
 }
