@@ -1,6 +1,7 @@
 package main
 
 import (
+	"bytes"
 	"context"
 	"encoding/json"
 	"errors"
@@ -20,6 +21,7 @@ import (
 	"chargehand/commission/document"
 	"chargehand/commission/droop"
 	"chargehand/commission/finding"
+	"chargehand/commission/report"
 	"chargehand/commission/site"
 	"chargehand/commission/window"
 	"chargehand/protocol/registermap"
@@ -215,7 +217,12 @@ func (a *app) printChecked(r checked, o checkOptions, first bool) error {
 		lines(a.out, strings.TrimRight(text, "\n"))
 		return nil
 	case o.json:
-		return sheet.WriteJSON(a.out)
+		var text bytes.Buffer
+		if err := sheet.WriteJSON(&text); err != nil {
+			return err
+		}
+		_, err := a.out.Write(report.EscapeJSON(text.Bytes())) // it names the file as it was named
+		return err
 	case o.csv:
 		return sheet.WriteCSV(a.out, first)
 	case o.table == "window":
@@ -257,7 +264,11 @@ func (a *app) printJSONError(r checked) error {
 	} else {
 		p.Error = []document.Problem{{Read: r.err.Error(), Wanted: "a site file that can be read", Example: "site.toml"}}
 	}
-	return json.NewEncoder(a.out).Encode(p)
+	text, err := json.Marshal(p)
+	if err == nil {
+		fmt.Fprintln(a.out, string(report.EscapeJSON(text)))
+	}
+	return err
 }
 
 // progressBar shows how many files are done, on stderr and only on a terminal.

@@ -11,6 +11,7 @@ import (
 	"github.com/spf13/cobra"
 
 	"chargehand/commission/chlog"
+	"chargehand/commission/report"
 	"chargehand/commission/signing"
 	"chargehand/tui/theme"
 )
@@ -91,12 +92,12 @@ func (a *app) verify(ctx context.Context, logs []string, o verifyOptions) error 
 		paths[i] = a.path(log)
 	}
 	code := exitDone
-	for i, report := range verifier.Verify(ctx, paths) {
-		report.File = logs[i]
-		if err := a.printReport(report, o.json); err != nil {
+	for i, found := range verifier.Verify(ctx, paths) {
+		found.File = logs[i]
+		if err := a.printReport(found, o.json); err != nil {
 			return err
 		}
-		code = max(code, report.Exit)
+		code = max(code, found.Exit)
 	}
 	switch code {
 	case exitUnable:
@@ -120,7 +121,7 @@ func (a *app) printReport(r chlog.Report, asJSON bool) error {
 	if asJSON {
 		text, err := json.Marshal(r)
 		if err == nil {
-			fmt.Fprintln(a.out, string(text))
+			fmt.Fprintln(a.out, string(report.EscapeJSON(text)))
 		}
 		return err
 	}

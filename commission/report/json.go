@@ -16,12 +16,13 @@ func (s Story) WriteJSON(w io.Writer) error {
 	if err := e.Encode(s); err != nil {
 		return fmt.Errorf("write the report as JSON: %w", err)
 	}
-	_, err := w.Write(escaped(b.Bytes()))
+	_, err := w.Write(EscapeJSON(b.Bytes()))
 	return err
 }
 
-// escaped writes every character beyond ASCII that is not printed as \uXXXX: such a character can only stand in a string.
-func escaped(text []byte) []byte {
+// EscapeJSON writes every character of a JSON text that is not printed, beyond ASCII's own, as \uXXXX: such a character can
+// only stand in a string, and a terminal might obey it.
+func EscapeJSON(text []byte) []byte {
 	var out []byte
 	for _, r := range string(text) {
 		switch {

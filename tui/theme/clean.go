@@ -34,8 +34,10 @@ func Clean(text string) string {
 				b.WriteRune(r)
 			}
 		default:
-			writeHarmless(&b, r)
-			marks = 0
+			before := b.Len()
+			if writeHarmless(&b, r); b.Len() > before { // what vanishes carries no marks
+				marks = 0
+			}
 		}
 		text = text[size:]
 	}
