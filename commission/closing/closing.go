@@ -51,7 +51,7 @@ type bypass struct {
 
 func bypassOf(s site.Site) bypass {
 	b := bypass{site: s, axes: make([]corner.Axis, axisCount), members: make([][]corner.Axis, axisCount), filter: s.StarFilter(), phases: 1,
-		emf: s.Source.HighestRest(), missing: Step(s).High}
+		emf: s.Source.HighestRest(), missing: step(s).High}
 	b.axes[axisInternal] = corner.Of("source.internal_resistance", s.Source.InternalResistance)
 	b.axes[axisResistor] = corner.Of("precharge.resistance", s.Precharge.Resistance)
 	b.axes[axisSourceInductance] = corner.Of("source.inductance", s.Source.Inductance)
@@ -149,11 +149,11 @@ func (b *bypass) switched() bool {
 // R·C_f·ln(E ⁄ closing difference).
 func (b *bypass) dwell(x []float64) quantity.Seconds {
 	r := x[axisInternal] + x[axisResistor]
-	return Dwell(quantity.Resistance(r), quantity.Capacitance(b.behind(x, x[axisFilter])), b.emf, b.site.Precharge.ClosingDifference.Nominal)
+	return dwell(quantity.Resistance(r), quantity.Capacitance(b.behind(x, x[axisFilter])), b.emf, b.site.Precharge.ClosingDifference.Nominal)
 }
 
-// Dwell is the time in which a filter capacitor comes within difference of the source: R·C_f·ln(E⁄difference).
-func Dwell(r quantity.Resistance, filter quantity.Capacitance, emf, difference quantity.Voltage) quantity.Seconds {
+// dwell is the time in which a filter capacitor comes within difference of the source: R·C_f·ln(E⁄difference).
+func dwell(r quantity.Resistance, filter quantity.Capacitance, emf, difference quantity.Voltage) quantity.Seconds {
 	if difference >= emf {
 		return 0
 	}

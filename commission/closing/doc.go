@@ -1,7 +1,7 @@
 // Package closing says what flows when the bypass contactor closes on the difference that pre-charging has left, and when
 // it closes on a live bus.
 //
-// Start at [Findings] for a site's findings, at [Loop] for one closing, and at [Step] for what the walk expects.
+// Start at [Findings] for a site's findings, and at [Loop] for one closing.
 //
 // The model: the voltage u that is missing drives the loop of R, L and C, the upper freewheel diodes block the reverse
 // current. With α = R⁄2L, ω_0 = 1⁄√(LC) the peak is

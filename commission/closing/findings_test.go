@@ -128,7 +128,7 @@ func TestSaturatedChokesAreJudgedByTheUpperBound(t *testing.T) {
 	if len(f.Parts) == 0 || !(f.Parts[0].Value.High > 2*f.Value.High) {
 		t.Fatalf("parts = %v, want an upper bound well above %v", f.Parts, f.Value.High)
 	}
-	u := float64(Step(s).High)
+	u := float64(step(s).High)
 	if bound, most := f.Parts[0].Value.High, u/(0.062*0.85+0.001); bound > most {
 		t.Errorf("upper bound = %v A, want at most u⁄R = %v A", bound, most)
 	}
@@ -179,7 +179,7 @@ func TestWhetherTheFuseClears(t *testing.T) {
 func TestStepHoldsBothErrors(t *testing.T) {
 	// 25 V, 0.5 % of 821.7 V and 0.5 % of 1000 V.
 	want := quantity.Spread[quantity.Voltage]{Low: 25 - 9.1085, Nominal: 25, High: 34.1085}
-	got := Step(findingtest.Load(t, "wagtail"))
+	got := step(findingtest.Load(t, "wagtail"))
 	for _, d := range []quantity.Voltage{got.Low - want.Low, got.Nominal - want.Nominal, got.High - want.High} {
 		if math.Abs(float64(d)) > 1e-9 {
 			t.Fatalf("Step = %v, want %v", got, want)

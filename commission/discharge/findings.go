@@ -41,7 +41,7 @@ func Findings(s site.Site) []finding.Finding {
 }
 
 func assess(s site.Site) *assessment {
-	a := &assessment{site: s, from: Highest(s)}
+	a := &assessment{site: s, from: highest(s)}
 	a.axes, a.members = axesOf(s)
 	touch := a.touch()
 	a.spreads = corner.OverAll(a.axes, results, func(x, out []float64) {
@@ -82,9 +82,9 @@ func (a *assessment) touch() quantity.Voltage {
 	return 0
 }
 
-// Highest is where a discharge starts in the worst case: the highest steady bus voltage, or the nominal voltage where a key
+// highest is where a discharge starts in the worst case: the highest steady bus voltage, or the nominal voltage where a key
 // for that is missing.
-func Highest(s site.Site) quantity.Voltage {
+func highest(s site.Site) quantity.Voltage {
 	if highest, missing := window.BusHigh(s); len(missing) == 0 {
 		return highest.High
 	}
@@ -92,7 +92,7 @@ func Highest(s site.Site) quantity.Voltage {
 }
 
 func (a *assessment) needsBus(m *finding.Missing) {
-	m.Need("bus.nominal", Highest(a.site) > 0)
+	m.Need("bus.nominal", highest(a.site) > 0)
 	for _, b := range a.site.Bus.Capacitances {
 		m.Need("bus.capacitance", b.Value.IsGiven())
 	}

@@ -59,8 +59,8 @@ func TestBleederOfTheRemedyPassesAndMoreDoesNot(t *testing.T) {
 
 func TestLabelRoundsUp(t *testing.T) {
 	for slowest, want := range map[quantity.Seconds]quantity.Seconds{4.2: 5, 60: 60, 60.1: 120, 987.6: 17 * 60} {
-		if got := Label(slowest); got != want {
-			t.Errorf("Label(%v) = %v, want %v", slowest, got, want)
+		if got := label(slowest); got != want {
+			t.Errorf("label(%v) = %v, want %v", slowest, got, want)
 		}
 	}
 	if f := touchSafe(t, findingtest.Load(t, "wagtail")); !strings.Contains(f.Remedy, "waiting time of 17 min") {
@@ -174,7 +174,7 @@ func TestPredictionNamesWhatItLacks(t *testing.T) {
 func TestTouchSafeBusTakesNoTime(t *testing.T) {
 	for _, name := range []string{"wagtail", "nightjar"} {
 		s := findingtest.Load(t, name)
-		at := float64(Highest(s))
+		at := float64(highest(s))
 		for _, touch := range []float64{at, 1.5 * at} {
 			safe := *s.Bus.TouchSafe
 			set(&safe.Voltage, touch)

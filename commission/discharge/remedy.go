@@ -9,9 +9,9 @@ import (
 	"chargehand/commission/remedy"
 )
 
-// Label is the waiting time that a warning label must state: the slowest discharge in whole seconds, from a minute on in
+// label is the waiting time that a warning label must state: the slowest discharge in whole seconds, from a minute on in
 // whole minutes, rounded up.
-func Label(slowest quantity.Seconds) quantity.Seconds {
+func label(slowest quantity.Seconds) quantity.Seconds {
 	if slowest <= 60 {
 		return quantity.Seconds(math.Ceil(float64(slowest)))
 	}
@@ -36,7 +36,7 @@ func (a *assessment) remedyTime(f finding.Finding) finding.Finding {
 	f.Changes = []finding.Change{{Key: "bus.bleeder", Unit: "Ω", Was: was, Value: float64(needed)}}
 	f.Remedy = fmt.Sprintf("all bleeders in parallel at most %s, which take up to %s", remedy.Figure(float64(needed), "Ω"), quantity.Engineering(float64(heat), "W", 4))
 	if !math.IsInf(f.Value.High, 1) {
-		f.Remedy = "a label with the waiting time of " + waiting(Label(quantity.Seconds(f.Value.High))) + "; without a label " + f.Remedy
+		f.Remedy = "a label with the waiting time of " + waiting(label(quantity.Seconds(f.Value.High))) + "; without a label " + f.Remedy
 	}
 	return f
 }

@@ -38,10 +38,8 @@ func wish(s site.Site, p planned) (Wish, finding.Missing) {
 	return w, missing
 }
 
-// AdviceFinding gives the least droop voltage at rated current that meets all limits, with the setpoint interval and the
+// adviceFinding gives the least droop voltage at rated current that meets all limits, with the setpoint interval and the
 // droop of each infeed, and judges whether the settings of the site lie inside.
-func AdviceFinding(s site.Site) finding.Finding { return adviceFinding(s, plan(s)) }
-
 func adviceFinding(s site.Site, p planned) finding.Finding {
 	f := adviceJudged(s)
 	if f.Verdict != finding.Fail {

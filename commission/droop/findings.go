@@ -25,10 +25,10 @@ const (
 // register numbers stay undecided.
 func Findings(s site.Site, r Registers) []finding.Finding {
 	p := plan(s)
-	all := []finding.Finding{adviceFinding(s, p), BusRange(s), SharingFinding(s)}
+	all := []finding.Finding{adviceFinding(s, p), busRangeFinding(s), sharingFinding(s)}
 	all = append(all, lostInfeeds(s)...)
-	all = append(all, Regeneration(s), Stability(s))
-	all = append(all, Instruments(s)...)
+	all = append(all, regenerationFinding(s), stabilityFinding(s))
+	all = append(all, instrumentFindings(s)...)
 	all = append(all, registers(s, r))
 	return append(all, cables(s)...)
 }

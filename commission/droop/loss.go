@@ -18,13 +18,13 @@ func lostInfeeds(s site.Site) []finding.Finding {
 	}
 	var all []finding.Finding
 	for k := range s.Infeeds {
-		all = append(all, LostInfeed(s, k))
+		all = append(all, lostInfeedFinding(s, k))
 	}
 	return all
 }
 
-// LostInfeed is the finding for the infeed with index lost.
-func LostInfeed(s site.Site, lost int) finding.Finding {
+// lostInfeedFinding is the finding for the infeed with index lost.
+func lostInfeedFinding(s site.Site, lost int) finding.Finding {
 	judge := func(s site.Site) finding.Finding { return lostInfeed(s, plan(s), lost) }
 	return remedy.Offer(s, judge, func(f finding.Finding, passes func(site.Site) bool) (string, []finding.Change) {
 		sources := append([]Source(nil), plan(s).sources...)
@@ -118,10 +118,10 @@ func afterLoss(s site.Site, sources []Source, limit finding.Limit, passes func(s
 	return text, changes
 }
 
-// Regeneration judges the bus at full regeneration. With the source refusing charge the commissioned converter takes
+// regenerationFinding judges the bus at full regeneration. With the source refusing charge the commissioned converter takes
 // nothing back; what the bus does then is a part, and no reason to fail: the chopper is there for it, or the load must
 // not regenerate.
-func Regeneration(s site.Site) finding.Finding {
+func regenerationFinding(s site.Site) finding.Finding {
 	return remedy.Offer(s, regeneration, func(f finding.Finding, passes func(site.Site) bool) (string, []finding.Change) {
 		if f.State == finding.Finite {
 			if text, changes := shiftSetpoints(s, f, passes); changes != nil {

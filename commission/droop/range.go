@@ -9,9 +9,9 @@ import (
 	"chargehand/commission/site"
 )
 
-// BusRange judges the operating voltages of the bus: the lowest, the one at load.power with exact setpoints, and the highest
+// busRangeFinding judges the operating voltages of the bus: the lowest, the one at load.power with exact setpoints, and the highest
 // of load.power, no load and full regeneration, setpoints at their errors.
-func BusRange(s site.Site) finding.Finding {
+func busRangeFinding(s site.Site) finding.Finding {
 	return remedy.Offer(s, busRange, func(f finding.Finding, passes func(site.Site) bool) (string, []finding.Change) {
 		if f.State == finding.None {
 			if text, changes := easeLoad(s, true, passes); changes != nil {

@@ -11,9 +11,9 @@ import (
 
 const sharingBasis = "|I_k − w_k·ΣI|⁄I_rated,k over setpoints ± error, own error against all others; " + circuitTheory
 
-// SharingFinding judges the worst deviation of any infeed from its share by rating: at load.power among all, at full
+// sharingFinding judges the worst deviation of any infeed from its share by rating: at load.power among all, at full
 // regeneration among those that regenerate.
-func SharingFinding(s site.Site) finding.Finding {
+func sharingFinding(s site.Site) finding.Finding {
 	return remedy.Offer(s, sharing, func(f finding.Finding, passes func(site.Site) bool) (string, []finding.Change) {
 		if f.State == finding.None {
 			if text, changes := easeLoad(s, true, passes); changes != nil {

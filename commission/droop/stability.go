@@ -13,9 +13,9 @@ import (
 // wantedStability is the ratio that leaves half of the stiffness in hand.
 const wantedStability = 0.5
 
-// Stability judges whether the droop holds the bus against the negative incremental resistance of the constant-power load,
+// stabilityFinding judges whether the droop holds the bus against the negative incremental resistance of the constant-power load,
 // at load.power. That is the static condition: necessary, and not sufficient against the dynamics of lines and regulators.
-func Stability(s site.Site) finding.Finding {
+func stabilityFinding(s site.Site) finding.Finding {
 	return remedy.Offer(s, stability, func(_ finding.Finding, passes func(site.Site) bool) (string, []finding.Change) {
 		return easeLoad(s, false, passes)
 	})
@@ -85,10 +85,10 @@ func stabilityOver(p planned, l Load) (finding.Value, Status) {
 	return value, Found
 }
 
-// Instruments judge whether each hand instrument can prove the sharing asked for: its error at bus.nominal against the
+// instrumentFindings judge whether each hand instrument can prove the sharing asked for: its error at bus.nominal against the
 // setpoint error that the share tolerance leaves, share_tolerance·ΔV ⁄ (2(1 − w_min)), with the least droop voltage of the
 // infeeds.
-func Instruments(s site.Site) []finding.Finding {
+func instrumentFindings(s site.Site) []finding.Finding {
 	f := finding.Finding{ID: "droop.instrument", Title: "Error of the instrument at bus.nominal", Unit: "V",
 		Basis: "e ≤ share_tolerance·ΔV⁄(2(1 − w_min)); " + ownDerivation}
 	p := plan(s)

@@ -83,14 +83,14 @@ func (p *path) heat(c Circuit) Heat {
 	return c.Heat(on).ScaledTo(energy)
 }
 
-// PulseTime is the duration of the rectangular pulse that stands for a charge: τ⁄2, or longer where bleeder and auxiliary
+// pulseTime is the duration of the rectangular pulse that stands for a charge: τ⁄2, or longer where bleeder and auxiliary
 // supply add energy.
-func PulseTime(tau quantity.Seconds, energy quantity.Energy, peak quantity.Power) quantity.Seconds {
+func pulseTime(tau quantity.Seconds, energy quantity.Energy, peak quantity.Power) quantity.Seconds {
 	return max(tau/2, quantity.Seconds(float64(energy)/float64(peak)))
 }
 
 func (p *path) utilisation(peak quantity.Power, heat Heat, ambient quantity.Temperature) float64 {
-	return float64(peak / p.rating.Permissible(PulseTime(heat.TimeConstant, heat.Energy(), peak), ambient))
+	return float64(peak / p.rating.Permissible(pulseTime(heat.TimeConstant, heat.Energy(), peak), ambient))
 }
 
 func (p *path) bodyAt(x []float64) Body {

@@ -16,7 +16,7 @@ func (a *assessment) explainPulse() *finding.Explanation {
 	w.energy()
 	p := a.charge[ofPower].Nominal
 	w.Step("p", "R_p*(E/R)^2", "W", p)
-	duration := PulseTime(quantity.Seconds(w.s.tau), quantity.Energy(a.charge[ofEnergy].Nominal), quantity.Power(p))
+	duration := pulseTime(quantity.Seconds(w.s.tau), quantity.Energy(a.charge[ofEnergy].Nominal), quantity.Power(p))
 	w.Step("t_eq", "max(tau/2, W/p)", "s", float64(duration))
 	ambient := a.site.Precharge.Ambient.Nominal
 	w.factor(ambient)

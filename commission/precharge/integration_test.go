@@ -243,7 +243,7 @@ func TestChargeOfAWorkedExample(t *testing.T) {
 		{"energy", float64(c.EnergyUntil(quantity.Seconds(math.Inf(1)))), 240, 1e-9},
 		{"time to 95 %", float64(c.TimeTo(380)), 0.44936, 5e-6},
 		{"time to 99 %", float64(c.TimeTo(396)), 0.69078, 5e-6},
-		{"equivalent pulse", float64(PulseTime(c.TimeConstant(), 240, 3200)), 0.075, 1e-12},
+		{"equivalent pulse", float64(pulseTime(c.TimeConstant(), 240, 3200)), 0.075, 1e-12},
 		{"final voltage with 1 kΩ", float64(final), 380.95, 5e-3},
 		{"time constant with 1 kΩ", float64(loaded.TimeConstant()), 0.14286, 5e-6},
 		{"kept power with 1 kΩ", float64(loaded.SettledPower()), 7.256, 5e-4},

@@ -82,13 +82,6 @@ func seriesMembers(s site.Site) []corner.Axis {
 	return members
 }
 
-// LinkCapacitance is what is charged through the resistor: every bank that is not isolated, and a filter at the star point.
-func LinkCapacitance(s site.Site) quantity.Spread[quantity.Capacitance] {
-	sum := corner.Sum("", linkMembers(s))
-	return quantity.Spread[quantity.Capacitance]{Low: quantity.Capacitance(sum.Low), Nominal: quantity.Capacitance(sum.Nominal),
-		High: quantity.Capacitance(sum.High)}
-}
-
 // Banks are the banks that are charged, those that are not isolated, after an empty place for their sum: so a single one is
 // named too.
 func Banks(s site.Site) []corner.Axis {

@@ -14,8 +14,8 @@ var (
 	e24 = []float64{1.0, 1.1, 1.2, 1.3, 1.5, 1.6, 1.8, 2.0, 2.2, 2.4, 2.7, 3.0, 3.3, 3.6, 3.9, 4.3, 4.7, 5.1, 5.6, 6.2, 6.8, 7.5, 8.2, 9.1}
 )
 
-// Series is the preferred series that a tolerance is usual in: E24 up to 5 %, E12 up to 10 %, E6 beyond.
-func Series(tolerance quantity.Ratio) int {
+// seriesOf is the preferred series that a tolerance is usual in: E24 up to 5 %, E12 up to 10 %, E6 beyond.
+func seriesOf(tolerance quantity.Ratio) int {
 	switch {
 	case tolerance <= 0.05+1e-9:
 		return 24
@@ -25,8 +25,8 @@ func Series(tolerance quantity.Ratio) int {
 	return 6
 }
 
-// Preferred is the least value of a preferred series, 6, 12 or 24, from least to greatest; false where there is none.
-func Preferred(least, greatest quantity.Resistance, series int) (quantity.Resistance, bool) {
+// preferred is the least value of a preferred series, 6, 12 or 24, from least to greatest; false where there is none.
+func preferred(least, greatest quantity.Resistance, series int) (quantity.Resistance, bool) {
 	numbers := map[int][]float64{6: e6, 12: e12, 24: e24}[series]
 	if !(least > 0) || math.IsInf(float64(least), 1) {
 		return 0, false

@@ -178,9 +178,9 @@ func TestPreferredNumbers(t *testing.T) {
 		{111, 119, 24, 0, false},
 		{1563, 1e4, 24, 1600, true},
 	} {
-		got, ok := Preferred(c.least, c.greatest, c.series)
+		got, ok := preferred(c.least, c.greatest, c.series)
 		if ok != c.ok || math.Abs(float64(got-c.want)) > 1e-9 {
-			t.Errorf("Preferred(%v, %v, E%d) = %v, %v, want %v, %v", c.least, c.greatest, c.series, got, ok, c.want, c.ok)
+			t.Errorf("preferred(%v, %v, E%d) = %v, %v, want %v, %v", c.least, c.greatest, c.series, got, ok, c.want, c.ok)
 		}
 	}
 	for n, series := range map[int][]float64{6: e6, 12: e12, 24: e24} {

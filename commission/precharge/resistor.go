@@ -246,8 +246,8 @@ func (c *choice) otherResistor(f finding.Finding) (finding.Finding, bool) {
 func (c *choice) preferred(least, greatest float64) string {
 	was := c.a.site.Precharge.Resistance
 	tolerance := quantity.Ratio(max(was.High-was.Nominal, was.Nominal-was.Low) / was.Nominal)
-	series := Series(tolerance)
-	v, ok := Preferred(quantity.Resistance(least), quantity.Resistance(greatest), series)
+	series := seriesOf(tolerance)
+	v, ok := preferred(quantity.Resistance(least), quantity.Resistance(greatest), series)
 	if !ok {
 		return "; no preferred value of " + seriesName(series) + " lies in it"
 	}

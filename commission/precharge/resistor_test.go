@@ -38,7 +38,7 @@ func TestRatingOnPublicPulseCases(t *testing.T) {
 		rating, heat := ratingIn(c), heatIn(c)
 		peak := quantity.Power(c.In("r_pre_ohm") * math.Pow(c.In("i0_A"), 2))
 		from := quantity.Temperature(c.In("t_amb_C"))
-		duration := PulseTime(heat.TimeConstant, heat.Energy(), peak)
+		duration := pulseTime(heat.TimeConstant, heat.Energy(), peak)
 		permitted := rating.Permissible(duration, from)
 		c.Check(t, map[string]any{
 			"temp_factor": float64(rating.Factor(from)), "p_peak_W": float64(peak), "e_pulse_J": float64(heat.Energy()),

@@ -15,7 +15,7 @@ const powerElectronics = "interleaved boost converter, any textbook of power ele
 
 // Findings are the findings of the ripple, in the order of the catalogue.
 func Findings(s site.Site) []finding.Finding {
-	return []finding.Finding{Phase(s), Sum(s), Source(s), Resonance(s)}
+	return []finding.Finding{phaseFinding(s), sumFinding(s), sourceFinding(s), resonanceFinding(s)}
 }
 
 // inputs are what every ripple figure needs.
@@ -79,8 +79,8 @@ func (in inputs) worstDuty(of int) float64 {
 	return at
 }
 
-// Phase states the ripple of one choke, peak to peak, worst over the window.
-func Phase(s site.Site) finding.Finding {
+// phaseFinding states the ripple of one choke, peak to peak, worst over the window.
+func phaseFinding(s site.Site) finding.Finding {
 	f := finding.Finding{ID: "ripple.phase", Title: "Ripple of one choke, peak to peak", Unit: "A",
 		Basis: "ΔI = V_bus·D·(1 − D)⁄(L·f_sw), worst over the window; " + powerElectronics}
 	in, missing := read(s)
@@ -98,8 +98,8 @@ func Phase(s site.Site) finding.Finding {
 	return f
 }
 
-// Sum states the ripple of all phases together, peak to peak, worst over the window.
-func Sum(s site.Site) finding.Finding {
+// sumFinding states the ripple of all phases together, peak to peak, worst over the window.
+func sumFinding(s site.Site) finding.Finding {
 	f := finding.Finding{ID: "ripple.sum", Title: "Ripple of all phases together, peak to peak", Unit: "A",
 		Basis: "ΔI = V_bus·x·(1 − x)⁄(N·L·f_sw), x = N·D less its whole number, zero at D = k⁄N, worst over the window; " + powerElectronics}
 	in, missing := read(s)
@@ -146,10 +146,10 @@ func branches(s site.Site) (Branches, finding.Missing) {
 		Source: s.Source.InternalResistance.Nominal, SourceInductance: s.Source.Inductance.Nominal}, missing
 }
 
-// Source judges the ripple current that reaches the source, each choke at its own end of the tolerance. Low is with every
+// sourceFinding judges the ripple current that reaches the source, each choke at its own end of the tolerance. Low is with every
 // choke at its greatest, high with the worst mixture of least and greatest: unequal chokes leave the switching frequency
 // itself in the sum, where the filter does least.
-func Source(s site.Site) finding.Finding {
+func sourceFinding(s site.Site) finding.Finding {
 	f := finding.Finding{ID: "ripple.source", Title: "Ripple current that reaches the source, rms", Unit: "A",
 		Basis: "rms of harmonics 1…5 of f_sw, |Σ V_bus·sin(πhD)⁄(π²h²·f_sw·L_k)·e^(−j2πhk⁄N)|·|Z_c⁄(Z_c + Z_s)|, worst over the window; " + powerElectronics}
 	in, missing := read(s)
@@ -235,9 +235,9 @@ const (
 	orders    = 6
 )
 
-// Resonance judges the resonance of filter and source loop: no harmonic k = 1…6 of the switching frequency within 20 % of
+// resonanceFinding judges the resonance of filter and source loop: no harmonic k = 1…6 of the switching frequency within 20 % of
 // it. The limit stated is the free range around it, or the nearest one.
-func Resonance(s site.Site) finding.Finding {
+func resonanceFinding(s site.Site) finding.Finding {
 	f := finding.Finding{ID: "ripple.resonance", Title: "Resonance of filter and source loop", Unit: "Hz", Guards: true,
 		Basis: "f_r = 1⁄(2π√(C_f·(L_s + ESL))); |k·f_sw⁄f_r − 1| > 0.2 for k = 1…6; circuit theory, the distance by convention"}
 	filter := converter(s).Filter

@@ -35,7 +35,7 @@ func TestWiderTolerancesNeverNarrow(t *testing.T) { findingtest.NeverNarrows(t, 
 // Chokes drawn apart from each other, at a duty of the window: never above high, and at its worst duty never below low.
 func TestUnequalChokesWithinSource(t *testing.T) {
 	s := findingtest.Load(t, "wagtail")
-	f := Source(s)
+	f := sourceFinding(s)
 	in, _ := read(s)
 	b, _ := branches(s)
 	random := rand.New(rand.NewPCG(3, 4))

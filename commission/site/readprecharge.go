@@ -65,13 +65,8 @@ func readPulse(t *document.Table, rows []*document.Table) []PulsePoint {
 		document.Quantity(row, "energy", &p.Energy, limit(1e-3, 1e9, "30 kJ"))
 		row.Require(`duration = "1 s"`, `energy = "30 kJ"`)
 		if i > 0 {
-			before := points[i-1]
-			if p.Duration.IsGiven() && before.Duration.IsGiven() && p.Duration.Nominal <= before.Duration.Nominal {
-				row.Refuse("duration", "more than the "+before.Duration.Text+" before it", "")
-			}
-			if p.Energy.IsGiven() && before.Energy.IsGiven() && p.Energy.Nominal < before.Energy.Nominal {
-				row.Refuse("energy", "an energy that does not fall below the "+before.Energy.Text+" before it", "")
-			}
+			ascends(row, "duration", p.Duration, points[i-1].Duration)
+			neverFalls(row, "energy", "an energy", p.Energy, points[i-1].Energy)
 		}
 		points = append(points, p)
 	}

@@ -110,13 +110,8 @@ func readStateOfCharge(t *document.Table, rows []*document.Table) []ChargePoint 
 		row.Require(`soc = "10 %"`, `cell = "3.45 V"`)
 		atMostAll(row, "soc", p.StateOfCharge)
 		if i > 0 {
-			before := points[i-1]
-			if p.StateOfCharge.IsGiven() && before.StateOfCharge.IsGiven() && p.StateOfCharge.Nominal <= before.StateOfCharge.Nominal {
-				row.Refuse("soc", "more than the "+before.StateOfCharge.Text+" before it", "")
-			}
-			if p.Cell.IsGiven() && before.Cell.IsGiven() && p.Cell.Nominal < before.Cell.Nominal {
-				row.Refuse("cell", "a voltage that does not fall below the "+before.Cell.Text+" before it", "")
-			}
+			ascends(row, "soc", p.StateOfCharge, points[i-1].StateOfCharge)
+			neverFalls(row, "cell", "a voltage", p.Cell, points[i-1].Cell)
 		}
 		points = append(points, p)
 	}

@@ -53,6 +53,20 @@ func below[Q quantity.Scalar](t *document.Table, key string, v quantity.Entered[
 	}
 }
 
+// ascends refuses a value in a list that is not more than the one before it, where both are given.
+func ascends[Q quantity.Scalar](row *document.Table, key string, v, before quantity.Entered[Q]) {
+	if v.IsGiven() && before.IsGiven() && v.Nominal <= before.Nominal {
+		row.Refuse(key, "more than the "+before.Text+" before it", "")
+	}
+}
+
+// neverFalls refuses a value in a list that is less than the one before it, where both are given; what is "a voltage".
+func neverFalls[Q quantity.Scalar](row *document.Table, key, what string, v, before quantity.Entered[Q]) {
+	if v.IsGiven() && before.IsGiven() && v.Nominal < before.Nominal {
+		row.Refuse(key, what+" that does not fall below the "+before.Text+" before it", "")
+	}
+}
+
 // atMostAll refuses a ratio above 100 %.
 func atMostAll(t *document.Table, key string, v quantity.Entered[quantity.Ratio]) {
 	if v.Nominal > 1 {

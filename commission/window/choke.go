@@ -69,8 +69,8 @@ func (d chokeDuty) worstOver(low, high, resistance, choke float64) (peak, at flo
 	})
 }
 
-// ChokePeak judges the worst peak current of one choke at rated power against its saturation.
-func ChokePeak(s site.Site) finding.Finding {
+// chokePeakFinding judges the worst peak current of one choke at rated power against its saturation.
+func chokePeakFinding(s site.Site) finding.Finding {
 	return remedy.Offer(s, chokePeak, func(f finding.Finding, passes func(site.Site) bool) (string, []finding.Change) {
 		if f.State == finding.None {
 			return easeBottom(s, passes)

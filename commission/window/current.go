@@ -43,8 +43,8 @@ func currentAtBottom(s site.Site) func(x []float64) float64 {
 	}
 }
 
-// Current judges the source current at the bottom of the window against converter, source and bypass.
-func Current(s site.Site) finding.Finding {
+// currentFinding judges the source current at the bottom of the window against converter, source and bypass.
+func currentFinding(s site.Site) finding.Finding {
 	return remedy.Offer(s, current, func(_ finding.Finding, passes func(site.Site) bool) (string, []finding.Change) {
 		return easeBottom(s, passes)
 	})

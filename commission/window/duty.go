@@ -28,9 +28,9 @@ func DutyWithDrops(source, bus quantity.Voltage, current quantity.Current, d Dro
 	return quantity.Ratio((bus + d.Forward - source + drop) / (bus + d.Forward - d.Switch))
 }
 
-// DutyRange judges the lowest duty, at the highest source and the lowest bus voltage, and the highest, at the lowest
+// dutyFinding judges the lowest duty, at the highest source and the lowest bus voltage, and the highest, at the lowest
 // source and the highest bus, against what the hardware can make.
-func DutyRange(s site.Site) finding.Finding {
+func dutyFinding(s site.Site) finding.Finding {
 	f := finding.Finding{
 		ID: "window.duty", Title: "Duty of the lower switch", Unit: "1", Guards: true,
 		Basis: "D = 1 − V_source⁄V_bus within [D_hw, 1 − D_hw], D_hw = f_sw·(t_min + t_dead); " + powerElectronics,

@@ -15,19 +15,19 @@ const (
 // Findings are the findings of the bus monitor and of the window, in the order of the catalogue.
 func Findings(s site.Site) []finding.Finding {
 	return []finding.Finding{
-		InsulationMonitor(s),
+		insulationMonitorFinding(s),
 		sourceHighFinding(s),
 		sourceLowFinding(s),
 		busFinding(s, false),
 		busFinding(s, true),
-		Margin(s),
-		Thresholds(s),
-		DutyRange(s),
-		Current(s),
-		ChokePeak(s),
-		FullPower(s),
-		Uncontrolled(s),
-		Backfeed(s),
+		marginFinding(s),
+		thresholdsFinding(s),
+		dutyFinding(s),
+		currentFinding(s),
+		chokePeakFinding(s),
+		fullPowerFinding(s),
+		uncontrolledFinding(s),
+		backfeedFinding(s),
 	}
 }
 

@@ -10,9 +10,9 @@ import (
 	"chargehand/commission/site"
 )
 
-// FullPower judges the least rest voltage at which the converter gives its rated power within the current limits of
+// fullPowerFinding judges the least rest voltage at which the converter gives its rated power within the current limits of
 // converter and source and without saturating a choke, against the bottom of the window.
-func FullPower(s site.Site) finding.Finding {
+func fullPowerFinding(s site.Site) finding.Finding {
 	return remedy.Offer(s, fullPower, func(_ finding.Finding, passes func(site.Site) bool) (string, []finding.Change) {
 		return easeBottom(s, passes)
 	})

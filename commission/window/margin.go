@@ -42,9 +42,9 @@ func converter(s site.Site) site.Converter {
 	return *s.Converter
 }
 
-// Margin judges the distance between the lowest bus and the highest source voltage against the larger of margin_fail and
+// marginFinding judges the distance between the lowest bus and the highest source voltage against the larger of margin_fail and
 // what the least duty needs, and against the wanted margin.
-func Margin(s site.Site) finding.Finding {
+func marginFinding(s site.Site) finding.Finding {
 	f := finding.Finding{
 		ID: "window.margin", Title: "Lowest bus above highest source", Unit: "V", Guards: true,
 		Basis: "bus-low − source-high ≥ max(margin_fail, source-high·D_hw⁄(1 − D_hw)), wanted_margin; above the bus the freewheel diodes conduct; " + circuitTheory,

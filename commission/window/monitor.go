@@ -7,10 +7,10 @@ import (
 	"chargehand/commission/site"
 )
 
-// InsulationMonitor counts the active insulation monitors. A non-isolated converter joins source and bus into one system,
+// insulationMonitorFinding counts the active insulation monitors. A non-isolated converter joins source and bus into one system,
 // and in one galvanically connected insulated system exactly one may be active (IEC 61557-8 and IEC 60364-5-53, clauses
 // from memory). Elsewhere the count is only stated.
-func InsulationMonitor(s site.Site) finding.Finding {
+func insulationMonitorFinding(s site.Site) finding.Finding {
 	f := finding.Finding{
 		ID: "bus.insulation-monitor", Title: "Active insulation monitors in the coupled system", Unit: "1", Guards: true,
 		Basis: "one active monitor per galvanically connected insulated system; IEC 61557-8, IEC 60364-5-53, clauses from memory",

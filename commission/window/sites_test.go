@@ -30,7 +30,7 @@ func BenchmarkFindings(b *testing.B) {
 // judged are the findings of the window but window.duty, without the search for remedies.
 func judged(s site.Site) []finding.Finding {
 	return []finding.Finding{
-		sourceHighFinding(s), sourceLowFinding(s), busFinding(s, false), busFinding(s, true), Margin(s), Thresholds(s),
-		current(s), chokePeak(s), fullPower(s), Uncontrolled(s), Backfeed(s),
+		sourceHighFinding(s), sourceLowFinding(s), busFinding(s, false), busFinding(s, true), marginFinding(s), thresholdsFinding(s),
+		current(s), chokePeak(s), fullPower(s), uncontrolledFinding(s), backfeedFinding(s),
 	}
 }

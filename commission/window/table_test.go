@@ -47,7 +47,7 @@ func TestTable(t *testing.T) {
 // Where the rating binds, the power is η·(E − R_i·I)·I with I the limit, as in window.full-power's own formula backwards.
 func TestTablePowerBelowFullPower(t *testing.T) {
 	s := findingtest.Load(t, "ouzel")
-	full := FullPower(s).Value.Nominal
+	full := fullPowerFinding(s).Value.Nominal
 	for k, r := range Table(s) {
 		limited := r.Available.Nominal < 180e3*(1-1e-9)
 		if limited != (float64(r.Rest) < full-1e-9) {

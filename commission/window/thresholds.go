@@ -15,10 +15,10 @@ type rung struct {
 	value        finding.Value
 }
 
-// Thresholds judges the ladder source-high < under-voltage trip < bus-low and bus-high < chopper < over-voltage trip <
+// thresholdsFinding judges the ladder source-high < under-voltage trip < bus-low and bus-high < chopper < over-voltage trip <
 // capacitor rating: the smallest gap must be at least the measurement error of the bus. Without a chopper its rung falls
 // away.
-func Thresholds(s site.Site) finding.Finding {
+func thresholdsFinding(s site.Site) finding.Finding {
 	f := finding.Finding{
 		ID: "window.thresholds", Title: "Smallest gap in the ladder of limits", Unit: "V", Guards: true,
 		Basis: "source-high < under-voltage trip < bus-low; bus-high < chopper < over-voltage trip < capacitor rating, each by the bus measurement error; " + circuitTheory,

@@ -75,9 +75,9 @@ func joule(x float64) float64 {
 	return x + 2*math.Expm1(-x) - math.Expm1(-2*x)/2
 }
 
-// Uncontrolled states the diode current into a collapsed bus (0 V): blocking the pulses does not stop it, only fuse or
+// uncontrolledFinding states the diode current into a collapsed bus (0 V): blocking the pulses does not stop it, only fuse or
 // contactor do.
-func Uncontrolled(s site.Site) finding.Finding {
+func uncontrolledFinding(s site.Site) finding.Finding {
 	f := finding.Finding{
 		ID: "window.uncontrolled", Title: "Diode current into a collapsed bus", Unit: "A",
 		Basis: "I = E_high⁄(R_i + R_choke⁄N), bus at 0 V, diode drop 0; slope E_high⁄(L_choke⁄N + L_source); " + circuitTheory,
@@ -145,8 +145,8 @@ func uncontrolledParts(s site.Site, f finding.Finding, axes []corner.Axis, loop 
 	return f
 }
 
-// Backfeed states the current from the bus into the empty source through a shorted upper switch and one choke.
-func Backfeed(s site.Site) finding.Finding {
+// backfeedFinding states the current from the bus into the empty source through a shorted upper switch and one choke.
+func backfeedFinding(s site.Site) finding.Finding {
 	f := finding.Finding{
 		ID: "window.backfeed", Title: "Bus into the empty source through a shorted upper switch", Unit: "A",
 		Basis: "I = (bus-high − E_low)⁄(R_i + R_choke), one choke, 0 behind a blocking diode; " + circuitTheory,
