@@ -103,6 +103,14 @@ func (r *rehearsal) steady(ctx context.Context) error {
 // charge arms the capture, has the pre-charge closed with the bypass withheld, opens it again at once where the rise is
 // missing, measures the settled difference, and releases the bypass.
 func (r *rehearsal) charge(ctx context.Context, p walk.Point) error {
+	if r.latest.State.CauseIsMissing() { // gone on with after an end in mid-charge
+		if err := r.submit(ctx, walk.EnterCause{Cause: "broken off: the program ended during the attempt"}); err != nil {
+			return err
+		}
+	}
+	if err := r.cool(ctx); err != nil {
+		return err
+	}
 	if err := r.arm(ctx, p); err != nil {
 		return err
 	}
