@@ -11,4 +11,6 @@
 // in all three regimes, and the link ends k·u above the source, k = e^(−α·π⁄ω_d), where the loop is underdamped
 // (textbook series resonant circuit). A filter capacitor at the star point has no choke in its loop and is charged by
 // source inductance and its own alone.
+//
+// It imports corner, finding, quantity, remedy and site, and of the families precharge: the circuit that is charged.
 package closing

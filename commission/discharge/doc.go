@@ -11,4 +11,6 @@
 //	t = ½·R_b·C·ln[(V₁² + P·R_b)⁄(V₂² + P·R_b)]  with constant power P      (the circuit equation in v²)
 //
 // A calculated time never stands for absence of voltage.
+//
+// It imports corner, finding, quantity, remedy and site, and of the families window: the fall begins at the highest bus voltage.
 package discharge

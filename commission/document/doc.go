@@ -7,4 +7,6 @@
 // What a file may hold, beside TOML's own rules: keys in lower case exactly; no control characters and no marks that
 // reverse the direction of text; no underscores in numbers, no nan, no inf; an inline table on one line. A byte-order mark is
 // skipped. At most [MaxSize] bytes.
+//
+// It imports quantity, and a TOML parser in one file.
 package document

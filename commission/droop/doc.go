@@ -8,4 +8,7 @@
 // r_k = d_k + R_cable,k. Its current stays within I_min,k … I_max,k; a negative current flows back. The bus stands where
 // the currents of all infeeds balance the loads, ΣI_k(V) = P⁄V + I_c + V⁄R_L. A constant-power load has an unstable point
 // besides; reached from the unloaded bus the bus stands at the highest root.
+//
+// It imports finding, quantity, remedy, signal (the names of the settings) and site, and of the families window: the lowest bus
+// stands above the highest source.
 package droop

@@ -1,6 +1,3 @@
-// Package finding holds one judged result: a value over all corners, its limit, its margin and its verdict.
-//
-// Start at [Finding]. [Judge] is the one place where a value and a limit become a verdict.
 package finding
 
 import "math"

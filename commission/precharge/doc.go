@@ -13,4 +13,6 @@
 // Textbook circuit theory (Kuphaldt, Lessons in Electric Circuits, volume I, chapter 16); the constant-power case is
 // derived in load.go. A supercapacitor stands in series with C, and the bypass may close when source and link differ by
 // no more than the closing difference.
+//
+// It imports corner, finding, quantity, remedy and site, and no other family.
 package precharge

@@ -14,4 +14,6 @@
 //
 // A unit is looked up whole and case-sensitive among those of the wanted dimension, so "m" is only the metre and "min" only
 // the minute. What is nearly right is refused with the right spelling, never repaired in silence.
+//
+// It imports the standard library alone.
 package quantity

@@ -1,6 +1,3 @@
-// Package remedy finds what would make a finding pass, by putting other values into the site and judging again.
-//
-// Start at [Least], which searches the smallest change that passes, and [Apply], which puts changes into a copy of a site.
 package remedy
 
 import (

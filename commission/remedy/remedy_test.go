@@ -111,6 +111,13 @@ func TestSettersOnAnEmptySite(t *testing.T) {
 	}
 }
 
+// The least voltage above 870 V whose square exceeds 800 000 V², rounded so that it does.
+func ExampleLeast() {
+	v, ok := Least(870, 1000, func(v float64) bool { return v*v > 800_000 })
+	fmt.Println(v, ok)
+	// Output: 894.43 true
+}
+
 func ExamplePhrase() {
 	fmt.Println(Phrase([]finding.Change{{Key: "infeed.setpoint", Subject: "aft string", Unit: "V", Was: 870, Value: 945.42}}))
 	// Output: infeed.setpoint of "aft string" to 945.42 V (now 870 V)

@@ -38,18 +38,6 @@ func SourceHigh(s site.Site) (quantity.Spread[quantity.Voltage], finding.Missing
 	return spread(end.values), missing
 }
 
-// SourceLow is the lowest terminal voltage of the site's source, or the keys that are missing for it.
-func SourceLow(s site.Site) (quantity.Spread[quantity.Voltage], finding.Missing) {
-	end, missing := sourceLow(s)
-	return spread(end.values), missing
-}
-
-// BusLow is the lowest steady bus voltage over all infeeds, or the keys that are missing for it.
-func BusLow(s site.Site) (quantity.Spread[quantity.Voltage], finding.Missing) {
-	end, missing := busEnd(s, false)
-	return spread(end.values), missing
-}
-
 // BusHigh is the highest steady bus voltage over all infeeds, or the keys that are missing for it.
 func BusHigh(s site.Site) (quantity.Spread[quantity.Voltage], finding.Missing) {
 	end, missing := busEnd(s, true)
