@@ -140,6 +140,17 @@ func (f Form) WithValue(id, text string) Form {
 	return f
 }
 
+// WithCheck is the form with another check of one field.
+func (f Form) WithCheck(id string, check Check) Form {
+	for i, field := range f.fields {
+		if field.ID == id {
+			field.Check = check
+			return f.with(i, field)
+		}
+	}
+	return f
+}
+
 // Focused is the id of the field that the keys act on.
 func (f Form) Focused() string {
 	if len(f.fields) == 0 {

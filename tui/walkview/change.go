@@ -1,16 +1,14 @@
 package walkview
 
 import (
-	"fmt"
 	"slices"
 	"strings"
 
 	tea "github.com/charmbracelet/bubbletea"
 
-	"chargehand/commission/finding"
-	"chargehand/commission/quantity"
 	"chargehand/commission/site"
 	"chargehand/commission/walk"
+	"chargehand/tui/deskview"
 	"chargehand/tui/form"
 )
 
@@ -72,7 +70,7 @@ func (m Model) askChange(p walk.Point) *prompt {
 		if err != nil {
 			return strings.Split(err.Error(), "\n")
 		}
-		return moves(before, check(s))
+		return deskview.Moves(before, check(s))
 	}
 	return ask
 }
@@ -85,29 +83,6 @@ func revision(name, text string, f form.Form) ([]byte, site.Site, error) {
 	}
 	s, _, err := site.Read(name, revised)
 	return revised, s, err
-}
-
-// moves says which findings another site file moves: verdicts first, then values.
-func moves(before, after []finding.Finding) []string {
-	var verdicts, values []string
-	for _, f := range after {
-		i := slices.IndexFunc(before, func(b finding.Finding) bool { return b.ID == f.ID && b.Subject == f.Subject })
-		if i < 0 {
-			continue
-		}
-		was := before[i]
-		change := strings.TrimSpace(f.ID + " " + f.Subject)
-		switch {
-		case was.Verdict != f.Verdict:
-			verdicts = append(verdicts, fmt.Sprintf("%s: %s, was %s", change, f.Verdict, was.Verdict))
-		case f.State == finding.Finite && was.State == finding.Finite && was.Value.Nominal != f.Value.Nominal:
-			values = append(values, fmt.Sprintf("%s: %s, was %s", change, quantity.Engineering(f.Value.Nominal, f.Unit, 3), quantity.Engineering(was.Value.Nominal, f.Unit, 3)))
-		}
-	}
-	if len(verdicts)+len(values) == 0 {
-		return []string{"no finding moves"}
-	}
-	return append(verdicts, values...)
 }
 
 // changeSite takes the revised file into the log and then writes it beside the old one.
