@@ -1,5 +1,0 @@
-//go:build peer
-
-package chlog_test
-
-const everyValue = true
