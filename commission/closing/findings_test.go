@@ -2,8 +2,6 @@ package closing
 
 import (
 	"math"
-	"slices"
-	"strings"
 	"testing"
 
 	"chargehand/commission/finding"
@@ -12,24 +10,9 @@ import (
 	"chargehand/commission/site"
 )
 
-func set[Q quantity.Scalar](e *quantity.Entered[Q], v float64) {
-	e.Spread, e.Text = quantity.Exactly(Q(v)), "typed"
-}
-
-func find(t *testing.T, s site.Site, id, subject string) finding.Finding {
-	t.Helper()
-	for _, f := range Findings(s) {
-		if f.ID == id && f.Subject == subject {
-			return f
-		}
-	}
-	t.Fatalf("no finding %s %s", id, subject)
-	return finding.Finding{}
-}
-
 func withBypass(s site.Site, making float64) site.Site {
 	b := *s.Bypass
-	set(&b.MakingCurrent, making)
+	findingtest.Set(&b.MakingCurrent, making)
 	s.Bypass = &b
 	return s
 }
@@ -50,14 +33,14 @@ func put(t *testing.T, s site.Site, c finding.Change) site.Site {
 	t.Helper()
 	switch c.Key {
 	case keyDifference:
-		set(&s.Precharge.ClosingDifference, c.Value)
+		findingtest.Set(&s.Precharge.ClosingDifference, c.Value)
 	case "bypass.making_current":
 		return withBypass(s, c.Value)
 	case "precharge.minimum_time":
-		set(&s.Precharge.MinimumTime, c.Value)
+		findingtest.Set(&s.Precharge.MinimumTime, c.Value)
 	case "source.fuse.pre_arcing_i2t":
 		f := *s.Source.Fuse
-		set(&f.PreArcingI2t, c.Value)
+		findingtest.Set(&f.PreArcingI2t, c.Value)
 		s.Source.Fuse = &f
 	default:
 		t.Fatalf("remedy changes %s, which no finding of this family asks for", c.Key)
@@ -69,17 +52,17 @@ func put(t *testing.T, s site.Site, c finding.Change) site.Site {
 func TestRemediesPassAndLessDoesNot(t *testing.T) {
 	fused := func(s site.Site, i2t float64) site.Site {
 		f := *s.Source.Fuse
-		set(&f.PreArcingI2t, i2t)
+		findingtest.Set(&f.PreArcingI2t, i2t)
 		s.Source.Fuse = &f
 		return s
 	}
 	differing := func(s site.Site, v float64) site.Site {
-		set(&s.Precharge.ClosingDifference, v)
+		findingtest.Set(&s.Precharge.ClosingDifference, v)
 		return s
 	}
 	whole := findingtest.Load(t, "wagtail")
 	short := whole
-	set(&short.Precharge.MinimumTime, 0.2)
+	findingtest.Set(&short.Precharge.MinimumTime, 0.2)
 	for _, c := range []struct {
 		name, id string
 		site     site.Site
@@ -94,7 +77,7 @@ func TestRemediesPassAndLessDoesNot(t *testing.T) {
 		{"no window", "closing.threshold", withBypass(whole, 100), "bypass.making_current"},
 		{"dwell too short", "closing.live-bus", short, "precharge.minimum_time"},
 	} {
-		f := find(t, c.site, c.id, "")
+		f := findingtest.Find(t, Findings(c.site), c.id, "")
 		if f.Verdict == finding.Pass || len(f.Changes) == 0 || f.Changes[0].Key != c.key {
 			t.Errorf("%s: %s = %s, remedy %q, want a change of %s", c.name, c.id, f.Verdict, f.Remedy, c.key)
 			continue
@@ -103,12 +86,12 @@ func TestRemediesPassAndLessDoesNot(t *testing.T) {
 		for _, change := range f.Changes {
 			mended = put(t, mended, change)
 		}
-		if g := find(t, mended, c.id, ""); g.Verdict != finding.Pass {
+		if g := findingtest.Find(t, Findings(mended), c.id, ""); g.Verdict != finding.Pass {
 			t.Errorf("%s: with %q %s = %s (%v), want pass", c.name, f.Remedy, c.id, g.Verdict, g.Because)
 		}
 		less := f.Changes[0]
 		less.Value -= 0.01 * (less.Value - less.Was)
-		if g := find(t, put(t, c.site, less), c.id, ""); g.Verdict == finding.Pass {
+		if g := findingtest.Find(t, Findings(put(t, c.site, less)), c.id, ""); g.Verdict == finding.Pass {
 			t.Errorf("%s: one per cent less than %q passes too", c.name, f.Remedy)
 		}
 	}
@@ -119,9 +102,9 @@ func TestRemediesPassAndLessDoesNot(t *testing.T) {
 func TestSaturatedChokesAreJudgedByTheUpperBound(t *testing.T) {
 	s := findingtest.Load(t, "wagtail")
 	s.Converter.Filter = nil // whose own loop is the larger one otherwise
-	linear := find(t, s, "closing.inrush", "")
-	saturating := withConverter(s, func(c *site.Converter) { set(&c.ChokeSaturation, 40) })
-	f := find(t, saturating, "closing.inrush", "")
+	linear := findingtest.Find(t, Findings(s), "closing.inrush", "")
+	saturating := withConverter(s, func(c *site.Converter) { findingtest.Set(&c.ChokeSaturation, 40) })
+	f := findingtest.Find(t, Findings(saturating), "closing.inrush", "")
 	if f.Value != linear.Value {
 		t.Errorf("value with chokes that saturate = %v, want it unchanged, %v", f.Value, linear.Value)
 	}
@@ -133,10 +116,10 @@ func TestSaturatedChokesAreJudgedByTheUpperBound(t *testing.T) {
 		t.Errorf("upper bound = %v A, want at most u⁄R = %v A", bound, most)
 	}
 	between := (f.Value.High + f.Parts[0].Value.High) / 2
-	if g := find(t, withBypass(saturating, between), "closing.inrush", ""); g.Verdict != finding.Fail {
+	if g := findingtest.Find(t, Findings(withBypass(saturating, between)), "closing.inrush", ""); g.Verdict != finding.Fail {
 		t.Errorf("verdict between value and bound = %s, want fail", g.Verdict)
 	}
-	if g := find(t, withBypass(s, between), "closing.inrush", ""); g.Verdict != finding.Pass {
+	if g := findingtest.Find(t, Findings(withBypass(s, between)), "closing.inrush", ""); g.Verdict != finding.Pass {
 		t.Errorf("verdict of the same bypass without saturation = %s, want pass", g.Verdict)
 	}
 }
@@ -145,7 +128,7 @@ func TestSaturatedChokesAreJudgedByTheUpperBound(t *testing.T) {
 // loops. E·√(C⁄L)·e^(−α·t_p) by hand for 821.7 V, 64 mΩ, 6.04 µH, 0.8 mF.
 func TestFilterBeforeTheBypass(t *testing.T) {
 	s := withConverter(findingtest.Load(t, "wagtail"), func(c *site.Converter) { c.Filter.Position = site.AtSource })
-	f := find(t, s, "closing.inrush", "filter")
+	f := findingtest.Find(t, Findings(s), "closing.inrush", "filter")
 	l, c, r := 6.04e-6, 0.8e-3, 0.064
 	alpha := r / (2 * l)
 	omega := math.Sqrt(1/(l*c) - alpha*alpha)
@@ -153,11 +136,11 @@ func TestFilterBeforeTheBypass(t *testing.T) {
 	if math.Abs(f.Value.Nominal-want) > 1e-6*want || f.Verdict != finding.Info {
 		t.Errorf("closing.inrush filter = %v A, %s, want %v A, info", f.Value.Nominal, f.Verdict, want)
 	}
-	if g := find(t, s, "closing.live-bus", ""); g.Verdict != finding.Info || g.State != finding.None {
+	if g := findingtest.Find(t, Findings(s), "closing.live-bus", ""); g.Verdict != finding.Info || g.State != finding.None {
 		t.Errorf("closing.live-bus = %s, %s, want info and no value: nothing behind the resistor to charge", g.Verdict, g.State)
 	}
 	bare := withConverter(findingtest.Load(t, "wagtail"), func(c *site.Converter) { c.Filter = nil })
-	if got, want := find(t, s, "closing.i2t", "").Value, find(t, bare, "closing.i2t", "").Value; got != want {
+	if got, want := findingtest.Find(t, Findings(s), "closing.i2t", "").Value, findingtest.Find(t, Findings(bare), "closing.i2t", "").Value; got != want {
 		t.Errorf("closing.i2t with the filter before the bypass = %v, want as without, %v", got, want)
 	}
 }
@@ -167,9 +150,9 @@ func TestWhetherTheFuseClears(t *testing.T) {
 	for i2t, want := range map[float64][3]float64{30_000: {1, 1, 1}, 50_000: {0, 1, 1}, 70_000: {0, 0, 1}, 90_000: {0, 0, 0}} {
 		s := whole
 		f := *s.Source.Fuse
-		set(&f.PreArcingI2t, i2t)
+		findingtest.Set(&f.PreArcingI2t, i2t)
 		s.Source.Fuse = &f
-		got := find(t, s, "closing.without-precharge", "").Parts[1]
+		got := findingtest.Find(t, Findings(s), "closing.without-precharge", "").Parts[1]
 		if v := [3]float64{got.Value.Low, got.Value.Nominal, got.Value.High}; v != want || got.Name != "fuse clears it" {
 			t.Errorf("%s at %v A²s = %v, want %v", got.Name, i2t, v, want)
 		}
@@ -189,52 +172,43 @@ func TestStepHoldsBothErrors(t *testing.T) {
 
 func TestFindingsNameTheKeysThatAreMissing(t *testing.T) {
 	loops := []string{"inrush", "i2t", "overshoot", "threshold", "without-precharge"}
-	for _, c := range []struct {
-		key       string
-		take      func(*site.Site)
-		undecided []string
-	}{
-		{"source.inductance", func(s *site.Site) { s.Source.Inductance = quantity.Entered[quantity.Inductance]{} }, loops},
-		{"converter.choke", func(s *site.Site) {
+	findingtest.NameWhatIsMissing(t, Findings, []findingtest.Absence{
+		findingtest.Without("source.inductance", func(s *site.Site) { s.Source.Inductance = quantity.Entered[quantity.Inductance]{} }, loops),
+		findingtest.Without("converter.choke", func(s *site.Site) {
 			*s = withConverter(*s, func(c *site.Converter) { c.Choke = quantity.Entered[quantity.Inductance]{} })
-		}, loops},
-		{"converter.phases", func(s *site.Site) { s.Converter = nil }, loops},
-		{"converter.choke_saturation", func(s *site.Site) {
+		}, loops),
+		findingtest.Without("converter.phases", func(s *site.Site) { s.Converter = nil }, loops),
+		findingtest.Without("converter.choke_saturation", func(s *site.Site) {
 			*s = withConverter(*s, func(c *site.Converter) { c.ChokeSaturation = quantity.Entered[quantity.Current]{} })
-		}, []string{"inrush"}},
-		{"converter.filter.esr", func(s *site.Site) {
+		}, []string{"inrush"}),
+		findingtest.Without("converter.filter.esr", func(s *site.Site) {
 			*s = withConverter(*s, func(c *site.Converter) { c.Filter.ESR = quantity.Entered[quantity.Resistance]{} })
-		}, []string{"inrush", "threshold", "without-precharge"}},
-		{"bypass.making_current", func(s *site.Site) { s.Bypass = nil }, []string{"inrush", "threshold"}},
-		{"source.fuse.pre_arcing_i2t", func(s *site.Site) { s.Source.Fuse = nil }, []string{"i2t"}},
-		{"bus.measurement_error", func(s *site.Site) { s.Bus.MeasurementError = quantity.ErrorBound{} }, []string{"inrush", "i2t", "overshoot", "threshold"}},
-		{"precharge.compares", func(s *site.Site) { s.Precharge.Compares = "" }, []string{"live-bus"}},
-		{"precharge.minimum_time", func(s *site.Site) { s.Precharge.MinimumTime = quantity.Entered[quantity.Seconds]{} }, []string{"live-bus"}},
-		{"a bleeder, which may be absent", func(s *site.Site) { s.Bus.Bleeders = nil }, nil},
-	} {
-		s := findingtest.Load(t, "wagtail")
-		c.take(&s)
-		for _, f := range Findings(s) {
-			want := slices.Contains(c.undecided, strings.TrimPrefix(f.ID, "closing."))
-			if got := f.Verdict == finding.Undecided; got != want || want && !slices.Contains(f.Because, c.key) {
-				t.Errorf("without %s: %s = %s (%v), want undecided = %v by that key", c.key, f.ID, f.Verdict, f.Because, want)
-			}
-		}
-	}
+		}, []string{"inrush", "threshold", "without-precharge"}),
+		findingtest.Without("bypass.making_current", func(s *site.Site) { s.Bypass = nil }, []string{"inrush", "threshold"}),
+		findingtest.Without("source.fuse.pre_arcing_i2t", func(s *site.Site) { s.Source.Fuse = nil }, []string{"i2t"}),
+		findingtest.Without("bus.measurement_error", func(s *site.Site) { s.Bus.MeasurementError = quantity.ErrorBound{} }, []string{"inrush", "i2t", "overshoot", "threshold"}),
+		findingtest.Without("precharge.compares", func(s *site.Site) { s.Precharge.Compares = "" }, []string{"live-bus"}),
+		findingtest.Without("precharge.minimum_time", func(s *site.Site) { s.Precharge.MinimumTime = quantity.Entered[quantity.Seconds]{} }, []string{"live-bus"}),
+		findingtest.Without("a bleeder, which may be absent", func(s *site.Site) { s.Bus.Bleeders = nil }, nil),
+	})
 }
 
 // Values without the parts that may be 0: no choke resistance, no source inductance, no internal resistance.
 func TestFindingsWithNothingInTheLoop(t *testing.T) {
 	for _, change := range []func(*site.Site){
-		func(s *site.Site) { set(&s.Source.Inductance, 0) },
-		func(s *site.Site) { set(&s.Source.InternalResistance, 0) },
+		func(s *site.Site) { findingtest.Set(&s.Source.Inductance, 0) },
+		func(s *site.Site) { findingtest.Set(&s.Source.InternalResistance, 0) },
 		func(s *site.Site) {
-			*s = withConverter(*s, func(c *site.Converter) { set(&c.ChokeResistance, 0); set(&c.Filter.ESL, 0); set(&c.Filter.ESR, 0) })
-			set(&s.Source.Inductance, 0)
+			*s = withConverter(*s, func(c *site.Converter) {
+				findingtest.Set(&c.ChokeResistance, 0)
+				findingtest.Set(&c.Filter.ESL, 0)
+				findingtest.Set(&c.Filter.ESR, 0)
+			})
+			findingtest.Set(&s.Source.Inductance, 0)
 		},
 		func(s *site.Site) {
-			*s = withConverter(*s, func(c *site.Converter) { set(&c.ChokeResistance, 0) })
-			set(&s.Source.InternalResistance, 0)
+			*s = withConverter(*s, func(c *site.Converter) { findingtest.Set(&c.ChokeResistance, 0) })
+			findingtest.Set(&s.Source.InternalResistance, 0)
 		},
 	} {
 		s := findingtest.Load(t, "wagtail")
@@ -261,15 +235,15 @@ func areExplained(t *testing.T, what string, findings []finding.Finding) {
 // Every regime of damping, either filter position, and a supercapacitor are explained.
 func TestOddLoopsAreExplained(t *testing.T) {
 	for name, change := range map[string]func(*site.Site){
-		"overdamped": func(s *site.Site) { set(&s.Source.InternalResistance, 2) },
+		"overdamped": func(s *site.Site) { findingtest.Set(&s.Source.InternalResistance, 2) },
 		"filter before the bypass": func(s *site.Site) {
 			*s = withConverter(*s, func(c *site.Converter) { c.Filter.Position = site.AtSource })
 		},
-		"supercapacitor with both": func(s *site.Site) { s.Source.Kind = site.Supercapacitor; set(&s.Source.Capacitance, 14) },
+		"supercapacitor with both": func(s *site.Site) { s.Source.Kind = site.Supercapacitor; findingtest.Set(&s.Source.Capacitance, 14) },
 		"supercapacitor before": func(s *site.Site) {
 			*s = withConverter(*s, func(c *site.Converter) { c.Filter.Position = site.AtSource })
 			s.Source.Kind = site.Supercapacitor
-			set(&s.Source.Capacitance, 14)
+			findingtest.Set(&s.Source.Capacitance, 14)
 		},
 	} {
 		s := findingtest.Load(t, "wagtail")

@@ -13,19 +13,9 @@ import (
 	"chargehand/commission/site"
 )
 
-func set[Q quantity.Scalar](e *quantity.Entered[Q], v float64) {
-	e.Spread, e.Text = quantity.Exactly(Q(v)), "typed"
-}
-
 func touchSafe(t *testing.T, s site.Site) finding.Finding {
 	t.Helper()
-	for _, f := range Findings(s) {
-		if f.ID == "discharge.touch-safe" {
-			return f
-		}
-	}
-	t.Fatal("no finding discharge.touch-safe")
-	return finding.Finding{}
+	return findingtest.Find(t, Findings(s), "discharge.touch-safe", "")
 }
 
 // The bleeder that the remedy names passes, one per cent more does not; without any it starts from none.
@@ -69,31 +59,17 @@ func TestLabelRoundsUp(t *testing.T) {
 }
 
 func TestFindingsNameTheKeysThatAreMissing(t *testing.T) {
-	for _, c := range []struct {
-		key       string
-		take      func(*site.Site)
-		undecided []string
-	}{
-		{"bus.touch_safe", func(s *site.Site) { s.Bus.TouchSafe = nil }, []string{"discharge.touch-safe"}},
-		{"bus.touch_safe.within", func(s *site.Site) {
+	findingtest.NameWhatIsMissing(t, Findings, []findingtest.Absence{
+		findingtest.Without("bus.touch_safe", func(s *site.Site) { s.Bus.TouchSafe = nil }, []string{"touch-safe"}),
+		findingtest.Without("bus.touch_safe.within", func(s *site.Site) {
 			v := *s.Bus.TouchSafe
 			v.Within = quantity.Entered[quantity.Seconds]{}
 			s.Bus.TouchSafe = &v
-		}, []string{"discharge.touch-safe"}},
-		{"setpoints, where the nominal voltage stands in", func(s *site.Site) { s.Infeeds = nil }, nil},
-		{"a bleeder, which may be absent", func(s *site.Site) { s.Bus.Bleeders = nil }, nil},
-		{"the converter, whose filter may be absent", func(s *site.Site) { s.Converter = nil }, nil},
-	} {
-		s := findingtest.Load(t, "wagtail")
-		c.take(&s)
-		for _, f := range Findings(s) {
-			want := slices.Contains(c.undecided, f.ID)
-			if got := f.Verdict == finding.Undecided; got != want || want && !slices.Contains(f.Because, c.key) {
-				t.Errorf("without %s: %s = %s (%v), want undecided = %v by that key", c.key, f.ID, f.Verdict, f.Because, want)
-			}
-		}
-		findingtest.AreOrdered(t, "without "+c.key, Findings(s))
-	}
+		}, []string{"touch-safe"}),
+		findingtest.Without("setpoints, where the nominal voltage stands in", func(s *site.Site) { s.Infeeds = nil }, nil),
+		findingtest.Without("a bleeder, which may be absent", func(s *site.Site) { s.Bus.Bleeders = nil }, nil),
+		findingtest.Without("the converter, whose filter may be absent", func(s *site.Site) { s.Converter = nil }, nil),
+	})
 }
 
 // An isolated bank hangs on the bus again when it is discharged; a filter before the bypass stays with the source.
@@ -177,7 +153,7 @@ func TestTouchSafeBusTakesNoTime(t *testing.T) {
 		at := float64(highest(s))
 		for _, touch := range []float64{at, 1.5 * at} {
 			safe := *s.Bus.TouchSafe
-			set(&safe.Voltage, touch)
+			findingtest.Set(&safe.Voltage, touch)
 			s.Bus.TouchSafe = &safe
 			f := touchSafe(t, s)
 			if want := finding.Exactly(0); f.Value != want || f.Verdict != finding.Pass {

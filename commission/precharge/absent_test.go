@@ -16,57 +16,40 @@ func TestFindingsNameTheKeysThatAreMissing(t *testing.T) {
 	all := []string{"time-constant", "final-voltage", "stall", "time-to-close", "peak-current", "peak-power", "energy", "pulse",
 		"repeat", "wait", "shorted-bus", "timeout", "breaking"}
 	released := []string{"stall", "time-to-close", "wait", "timeout"}
-	for _, c := range []struct {
-		key       string
-		take      func(*site.Site)
-		undecided []string
-	}{
-		{"converter.choke_resistance", func(s *site.Site) { s.Converter = nil }, all},
-		{"converter.phases", func(s *site.Site) { v := *s.Converter; v.Phases = 0; s.Converter = &v }, all},
-		{"source.measurement_error", func(s *site.Site) { s.Source.MeasurementError = quantity.ErrorBound{} }, released},
-		{"bus.measurement_error", func(s *site.Site) { s.Bus.MeasurementError = quantity.ErrorBound{} }, released},
-		{"bus.auxiliary.stops_at", func(s *site.Site) {
+	findingtest.NameWhatIsMissing(t, Findings, []findingtest.Absence{
+		findingtest.Without("converter.choke_resistance", func(s *site.Site) { s.Converter = nil }, all),
+		findingtest.Without("converter.phases", func(s *site.Site) { v := *s.Converter; v.Phases = 0; s.Converter = &v }, all),
+		findingtest.Without("source.measurement_error", func(s *site.Site) { s.Source.MeasurementError = quantity.ErrorBound{} }, released),
+		findingtest.Without("bus.measurement_error", func(s *site.Site) { s.Bus.MeasurementError = quantity.ErrorBound{} }, released),
+		findingtest.Without("bus.auxiliary.stops_at", func(s *site.Site) {
 			v := *s.Bus.Auxiliary
 			v.StopsAt = quantity.Entered[quantity.Voltage]{}
 			s.Bus.Auxiliary = &v
-		}, slices.DeleteFunc(slices.Clone(all), func(id string) bool { return strings.HasPrefix(id, "peak") || id == "breaking" })},
-		{"precharge.rated_power", func(s *site.Site) { s.Precharge.RatedPower = quantity.Entered[quantity.Power]{} },
-			[]string{"pulse", "wait", "shorted-bus", "timeout"}},
-		{"precharge.derating", func(s *site.Site) { s.Precharge.Derating = nil }, []string{"pulse", "wait", "shorted-bus", "timeout"}},
-		{"precharge.ambient", func(s *site.Site) { s.Precharge.Ambient = quantity.Entered[quantity.Temperature]{} },
-			[]string{"pulse", "repeat", "wait", "shorted-bus", "timeout"}},
-		{"precharge.pulse", func(s *site.Site) { s.Precharge.Pulse, s.Precharge.Overload = nil, nil }, []string{"pulse", "shorted-bus", "timeout"}},
-		{"precharge.thermal", func(s *site.Site) { s.Precharge.Thermal = nil }, []string{"shorted-bus", "timeout"}},
-		{"precharge.attempts", func(s *site.Site) { s.Precharge.Attempts = 0 }, []string{"repeat", "shorted-bus", "timeout"}},
-		{"precharge.interval", func(s *site.Site) { s.Precharge.Interval = quantity.Entered[quantity.Seconds]{} },
-			[]string{"repeat", "wait", "shorted-bus", "timeout"}},
-		{"precharge.timeout", func(s *site.Site) { s.Precharge.Timeout = quantity.Entered[quantity.Seconds]{} }, []string{"shorted-bus", "timeout"}},
-		{"precharge.contactor", func(s *site.Site) { s.Precharge.Contactor = nil }, []string{"breaking"}},
-		{"a bleeder, which may be absent", func(s *site.Site) { s.Bus.Bleeders = nil }, nil},
-		{"the auxiliary supply, which may be absent", func(s *site.Site) { s.Bus.Auxiliary = nil }, nil},
-		{"the filter, which may be absent", func(s *site.Site) { v := *s.Converter; v.Filter = nil; s.Converter = &v }, nil},
-		{"the overload, beside a pulse curve", func(s *site.Site) { s.Precharge.Overload = nil }, nil},
-	} {
-		s := findingtest.Load(t, "wagtail")
-		c.take(&s)
-		for _, f := range Findings(s) {
-			id := strings.TrimPrefix(f.ID, "precharge.")
-			want := slices.Contains(c.undecided, id)
-			if got := f.Verdict == finding.Undecided; got != want {
-				t.Errorf("without %s: %s undecided = %v (%v), want %v", c.key, f.ID, got, f.Because, want)
-			}
-			if want && !slices.Contains(f.Because, c.key) {
-				t.Errorf("without %s: %s because = %v, want the key", c.key, f.ID, f.Because)
-			}
-		}
-	}
+		}, slices.DeleteFunc(slices.Clone(all), func(id string) bool { return strings.HasPrefix(id, "peak") || id == "breaking" })),
+		findingtest.Without("precharge.rated_power", func(s *site.Site) { s.Precharge.RatedPower = quantity.Entered[quantity.Power]{} },
+			[]string{"pulse", "wait", "shorted-bus", "timeout"}),
+		findingtest.Without("precharge.derating", func(s *site.Site) { s.Precharge.Derating = nil }, []string{"pulse", "wait", "shorted-bus", "timeout"}),
+		findingtest.Without("precharge.ambient", func(s *site.Site) { s.Precharge.Ambient = quantity.Entered[quantity.Temperature]{} },
+			[]string{"pulse", "repeat", "wait", "shorted-bus", "timeout"}),
+		findingtest.Without("precharge.pulse", func(s *site.Site) { s.Precharge.Pulse, s.Precharge.Overload = nil, nil }, []string{"pulse", "shorted-bus", "timeout"}),
+		findingtest.Without("precharge.thermal", func(s *site.Site) { s.Precharge.Thermal = nil }, []string{"shorted-bus", "timeout"}),
+		findingtest.Without("precharge.attempts", func(s *site.Site) { s.Precharge.Attempts = 0 }, []string{"repeat", "shorted-bus", "timeout"}),
+		findingtest.Without("precharge.interval", func(s *site.Site) { s.Precharge.Interval = quantity.Entered[quantity.Seconds]{} },
+			[]string{"repeat", "wait", "shorted-bus", "timeout"}),
+		findingtest.Without("precharge.timeout", func(s *site.Site) { s.Precharge.Timeout = quantity.Entered[quantity.Seconds]{} }, []string{"shorted-bus", "timeout"}),
+		findingtest.Without("precharge.contactor", func(s *site.Site) { s.Precharge.Contactor = nil }, []string{"breaking"}),
+		findingtest.Without("a bleeder, which may be absent", func(s *site.Site) { s.Bus.Bleeders = nil }, nil),
+		findingtest.Without("the auxiliary supply, which may be absent", func(s *site.Site) { s.Bus.Auxiliary = nil }, nil),
+		findingtest.Without("the filter, which may be absent", func(s *site.Site) { v := *s.Converter; v.Filter = nil; s.Converter = &v }, nil),
+		findingtest.Without("the overload, beside a pulse curve", func(s *site.Site) { s.Precharge.Overload = nil }, nil),
+	})
 }
 
 // One attempt starts at ambient, so it needs no thermal model.
 func TestShortedBusOfOneAttemptNeedsNoThermalModel(t *testing.T) {
 	s := findingtest.Load(t, "wagtail")
 	s.Precharge.Attempts, s.Precharge.Thermal = 1, nil
-	if f := find(t, s, "precharge.shorted-bus"); f.Verdict == finding.Undecided {
+	if f := findingtest.Find(t, Findings(s), "precharge.shorted-bus", ""); f.Verdict == finding.Undecided {
 		t.Errorf("shorted-bus of one attempt = undecided (%v), want a verdict", f.Because)
 	}
 }
@@ -94,7 +77,7 @@ func TestEveryKindOfSourceAndOptionalTable(t *testing.T) {
 			s := findingtest.Load(t, "wagtail")
 			s.Source.Kind = kind
 			if kind == site.Supercapacitor {
-				set(&s.Source.Capacitance, 14)
+				findingtest.Set(&s.Source.Capacitance, 14)
 			}
 			name := string(kind) + " without"
 			for i, table := range tables {
@@ -123,24 +106,24 @@ func TestEveryKindOfSourceAndOptionalTable(t *testing.T) {
 func TestOddChargesAreExplained(t *testing.T) {
 	auxiliary := func(s *site.Site, power, on, off float64) {
 		a := *s.Bus.Auxiliary
-		set(&a.Power, power)
-		set(&a.StartsAt, on)
-		set(&a.StopsAt, off)
+		findingtest.Set(&a.Power, power)
+		findingtest.Set(&a.StartsAt, on)
+		findingtest.Set(&a.StopsAt, off)
 		s.Bus.Auxiliary = &a
 	}
 	for name, change := range map[string]func(*site.Site){
-		"stalls at the equilibrium":     func(s *site.Site) { set(&s.Precharge.ClosingDifference, 5) },
-		"stalls at the divider":         func(s *site.Site) { s.Bus.Auxiliary = nil; set(&s.Precharge.ClosingDifference, 2) },
+		"stalls at the equilibrium":     func(s *site.Site) { findingtest.Set(&s.Precharge.ClosingDifference, 5) },
+		"stalls at the divider":         func(s *site.Site) { s.Bus.Auxiliary = nil; findingtest.Set(&s.Precharge.ClosingDifference, 2) },
 		"hiccups":                       func(s *site.Site) { auxiliary(s, 2500, 350, 300) },
-		"is pulled down to equilibrium": func(s *site.Site) { auxiliary(s, 300, 800, 300); set(&s.Precharge.ClosingDifference, 10) },
+		"is pulled down to equilibrium": func(s *site.Site) { auxiliary(s, 300, 800, 300); findingtest.Set(&s.Precharge.ClosingDifference, 10) },
 		"closes before the supply":      func(s *site.Site) { auxiliary(s, 40, 815, 800) },
-		"runs out of time":              func(s *site.Site) { auxiliary(s, 2500, 350, 300); set(&s.Precharge.Timeout, 0.1) },
-		"is over at once":               func(s *site.Site) { set(&s.Precharge.ClosingDifference, 820) },
-		"no permitted temperature left": func(s *site.Site) { set(&s.Precharge.Ambient, 275) },
+		"runs out of time":              func(s *site.Site) { auxiliary(s, 2500, 350, 300); findingtest.Set(&s.Precharge.Timeout, 0.1) },
+		"is over at once":               func(s *site.Site) { findingtest.Set(&s.Precharge.ClosingDifference, 820) },
+		"no permitted temperature left": func(s *site.Site) { findingtest.Set(&s.Precharge.Ambient, 275) },
 		"continuous rating": func(s *site.Site) {
-			set(&s.Precharge.RatedPower, 20e3)
+			findingtest.Set(&s.Precharge.RatedPower, 20e3)
 			v := *s.Precharge.Thermal
-			set(&v.Resistance, 0.001)
+			findingtest.Set(&v.Resistance, 0.001)
 			s.Precharge.Thermal = &v
 		},
 		"pulse on a point of the curve": func(s *site.Site) {

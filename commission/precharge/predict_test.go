@@ -2,12 +2,12 @@ package precharge
 
 import (
 	"math"
+	"math/rand/v2"
 	"testing"
 	"time"
 
 	"chargehand/commission/finding/findingtest"
 	"chargehand/commission/quantity"
-	"math/rand/v2"
 )
 
 func TestPredictionOfTheExample(t *testing.T) {
@@ -19,7 +19,7 @@ func TestPredictionOfTheExample(t *testing.T) {
 		got  quantity.Spread[quantity.Seconds]
 		id   string
 	}{{"TimeConstant", p.TimeConstant, "precharge.time-constant"}} {
-		want := find(t, s, c.id).Value
+		want := findingtest.Find(t, Findings(s), c.id, "").Value
 		if float64(c.got.Low) != want.Low || float64(c.got.Nominal) != want.Nominal || float64(c.got.High) != want.High {
 			t.Errorf("%s = %v, want %v of %s", c.name, c.got, want, c.id)
 		}

@@ -12,10 +12,6 @@ import (
 	"chargehand/commission/site"
 )
 
-func set[Q quantity.Scalar](e *quantity.Entered[Q], v float64) {
-	e.Spread, e.Text = quantity.Exactly(Q(v)), "typed"
-}
-
 // put puts one change of a remedy into a copy of the site.
 func put(t *testing.T, s site.Site, c finding.Change) site.Site {
 	t.Helper()
@@ -26,23 +22,12 @@ func put(t *testing.T, s site.Site, c finding.Change) site.Site {
 	return changed
 }
 
-func find(t *testing.T, s site.Site, id string) finding.Finding {
-	t.Helper()
-	for _, f := range Findings(s) {
-		if f.ID == id {
-			return f
-		}
-	}
-	t.Fatalf("no finding %s", id)
-	return finding.Finding{}
-}
-
 // Each remedy is put into the site and passes; where it is one value, one per cent less of the change does not.
 func TestRemediesPassAndLessDoesNot(t *testing.T) {
 	pulses := func(s *site.Site, energies ...float64) {
 		s.Precharge.Pulse = append([]site.PulsePoint(nil), s.Precharge.Pulse...)
 		for i, e := range energies {
-			set(&s.Precharge.Pulse[i].Energy, e)
+			findingtest.Set(&s.Precharge.Pulse[i].Energy, e)
 		}
 	}
 	for _, c := range []struct {
@@ -50,47 +35,47 @@ func TestRemediesPassAndLessDoesNot(t *testing.T) {
 		change   func(*site.Site)
 		keys     string // of the remedy
 	}{
-		{"time-out too short", "precharge.timeout", func(s *site.Site) { set(&s.Precharge.Timeout, 6) }, keyTimeout},
-		{"time-out too long", "precharge.timeout", func(s *site.Site) { set(&s.Precharge.Timeout, 20) }, keyTimeout},
-		{"time-out a little long", "precharge.shorted-bus", func(s *site.Site) { set(&s.Precharge.Timeout, 12) }, keyTimeout},
+		{"time-out too short", "precharge.timeout", func(s *site.Site) { findingtest.Set(&s.Precharge.Timeout, 6) }, keyTimeout},
+		{"time-out too long", "precharge.timeout", func(s *site.Site) { findingtest.Set(&s.Precharge.Timeout, 20) }, keyTimeout},
+		{"time-out a little long", "precharge.shorted-bus", func(s *site.Site) { findingtest.Set(&s.Precharge.Timeout, 12) }, keyTimeout},
 		{"resistor too small for the time-out", "precharge.shorted-bus", func(s *site.Site) { *s = withResistance(*s, 60) }, keyResistance},
 		{"resistor too weak for the pulse", "precharge.pulse", func(s *site.Site) {
 			*s = withResistance(*s, 30)
 			pulses(s, 3e3, 8e3, 90e3, 200e3)
 		}, keyResistance},
-		{"resistor too large", "precharge.timeout", func(s *site.Site) { *s = withResistance(*s, 180); set(&s.Precharge.Timeout, 12) }, ""},
-		{"closing difference too small", "precharge.stall", func(s *site.Site) { set(&s.Precharge.ClosingDifference, 17) }, "precharge.closing_difference"},
+		{"resistor too large", "precharge.timeout", func(s *site.Site) { *s = withResistance(*s, 180); findingtest.Set(&s.Precharge.Timeout, 12) }, ""},
+		{"closing difference too small", "precharge.stall", func(s *site.Site) { findingtest.Set(&s.Precharge.ClosingDifference, 17) }, "precharge.closing_difference"},
 		{"supply too heavy", "precharge.stall", func(s *site.Site) {
 			auxiliary := *s.Bus.Auxiliary
-			set(&auxiliary.Power, 2500)
+			findingtest.Set(&auxiliary.Power, 2500)
 			s.Bus.Auxiliary = &auxiliary
 		}, "bus.auxiliary.power"},
 		{"attempts too soon", "precharge.repeat", func(s *site.Site) {
 			s.Precharge.Attempts = 60
-			set(&s.Precharge.Interval, 9)
+			findingtest.Set(&s.Precharge.Interval, 9)
 			thermal := *s.Precharge.Thermal
-			set(&thermal.MaxTemperature, 110)
+			findingtest.Set(&thermal.MaxTemperature, 110)
 			s.Precharge.Thermal = &thermal
 		}, "precharge.interval"},
 		{"attempts too soon without thermal model", "precharge.repeat", func(s *site.Site) {
 			s.Precharge.Thermal = nil
-			set(&s.Precharge.Interval, 3)
+			findingtest.Set(&s.Precharge.Interval, 3)
 		}, "precharge.interval"},
-		{"no cool-down", "precharge.wait", func(s *site.Site) { set(&s.Precharge.Interval, 4) }, "precharge.interval"},
+		{"no cool-down", "precharge.wait", func(s *site.Site) { findingtest.Set(&s.Precharge.Interval, 4) }, "precharge.interval"},
 		{"contactor too weak", "precharge.breaking", func(s *site.Site) {
 			contactor := *s.Precharge.Contactor
-			set(&contactor.BreakingCurrent, 5)
+			findingtest.Set(&contactor.BreakingCurrent, 5)
 			s.Precharge.Contactor = &contactor
 		}, "precharge.contactor.breaking_current"},
 		{"contactor for too little voltage", "precharge.breaking", func(s *site.Site) {
 			contactor := *s.Precharge.Contactor
-			set(&contactor.Voltage, 800)
+			findingtest.Set(&contactor.Voltage, 800)
 			s.Precharge.Contactor = &contactor
 		}, "precharge.contactor.voltage"},
 	} {
 		s := findingtest.Load(t, "wagtail")
 		c.change(&s)
-		f := find(t, s, c.id)
+		f := findingtest.Find(t, Findings(s), c.id, "")
 		if f.Verdict == finding.Pass {
 			t.Errorf("%s: %s passes already, want it to fail", c.name, c.id)
 			continue
@@ -103,7 +88,7 @@ func TestRemediesPassAndLessDoesNot(t *testing.T) {
 		for _, change := range f.Changes {
 			mended = put(t, mended, change)
 		}
-		if g := find(t, mended, c.id); g.Verdict != finding.Pass {
+		if g := findingtest.Find(t, Findings(mended), c.id, ""); g.Verdict != finding.Pass {
 			t.Errorf("%s: with %q %s = %s (%v), want pass", c.name, f.Remedy, c.id, g.Verdict, g.Because)
 		}
 		if len(f.Changes) != 1 {
@@ -123,7 +108,7 @@ func TestRemediesPassAndLessDoesNot(t *testing.T) {
 
 func passes(t *testing.T, s site.Site, ids []string) bool {
 	for _, id := range ids {
-		if find(t, s, id).Verdict != finding.Pass {
+		if findingtest.Find(t, Findings(s), id, "").Verdict != finding.Pass {
 			return false
 		}
 	}
@@ -133,12 +118,12 @@ func passes(t *testing.T, s site.Site, ids []string) bool {
 // The preferred value named in a remedy passes pulse, shorted bus and time-out together.
 func TestPreferredResistorMeetsAllThree(t *testing.T) {
 	s := withResistance(findingtest.Load(t, "wagtail"), 60)
-	f := find(t, s, "precharge.shorted-bus")
+	f := findingtest.Find(t, Findings(s), "precharge.shorted-bus", "")
 	if !strings.Contains(f.Remedy, "preferred value 100.0 Ω (IEC 60063 E24)") {
 		t.Fatalf("remedy of 60 Ω = %q, want the preferred value 100 Ω", f.Remedy)
 	}
 	for _, id := range []string{"precharge.pulse", "precharge.shorted-bus", "precharge.timeout"} {
-		if g := find(t, withResistance(s, 100), id); g.Verdict != finding.Pass {
+		if g := findingtest.Find(t, Findings(withResistance(s, 100)), id, ""); g.Verdict != finding.Pass {
 			t.Errorf("%s with 100 Ω = %s, want pass", id, g.Verdict)
 		}
 	}
@@ -146,7 +131,7 @@ func TestPreferredResistorMeetsAllThree(t *testing.T) {
 
 // ouzel has no admissible time-out at all, and no resistor of that rating: what excludes what, and by how much.
 func TestExclusionIsSaid(t *testing.T) {
-	f := find(t, findingtest.Load(t, "ouzel"), "precharge.timeout")
+	f := findingtest.Find(t, Findings(findingtest.Load(t, "ouzel")), "precharge.timeout", "")
 	for _, want := range []string{"19.00 s", "5.803 s", "13.20 s"} {
 		if want == "5.803 s" {
 			want = "5.80" // 7.25386 s ⁄ 1.25

@@ -2,7 +2,6 @@ package source
 
 import (
 	"math"
-	"slices"
 	"testing"
 
 	"chargehand/commission/finding"
@@ -10,21 +9,6 @@ import (
 	"chargehand/commission/quantity"
 	"chargehand/commission/site"
 )
-
-func set[Q quantity.Scalar](e *quantity.Entered[Q], v float64) {
-	e.Spread, e.Text = quantity.Exactly(Q(v)), "typed"
-}
-
-func find(t *testing.T, s site.Site, id string) finding.Finding {
-	t.Helper()
-	for _, f := range Findings(s) {
-		if f.ID == id {
-			return f
-		}
-	}
-	t.Fatalf("no finding %s", id)
-	return finding.Finding{}
-}
 
 func withFuse(s site.Site, change func(*site.Fuse)) site.Site {
 	f := *s.Source.Fuse
@@ -44,15 +28,15 @@ func put(t *testing.T, s site.Site, c finding.Change) site.Site {
 	t.Helper()
 	switch c.Key {
 	case "source.fuse.breaking_capacity":
-		return withFuse(s, func(f *site.Fuse) { set(&f.BreakingCapacity, c.Value) })
+		return withFuse(s, func(f *site.Fuse) { findingtest.Set(&f.BreakingCapacity, c.Value) })
 	case "source.fuse.voltage":
-		return withFuse(s, func(f *site.Fuse) { set(&f.Voltage, c.Value) })
+		return withFuse(s, func(f *site.Fuse) { findingtest.Set(&f.Voltage, c.Value) })
 	case "source.switch.poles":
 		return withSwitch(s, func(v *site.Switch) { v.Poles = int(c.Value) })
 	case "source.switch.voltage":
-		return withSwitch(s, func(v *site.Switch) { set(&v.Voltage, c.Value) })
+		return withSwitch(s, func(v *site.Switch) { findingtest.Set(&v.Voltage, c.Value) })
 	case "source.switch.breaking_current":
-		return withSwitch(s, func(v *site.Switch) { set(&v.BreakingCurrent, c.Value) })
+		return withSwitch(s, func(v *site.Switch) { findingtest.Set(&v.BreakingCurrent, c.Value) })
 	}
 	t.Fatalf("remedy changes %s, which no finding of this family asks for", c.Key)
 	return s
@@ -80,18 +64,18 @@ func TestRemediesPassAndLessDoesNot(t *testing.T) {
 		name, id string
 		site     site.Site
 	}{
-		{"breaking capacity", "source.short-circuit", withFuse(whole, func(f *site.Fuse) { set(&f.BreakingCapacity, 12e3) })},
-		{"fuse voltage", "source.short-circuit", withFuse(whole, func(f *site.Fuse) { set(&f.Voltage, 800) })},
+		{"breaking capacity", "source.short-circuit", withFuse(whole, func(f *site.Fuse) { findingtest.Set(&f.BreakingCapacity, 12e3) })},
+		{"fuse voltage", "source.short-circuit", withFuse(whole, func(f *site.Fuse) { findingtest.Set(&f.Voltage, 800) })},
 		{"one pole", "source.isolation", withSwitch(whole, func(v *site.Switch) { v.Poles = 1 })},
-		{"switch voltage", "source.isolation", withSwitch(whole, func(v *site.Switch) { set(&v.Voltage, 750) })},
-		{"switch current", "source.isolation", withSwitch(whole, func(v *site.Switch) { set(&v.BreakingCurrent, 300) })},
+		{"switch voltage", "source.isolation", withSwitch(whole, func(v *site.Switch) { findingtest.Set(&v.Voltage, 750) })},
+		{"switch current", "source.isolation", withSwitch(whole, func(v *site.Switch) { findingtest.Set(&v.BreakingCurrent, 300) })},
 		{"all of it", "source.isolation", withSwitch(whole, func(v *site.Switch) {
 			v.Poles = 1
-			set(&v.Voltage, 750)
-			set(&v.BreakingCurrent, 300)
+			findingtest.Set(&v.Voltage, 750)
+			findingtest.Set(&v.BreakingCurrent, 300)
 		})},
 	} {
-		f := find(t, c.site, c.id)
+		f := findingtest.Find(t, Findings(c.site), c.id, "")
 		if f.Verdict != finding.Fail || len(f.Changes) == 0 {
 			t.Errorf("%s: %s = %s, remedy %q, want fail and a remedy", c.name, c.id, f.Verdict, f.Remedy)
 			continue
@@ -100,12 +84,12 @@ func TestRemediesPassAndLessDoesNot(t *testing.T) {
 		for _, change := range f.Changes {
 			mended = put(t, mended, change)
 		}
-		if g := find(t, mended, c.id); g.Verdict != finding.Pass {
+		if g := findingtest.Find(t, Findings(mended), c.id, ""); g.Verdict != finding.Pass {
 			t.Errorf("%s: with %q %s = %s (%v), want pass", c.name, f.Remedy, c.id, g.Verdict, g.Because)
 		}
 		less := f.Changes[0]
 		less.Value -= 0.01 * (less.Value - less.Was)
-		if g := find(t, put(t, c.site, less), c.id); g.Verdict == finding.Pass {
+		if g := findingtest.Find(t, Findings(put(t, c.site, less)), c.id, ""); g.Verdict == finding.Pass {
 			t.Errorf("%s: one per cent less than %q passes too", c.name, f.Remedy)
 		}
 	}
@@ -113,7 +97,7 @@ func TestRemediesPassAndLessDoesNot(t *testing.T) {
 
 // The verdict of ouzel, which the expected findings leave out: one pole, and less than the current at full power.
 func TestIsolationOfASinglePoleFails(t *testing.T) {
-	f := find(t, findingtest.Load(t, "ouzel"), "source.isolation")
+	f := findingtest.Find(t, Findings(findingtest.Load(t, "ouzel")), "source.isolation", "")
 	if f.Verdict != finding.Fail || f.Value.Nominal != 1 || *f.Limit.Low != 2 || f.Margin != -1 {
 		t.Errorf("source.isolation = %s, %v of %v poles, margin %v, want fail, 1 of 2, −1", f.Verdict, f.Value.Nominal, *f.Limit.Low, f.Margin)
 	}
@@ -123,26 +107,12 @@ func TestIsolationOfASinglePoleFails(t *testing.T) {
 }
 
 func TestFindingsNameTheKeysThatAreMissing(t *testing.T) {
-	for _, c := range []struct {
-		key       string
-		take      func(*site.Site)
-		undecided []string
-	}{
-		{"source.fuse", func(s *site.Site) { s.Source.Fuse = nil }, []string{"source.short-circuit"}},
-		{"source.fuse.pre_arcing_i2t", func(s *site.Site) {
+	findingtest.NameWhatIsMissing(t, Findings, []findingtest.Absence{
+		findingtest.Without("source.fuse", func(s *site.Site) { s.Source.Fuse = nil }, []string{"short-circuit", "fault-energy"}),
+		findingtest.Without("source.fuse.pre_arcing_i2t", func(s *site.Site) {
 			*s = withFuse(*s, func(f *site.Fuse) { f.PreArcingI2t = quantity.Entered[quantity.CurrentTime2]{} })
-		}, []string{"source.fault-energy"}},
-		{"source.switch", func(s *site.Site) { s.Source.Switch = nil }, []string{"source.isolation"}},
-		{"converter.rated_power", func(s *site.Site) { s.Converter = nil }, []string{"source.isolation"}},
-	} {
-		s := findingtest.Load(t, "wagtail")
-		c.take(&s)
-		for _, f := range Findings(s) {
-			want := slices.Contains(c.undecided, f.ID)
-			if got := f.Verdict == finding.Undecided; want && (!got || !slices.Contains(f.Because, c.key)) {
-				t.Errorf("without %s: %s = %s (%v), want undecided by that key", c.key, f.ID, f.Verdict, f.Because)
-			}
-		}
-		findingtest.AreOrdered(t, "without "+c.key, Findings(s))
-	}
+		}, []string{"fault-energy"}),
+		findingtest.Without("source.switch", func(s *site.Site) { s.Source.Switch = nil }, []string{"isolation"}),
+		findingtest.Without("converter.rated_power", func(s *site.Site) { s.Converter = nil }, []string{"isolation"}),
+	})
 }
