@@ -79,17 +79,31 @@ func (w working) series(name, alone string, c float64) {
 	w.Step(name, fmt.Sprintf("%[1]s*C_s/(%[1]s + C_s)", alone), "F", c)
 }
 
-// peak adds the peak of the main loop as "i".
-func (w working) peak(l Loop) {
+// symbols are the names of one loop's quantities in a working.
+type symbols struct{ resistance, inductance, capacitance, damping, resonance, peakTime, peak string }
+
+var (
+	mainLoop   = symbols{"R", "L", "C", "alpha", "omega_0", "t_p", "i"}
+	filterLoop = symbols{"R_f", "L_f", "C__f", "alpha_f", "omega_f", "t_f", "i_f"}
+)
+
+// peak adds the peak of a loop.
+func (w working) peak(l Loop, n symbols) {
 	if l.Inductance <= 0 {
-		w.Step("i", "u/R", "A", float64(l.PeakCurrent()))
+		w.Step(n.peak, "u/"+n.resistance, "A", float64(l.PeakCurrent()))
 		return
 	}
+	alpha, square := w.rates(l, n)
+	w.Given(n.peakTime, peakTimeIn(math.Sqrt(math.Abs(square)), alpha, square), "s", float64(l.PeakTime()))
+	w.Step(n.peak, fmt.Sprintf("u*sqrt(%s/%s)*exp(-%s*%s)", n.capacitance, n.inductance, n.damping, n.peakTime), "A", float64(l.PeakCurrent()))
+}
+
+// rates adds damping and resonance of a loop.
+func (w working) rates(l Loop, n symbols) (alpha, square float64) {
 	alpha, resonance2, square := l.rates()
-	w.Step("alpha", "R/(2*L)", "1/s", alpha)
-	w.Step("omega_0", "1/sqrt(L*C)", "1/s", math.Sqrt(resonance2))
-	w.Given("t_p", peakTimeIn(math.Sqrt(math.Abs(square)), alpha, square), "s", float64(l.PeakTime()))
-	w.Step("i", "u*sqrt(C/L)*exp(-alpha*t_p)", "A", float64(l.PeakCurrent()))
+	w.Step(n.damping, fmt.Sprintf("%s/(2*%s)", n.resistance, n.inductance), "1/s", alpha)
+	w.Step(n.resonance, fmt.Sprintf("1/sqrt(%s*%s)", n.inductance, n.capacitance), "1/s", math.Sqrt(resonance2))
+	return alpha, square
 }
 
 func peakTimeIn(omega, alpha, square float64) string {
@@ -120,12 +134,7 @@ func (w working) alone(l Loop, hasMain bool) {
 	if hasMain {
 		capacitance = "C_f"
 	}
-	name := "C__f"
-	if w.x[axisSource] > 0 {
-		w.Step(name, fmt.Sprintf("%[1]s*C_s/(%[1]s + C_s)", capacitance), "F", float64(l.Capacitance))
-	} else {
-		w.Step(name, capacitance, "F", float64(l.Capacitance))
-	}
+	w.series(filterLoop.capacitance, capacitance, float64(l.Capacitance))
 }
 
 func (a *assessment) explainInrush() *finding.Explanation {
@@ -139,27 +148,14 @@ func (a *assessment) explainInrush() *finding.Explanation {
 func (w working) loops(u quantity.Voltage, larger float64) {
 	main := w.a.main(w.x, u)
 	w.main(main)
-	w.peak(main)
+	w.peak(main, mainLoop)
 	if w.a.filter == nil {
 		return
 	}
 	alone := w.a.alone(w.x, u)
 	w.alone(alone, true)
-	w.filterPeak(alone)
+	w.peak(alone, filterLoop)
 	w.Step("i_max", "max(i, i_f)", "A", larger)
-}
-
-// filterPeak adds the peak of the filter's loop as "i_f".
-func (w working) filterPeak(l Loop) {
-	if l.Inductance <= 0 {
-		w.Step("i_f", "u/R_f", "A", float64(l.PeakCurrent()))
-		return
-	}
-	alpha, resonance2, square := l.rates()
-	w.Step("alpha_f", "R_f/(2*L_f)", "1/s", alpha)
-	w.Step("omega_f", "1/sqrt(L_f*C__f)", "1/s", math.Sqrt(resonance2))
-	w.Given("t_f", peakTimeIn(math.Sqrt(math.Abs(square)), alpha, square), "s", float64(l.PeakTime()))
-	w.Step("i_f", "u*sqrt(C__f/L_f)*exp(-alpha_f*t_f)", "A", float64(l.PeakCurrent()))
 }
 
 func (a *assessment) explainFilterInrush() *finding.Explanation {
@@ -167,19 +163,17 @@ func (a *assessment) explainFilterInrush() *finding.Explanation {
 	w.whole()
 	l := a.alone(w.x, a.emf)
 	w.alone(l, false)
-	w.filterPeak(l)
+	w.peak(l, filterLoop)
 	return w.over(ofFilterSwitched)
 }
 
 // swing adds k, by which the link ends above what was missing.
 func (w working) swing(l Loop) {
-	alpha, resonance2, square := l.rates()
-	if l.Inductance <= 0 || square <= 0 {
+	if _, _, square := l.rates(); l.Inductance <= 0 || square <= 0 {
 		w.Step("k", "0", "1", 0)
 		return
 	}
-	w.Step("alpha", "R/(2*L)", "1/s", alpha)
-	w.Step("omega_0", "1/sqrt(L*C)", "1/s", math.Sqrt(resonance2))
+	_, square := w.rates(l, mainLoop)
 	w.Step("omega_d", "sqrt(omega_0^2 - alpha^2)", "1/s", math.Sqrt(square))
 	w.Step("k", "exp(-alpha*pi/omega_d)", "1", float64(l.Beyond()/l.Voltage))
 }

@@ -16,90 +16,102 @@ type charged struct {
 	hiccup                            bool
 }
 
-// simulate runs Runge-Kutta of fourth order in steps of a two-thousandth of R·C until stop, at most to the end. The supply starts at
-// V_on and stops at V_off; the steps on which it does are cut by halving.
-func simulate(c Circuit, end float64, stop func(t, e, v float64) bool) charged {
-	type state struct{ e, v, r, b, l, q float64 }
-	r, rb := float64(c.Resistor+c.Series), float64(c.Bleeder)
-	rate := func(s state, on bool) state {
-		i := math.Max(0, (s.e-float64(c.DiodeDrop)-s.v)/r)
-		d := state{r: i*i*r + i*float64(c.DiodeDrop), q: i}
-		drain := 0.0
-		if rb > 0 {
-			drain, d.b = s.v/rb, s.v*s.v/rb
-		}
-		if on {
-			drain, d.l = drain+float64(c.Auxiliary)/s.v, float64(c.Auxiliary)
-		}
-		d.v = (i - drain) / float64(c.Capacitance)
-		if c.Source > 0 {
-			d.e = -i / float64(c.Source)
-		}
-		return d
+// state is a charge at one instant: source and link voltage, energy in resistors, bleeder and supply, and charge.
+type state struct{ e, v, r, b, l, q float64 }
+
+func (s state) plus(k state, h float64) state {
+	return state{s.e + h*k.e, s.v + h*k.v, s.r + h*k.r, s.b + h*k.b, s.l + h*k.l, s.q + h*k.q}
+}
+
+// stateRate is how fast everything changes, the supply on or off.
+func (c Circuit) stateRate(s state, on bool) state {
+	r := float64(c.Resistor + c.Series)
+	i := math.Max(0, (s.e-float64(c.DiodeDrop)-s.v)/r)
+	d := state{r: i*i*r + i*float64(c.DiodeDrop), q: i}
+	drain := 0.0
+	if rb := float64(c.Bleeder); rb > 0 {
+		drain, d.b = s.v/rb, s.v*s.v/rb
 	}
-	plus := func(s, k state, h float64) state {
-		return state{s.e + h*k.e, s.v + h*k.v, s.r + h*k.r, s.b + h*k.b, s.l + h*k.l, s.q + h*k.q}
+	if on {
+		drain, d.l = drain+float64(c.Auxiliary)/s.v, float64(c.Auxiliary)
 	}
-	step := func(s state, on bool, h float64) state {
-		k1 := rate(s, on)
-		k2 := rate(plus(s, k1, h/2), on)
-		k3 := rate(plus(s, k2, h/2), on)
-		k4 := rate(plus(s, k3, h), on)
-		for _, k := range []state{k2, k2, k3, k3, k4} {
-			k1 = plus(k1, k, 1)
+	d.v = (i - drain) / float64(c.Capacitance)
+	if c.Source > 0 {
+		d.e = -i / float64(c.Source)
+	}
+	return d
+}
+
+// stateAfter is one step of Runge-Kutta of fourth order.
+func (c Circuit) stateAfter(s state, on bool, h float64) state {
+	k1 := c.stateRate(s, on)
+	k2 := c.stateRate(s.plus(k1, h/2), on)
+	k3 := c.stateRate(s.plus(k2, h/2), on)
+	k4 := c.stateRate(s.plus(k3, h), on)
+	for _, k := range []state{k2, k2, k3, k3, k4} {
+		k1 = k1.plus(k, 1)
+	}
+	return s.plus(k1, h/6)
+}
+
+// cut is the part of a step after which it is done, by halving.
+func (c Circuit) cut(s state, on bool, h float64, done func(state) bool) float64 {
+	low, high := 0.0, h
+	for range 60 {
+		if m := (low + high) / 2; done(c.stateAfter(s, on, m)) {
+			high = m
+		} else {
+			low = m
 		}
-		return plus(s, k1, h/6)
 	}
-	cut := func(s state, on bool, h float64, done func(t float64, s state) bool, t float64) float64 {
-		low, high := 0.0, h
-		for range 60 {
-			if m := (low + high) / 2; done(t+m, step(s, on, m)) {
-				high = m
-			} else {
-				low = m
-			}
-		}
-		return high
-	}
+	return high
+}
+
+// simulate goes in steps of a two-thousandth of R·C until stop, at most to the end. The supply starts at V_on and stops at
+// V_off; the steps on which it does are cut by halving.
+func simulate(c Circuit, end float64, stop func(e, v float64) bool) charged {
 	s := state{e: float64(c.EMF), v: float64(c.Start)}
 	on, out := c.Auxiliary > 0 && c.Start >= c.StartsAt, charged{}
-	h := r * float64(c.Capacitance) / 2000
-	source := 0.0
-	for t := 0.0; t < end && !(stop != nil && stop(t, s.e, s.v)); {
-		take := math.Min(h, end-t)
-		next := step(s, on, take)
-		flips := func(_ float64, x state) bool {
-			return c.Auxiliary > 0 && (!on && x.v >= float64(c.StartsAt) || on && x.v <= float64(c.StopsAt))
+	flips := func(x state) bool {
+		return c.Auxiliary > 0 && (!on && x.v >= float64(c.StartsAt) || on && x.v <= float64(c.StopsAt))
+	}
+	stops := func(x state) bool { return stop != nil && stop(x.e, x.v) }
+	h := float64(c.Resistor+c.Series) * float64(c.Capacitance) / 2000
+	for out.t < end && !stops(s) {
+		take := math.Min(h, end-out.t)
+		next := c.stateAfter(s, on, take)
+		flipped := flips(next)
+		if flipped {
+			take = c.cut(s, on, take, flips)
+			next = c.stateAfter(s, on, take)
 		}
-		stops := func(t float64, x state) bool { return stop != nil && stop(t, x.e, x.v) }
-		flipped := false
-		if flips(t, next) {
-			take, flipped = cut(s, on, take, flips, t), true
-			next = step(s, on, take)
+		if stops(next) {
+			take = c.cut(s, on, take, stops)
+			next, flipped = c.stateAfter(s, on, take), false
 		}
-		if stops(t+take, next) {
-			take = cut(s, on, take, stops, t)
-			next, flipped = step(s, on, take), false
-		}
-		if c.Source == 0 {
-			source += float64(c.EMF) * (next.q - s.q)
-		}
-		s, t = next, t+take
+		s, out.t = next, out.t+take
 		if flipped {
 			out.hiccup = out.hiccup || on
 			on = !on
 		}
-		out.t = t
 	}
-	stored := func(cap, from, to float64) float64 { return cap * (to - from) * (to + from) / 2 }
+	out.account(c, s)
+	return out
+}
+
+// account adds up where the energy went.
+func (out *charged) account(c Circuit, s state) {
+	stored := func(cap quantity.Capacitance, from, to float64) float64 {
+		return float64(cap) * (to - from) * (to + from) / 2
+	}
+	out.fromSource = float64(c.EMF) * s.q
 	if c.Source > 0 {
-		source = stored(float64(c.Source), s.e, float64(c.EMF))
+		out.fromSource = stored(c.Source, s.e, float64(c.EMF))
 	}
 	out.e, out.v, out.resistors, out.bleeder, out.load, out.charge = s.e, s.v, s.r, s.b, s.l, s.q
-	out.pre = (s.r - s.q*float64(c.DiodeDrop)) * float64(c.Resistor) / r
-	out.fromSource, out.storedLink = source, stored(float64(c.Capacitance), float64(c.Start), s.v)
-	out.unbalance = (source - out.storedLink - s.r - s.b - s.l) / source
-	return out
+	out.pre = (s.r - s.q*float64(c.DiodeDrop)) * float64(c.Resistor) / float64(c.Resistor+c.Series)
+	out.storedLink = stored(c.Capacitance, float64(c.Start), s.v)
+	out.unbalance = (out.fromSource - out.storedLink - s.r - s.b - s.l) / out.fromSource
 }
 
 var ferry = Circuit{EMF: 821.7, Resistor: 100, Series: 0.063, Capacitance: 12.5e-3, Bleeder: 22000, Auxiliary: 40, StartsAt: 350, StopsAt: 300}
@@ -128,7 +140,7 @@ func TestChargeAgreesWithIntegrationAndKeepsItsEnergy(t *testing.T) {
 		{"supercapacitor with bleeder", with(ferry, func(c *Circuit) { c.Auxiliary, c.Source = 0, 0.8 }), 20},
 		{"supercapacitor with bleeder and supply", with(ferry, func(c *Circuit) { c.Source = 14 }), 25},
 	} {
-		want := simulate(c.Circuit, 60, func(_, e, v float64) bool { return e-v <= float64(c.difference) })
+		want := simulate(c.Circuit, 60, func(e, v float64) bool { return e-v <= float64(c.difference) })
 		if math.Abs(want.unbalance) > 1e-9 {
 			t.Errorf("%s: energy not accounted for = %v of what the source gave, want 0", c.name, want.unbalance)
 		}
@@ -193,7 +205,7 @@ func TestSettledAgreesWithIntegration(t *testing.T) {
 func TestSupercapacitorUnderLoad(t *testing.T) {
 	slow := Circuit{EMF: 540, Resistor: 47, Series: 0.025, Capacitance: 12e-3, Bleeder: 8000, Source: 1.5}
 	highest := 0.0
-	simulate(slow, 10, func(_, _, v float64) bool { highest = math.Max(highest, v); return false })
+	simulate(slow, 10, func(_, v float64) bool { highest = math.Max(highest, v); return false })
 	if got, how := slow.Settled(); how != AtFinal || math.Abs(float64(got)-highest) > 1e-4*highest {
 		t.Errorf("Settled() = %v, %v, want the highest voltage %v V by integration", got, how, highest)
 	}
