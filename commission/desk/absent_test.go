@@ -108,6 +108,7 @@ func TestMinimalSite(t *testing.T) {
 // Every key and every table of the three sites is taken away by itself, as far as the reader allows, and every kind of
 // source is tried.
 func TestAnythingMayBeAbsent(t *testing.T) {
+	t.Parallel()
 	tried := 0
 	for _, name := range findingtest.Sites {
 		original := string(findingtest.Text(t, name))
@@ -157,6 +158,7 @@ var entry = regexp.MustCompile(`[a-z_]+ = ("[^"]*"|[0-9.]+), |, [a-z_]+ = ("[^"]
 
 // Sizes that no plant has: every number of a site by itself far larger, far smaller, and 0, as far as the reader allows.
 func TestWildNumbersStaySound(t *testing.T) {
+	t.Parallel()
 	tried := 0
 	for _, name := range findingtest.Sites[:2] {
 		original := string(findingtest.Text(t, name))
