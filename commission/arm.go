@@ -272,19 +272,13 @@ func (rec *recorder) riseReading() []record.Reading {
 	return []record.Reading{fromCapture(rec.point, "rise", rec.rise.seen/float64(rec.rise.check.AtLeast), "1", 0)}
 }
 
-// settled are the device's readings at the last sample before the bypass closed or the pre-charge was opened: what
-// charge.difference holds against the instrument.
+// settled are the device's readings while the charge stood settled: what charge.difference holds against the instrument.
 func (r *Run) settled(rec *recorder, c capture.Capture) []record.Reading {
 	p, ok := r.state.Point("charge.difference")
 	if !ok {
 		return nil
 	}
-	last := -1
-	for i, s := range c.Samples {
-		if s.At > 0 && !isOn(c, s, signal.BypassClosed) && (c.Index(signal.PrechargeClosed) < 0 || isOn(c, s, signal.PrechargeClosed)) {
-			last = i
-		}
-	}
+	last := lastSettled(c)
 	if last < 0 {
 		return nil
 	}
@@ -295,6 +289,32 @@ func (r *Run) settled(rec *recorder, c capture.Capture) []record.Reading {
 		}
 	}
 	return readings
+}
+
+// reportLag is how long before its report a contact may have moved: a sample younger than that may show the closing itself.
+// Common practice for an auxiliary contact behind a register that is refreshed ten times a second.
+const reportLag = 300 * time.Millisecond
+
+// lastSettled is the last sample well before the bypass was reported closed or the pre-charge open; -1 where there is none.
+func lastSettled(c capture.Capture) int {
+	charging := func(s capture.Sample) bool {
+		return !isOn(c, s, signal.BypassClosed) && (c.Index(signal.PrechargeClosed) < 0 || isOn(c, s, signal.PrechargeClosed))
+	}
+	last := -1
+	for i, s := range c.Samples {
+		if s.At > 0 && charging(s) {
+			last = i
+		}
+	}
+	if last < 0 || last == len(c.Samples)-1 {
+		return last
+	}
+	for ended := c.Samples[last+1].At; last > 0 && ended-c.Samples[last].At < reportLag; last-- {
+		if c.Samples[last-1].At <= 0 {
+			return last
+		}
+	}
+	return last
 }
 
 func isOn(c capture.Capture, s capture.Sample, n signal.Name) bool {

@@ -68,6 +68,10 @@ func (m Model) typed(msg tea.KeyMsg) (Model, tea.Cmd) {
 	p.form, outcome = p.form.Update(msg)
 	switch outcome {
 	case form.Accepted:
+		if m.busy { // what is being written comes first, and nothing typed is lost
+			m.prompt = p.looked()
+			return m.refuse("still writing the record before; Enter again"), nil
+		}
 		m.prompt = nil
 		return p.submit(m, p.form)
 	case form.Left:

@@ -321,7 +321,7 @@ func (m Model) promptKeys() string {
 		pairs = append(pairs, m.theme.Pick("← →", "Left Right"), "choose")
 	}
 	if len(p.phrases) > 0 {
-		pairs = append(pairs, "Ctrl+N", "prepared text")
+		pairs = append(pairs, "Ctrl+N", "text")
 	}
 	if p.canFill() {
 		pairs = append(pairs, "Ctrl+T", "fill in")
