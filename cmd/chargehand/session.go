@@ -454,7 +454,7 @@ func (s *session) finish(ctx context.Context, a *app) ([]string, error) {
 		written = append(written, "signature  "+signature, "signed by  "+s.signer.Fingerprint())
 	}
 	pdf := strings.TrimSuffix(s.log, ".chlog") + ".pdf"
-	if err := a.writeReport(ctx, s.log, pdf, reportOptions{paper: "a4"}); err != nil {
+	if err := a.writeReport(ctx, s.log, pdf, reportOptions{paper: "a4", force: true}); err != nil {
 		return written, fmt.Errorf("write the report: %w", err)
 	}
 	return append(written, "report     "+pdf), nil

@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"strings"
 	"time"
 
 	"chargehand/commission"
@@ -103,18 +104,7 @@ func (r *rehearsal) steady(ctx context.Context) error {
 // charge arms the capture, has the pre-charge closed with the bypass withheld, opens it again at once where the rise is
 // missing, measures the settled difference, and releases the bypass.
 func (r *rehearsal) charge(ctx context.Context, p walk.Point) error {
-	if r.latest.State.CauseIsMissing() { // gone on with after an end in mid-charge
-		if err := r.submit(ctx, walk.EnterCause{Cause: "broken off: the program ended during the attempt"}); err != nil {
-			return err
-		}
-	}
-	if err := r.cool(ctx); err != nil {
-		return err
-	}
-	if err := r.arm(ctx, p); err != nil {
-		return err
-	}
-	if err := r.do(ctx, BypassWithhold, PrechargeClose); err != nil {
+	if err := r.attempt(ctx, p); err != nil {
 		return err
 	}
 	release := r.releaseAfter()
@@ -142,6 +132,34 @@ func (r *rehearsal) charge(ctx context.Context, p walk.Point) error {
 		return err
 	}
 	return r.untilCaptured(ctx, time.Minute)
+}
+
+// attempt begins a pre-charge with the bypass withheld: what the last one failed of is entered and the resistor has cooled.
+func (r *rehearsal) attempt(ctx context.Context, p walk.Point) error {
+	if r.latest.State.CauseIsMissing() {
+		if err := r.submit(ctx, walk.EnterCause{Cause: r.causeOfLast()}); err != nil {
+			return err
+		}
+	}
+	if err := r.cool(ctx); err != nil {
+		return err
+	}
+	if err := r.arm(ctx, p); err != nil {
+		return err
+	}
+	return r.do(ctx, BypassWithhold, PrechargeClose)
+}
+
+// causeOfLast is what the last attempt was found to fail of; without a finding it was broken off by the program's end.
+func (r *rehearsal) causeOfLast() string {
+	for _, id := range []string{"measured.precharge", "measured.closing"} {
+		for _, f := range r.latest.State.Measured(id) {
+			if f.Verdict == finding.Fail && len(f.Cause) > 0 {
+				return "rehearsed as found: " + f.Cause[0].ID + ", " + strings.Join(f.Cause[0].Evidence, "; ")
+			}
+		}
+	}
+	return "broken off: the program ended during the attempt"
 }
 
 // releaseAfter is how long the bypass is withheld so that the curve can be judged: seven time constants, but no longer than
@@ -267,13 +285,7 @@ func (r *rehearsal) voltage(ctx context.Context, p walk.Point) error {
 
 // timeOut withholds the bypass until the device gives up: an attempt of its own, so the resistor cools first.
 func (r *rehearsal) timeOut(ctx context.Context, p walk.Point) error {
-	if err := r.cool(ctx); err != nil {
-		return err
-	}
-	if err := r.arm(ctx, p); err != nil {
-		return err
-	}
-	if err := r.do(ctx, BypassWithhold, PrechargeClose); err != nil {
+	if err := r.attempt(ctx, p); err != nil {
 		return err
 	}
 	if err := r.hasten(ctx, "time-out", timeOutPace); err != nil {
