@@ -287,10 +287,10 @@ func (b *bench) done() capture.Capture {
 // charge pre-charges as an unattended rehearsal does; without withholding as a plant does by itself. lead is how long the
 // plant has been at rest before the command.
 func (b *bench) charge(withhold bool, lead time.Duration) capture.Capture {
-	b.run(max(lead-700*time.Millisecond, 0))
-	b.do(unattended.IsolatorClose)
 	watched := time.Duration(b.random.Float64() * float64(600*time.Millisecond))
-	b.run(700*time.Millisecond - watched)
+	b.run(max(lead-500*time.Millisecond-watched, 0))
+	b.do(unattended.IsolatorClose)
+	b.run(500 * time.Millisecond)
 	w := b.arm(capture.Precharge)
 	source, bus := b.shown(signal.SourceVoltage), b.shown(signal.BusVoltage)
 	low, high := b.site.Source.LowestRest(), b.site.Source.HighestRest()
@@ -361,14 +361,14 @@ func (b *bench) discharge() capture.Capture {
 	b.run(300 * time.Millisecond)
 	w := b.arm(capture.Discharge)
 	e := b.site.Bus.Error()
-	v := quantity.Voltage(b.shown(signal.BusVoltage))
+	v := quantity.Voltage(finite(b.shown(signal.BusVoltage)))
 	p := discharge.Predict(b.site, quantity.Spread[quantity.Voltage]{Low: max(v-e, 0), Nominal: v, High: v + e})
 	w.tau = time.Duration(finite(float64(p.TimeConstant.Nominal)) * float64(time.Second))
 	w.longest = time.Duration(1.5 * finite(float64(p.TimeToTouchSafe.High)) * float64(time.Second))
 	b.run(500 * time.Millisecond)
 	b.do(unattended.LoadOff)
 	b.do(unattended.EverythingOff)
-	b.run(w.longest + 20*w.tau/100 + 10*time.Second)
+	b.run(max(w.longest, 5*w.tau) + 10*time.Second)
 	return b.done()
 }
 
