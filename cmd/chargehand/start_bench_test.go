@@ -17,8 +17,8 @@ import (
 	"golang.org/x/sys/unix"
 )
 
-// terminal opens a pseudo-terminal of 140 by 40: the side that a person has, and the side that the program has.
-func terminal(b *testing.B) (ours, theirs *os.File) {
+// pseudoTerminal opens a pseudo-terminal of 140 by 40: the side that a person has, and the side that the program has.
+func pseudoTerminal(b *testing.B) (ours, theirs *os.File) {
 	b.Helper()
 	ours, err := os.OpenFile("/dev/ptmx", os.O_RDWR|syscall.O_NOCTTY, 0)
 	if err != nil {
@@ -53,7 +53,7 @@ func BenchmarkStart(b *testing.B) {
 	home := b.TempDir()
 	var screen, cpu, bare []time.Duration
 	for b.Loop() {
-		ours, theirs := terminal(b)
+		ours, theirs := pseudoTerminal(b)
 		cmd := exec.Command(program)
 		cmd.Stdin, cmd.Stdout, cmd.Stderr, cmd.Dir = theirs, theirs, theirs, home
 		cmd.Env = []string{"HOME=" + home, "TERM=xterm-256color"}
