@@ -250,8 +250,9 @@ func scaleOf(c capture.Capture, i int) float64 {
 	return c.Channels[i].Scale
 }
 
-// repeated: every signal, noise and counter included, stands still at once and leaps on later.
-func repeated(_ paper, c capture.Capture) []finding.Cause {
+// repeated: every signal, noise and counter included, stands still at once while the plant moves, and leaps on later. A
+// device without noise stands still by right wherever nothing moves: before the event, when all has settled, once it is over.
+func repeated(p paper, c capture.Capture) []finding.Cause {
 	analogue := 0
 	for _, ch := range c.Channels {
 		if !ch.Name.IsState() {
@@ -261,7 +262,8 @@ func repeated(_ paper, c capture.Capture) []finding.Cause {
 	if analogue < 3 || len(c.Samples) < 20 {
 		return nil
 	}
-	var stands, long []float64 // lengths of the stretches in which all samples are the same
+	moves := movement(p, c)
+	var stands, moved, long []float64 // lengths of the stretches in which all samples are the same, what moves in them
 	from := c.Samples[0]
 	last := from
 	alike := 1 // samples in the stretch
@@ -274,6 +276,7 @@ func repeated(_ paper, c capture.Capture) []finding.Cause {
 			alike++
 		} else {
 			stands, many = append(stands, (last.At-from.At).Seconds()), append(many, alike)
+			moved = append(moved, moves(from.At.Seconds(), last.At.Seconds()))
 			from, alike = s, 1
 		}
 		last = s
@@ -285,14 +288,14 @@ func repeated(_ paper, c capture.Capture) []finding.Cause {
 	}
 	most := 0
 	for i, d := range stands {
-		if many[i] >= 5 && d > 0.35 && d > 6*math.Max(usual, 0.02) {
+		if moved[i] >= 1 && many[i] >= 5 && d > 0.35 && d > 6*math.Max(usual, 0.02) {
 			long, most = append(long, d), max(most, many[i])
 		}
 	}
 	if len(long) == 1 && most < 10 { // one stall of the polling is a gap, not a cause
 		long = nil
 	}
-	if alike >= 8 && lastStand > 0.6 && lastStand > 8*math.Max(usual, 0.02) && lastStand > 0.15*(last.At-c.Samples[0].At).Seconds() && len(long) == 0 {
+	if moves(from.At.Seconds(), last.At.Seconds()) >= 1 && alike >= 8 && lastStand > 0.6 && lastStand > 8*math.Max(usual, 0.02) && lastStand > 0.15*(last.At-c.Samples[0].At).Seconds() && len(long) == 0 {
 		return []finding.Cause{because("readings-frozen", 0.9, fmt.Sprintf("all %d signals stand still for the last %s, noise included", analogue, number(lastStand, "s"))), because("gateway-repeats-old", 0.5)}
 	}
 	if len(long) == 0 {
@@ -300,6 +303,60 @@ func repeated(_ paper, c capture.Capture) []finding.Cause {
 	}
 	return []finding.Cause{because("gateway-repeats-old", 0.9, fmt.Sprintf("all %d signals stand still %d times for up to %s and then leap on, %s is usual", analogue, len(long), number(slices.Max(long), "s"), number(usual, "s"))),
 		because("readings-slow", 0.4)}
+}
+
+// worthSeeing is how much of the source's voltage the bus must be expected to move by before standing still is odd.
+const worthSeeing = 0.01
+
+// movement tells how far the plant is expected to move between two instants of a capture, in units of what would be seen: 1
+// and more is seen by any register. For loads that anybody may switch nothing is expected, and stillness is judged by the
+// noise alone.
+func movement(p paper, c capture.Capture) func(from, to float64) float64 {
+	bus := traceOf(c, signal.BusVoltage)
+	seen := math.Max(5*bus.resolution, worthSeeing*float64(p.site.Source.HighestRest()))
+	switch c.Kind {
+	case capture.Precharge:
+		end := math.Inf(1)
+		if at := traceOf(c, signal.BypassClosed).firstAt(0.5, 0); !math.IsNaN(at) {
+			end = at
+		}
+		if at := openedAt(c); at < end {
+			end = at
+		}
+		emf := float64(p.site.Source.LowestRest())
+		if source := traceOf(c, signal.SourceVoltage); source.ok {
+			emf = fit.Median(source.v)
+		}
+		tau := p.tau().high
+		return func(from, to float64) float64 {
+			from, to = math.Max(from, 0), math.Min(to, end)
+			if to <= from {
+				return 0
+			}
+			return math.Abs(emf-p.settledDrop(emf).high-bus.at(from)) * (1 - math.Exp(-(to-from)/tau)) / seen
+		}
+	case capture.Discharge:
+		tau := p.rb.high * p.c.high
+		return func(from, to float64) float64 {
+			if to <= math.Max(from, 0) {
+				return 0
+			}
+			return bus.at(from) * (1 - math.Exp(-(to-math.Max(from, 0))/tau)) / seen
+		}
+	}
+	return func(float64, float64) float64 { return 1 }
+}
+
+// openedAt is when the pre-charge contactor was first seen to open after it had closed; +Inf if never.
+func openedAt(c capture.Capture) float64 {
+	contact := traceOf(c, signal.PrechargeClosed)
+	closed := contact.firstAt(0.5, math.Inf(-1))
+	for i, t := range contact.t {
+		if !math.IsNaN(closed) && t > closed && contact.v[i] < 0.5 {
+			return t
+		}
+	}
+	return math.Inf(1)
 }
 
 // carries tells whether a sample has any value: where the link is down none has, and that is no standing still.
