@@ -42,9 +42,10 @@ func pseudoTerminal(b *testing.B) (ours, theirs *os.File) {
 	return ours, theirs
 }
 
-// BenchmarkStart starts the real program in a terminal of its own, which answers what terminals are asked, waits for the start screen and ends it by Ctrl+C. It gives
-// the time from the start of the process to the screen, and the CPU time of the whole process, both as medians; to compare,
-// the same for a process that only prints its version. The CPU time is to be at most 100 ms.
+// BenchmarkStart starts the real program in a terminal of its own, which answers what terminals are asked, waits for the start
+// screen and ends it by Ctrl+C. It gives the time from the start of the process to the screen, and the CPU time of the whole
+// process, both as medians; to compare, the CPU time of a process that only prints its version. At most 100 ms of CPU are
+// wanted.
 func BenchmarkStart(b *testing.B) {
 	program := filepath.Join(b.TempDir(), "chargehand")
 	if out, err := exec.Command("go", "build", "-trimpath", "-o", program, ".").CombinedOutput(); err != nil {
