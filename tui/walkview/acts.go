@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"slices"
 	"strings"
 
 	tea "github.com/charmbracelet/bubbletea"
@@ -48,10 +49,25 @@ func actWords(act string) string {
 		unattended.PowerMode:      "change to current mode",
 		unattended.VoltageMode:    "change to voltage mode",
 		unattended.EverythingOff:  "switch everything off",
+		unattended.EarthTest:      "put the test resistor on a pole",
+		unattended.EarthTestOff:   "take the test resistor off",
+		unattended.SourceWithdraw: "have the battery manager withdraw",
+		unattended.SourceBack:     "have the battery manager permit again",
+		unattended.ReportDropped:  "take the bypass report away",
+		unattended.ReportBack:     "put the bypass report back",
+		unattended.OverVoltageOK:  "put the over-voltage threshold back",
+		unattended.UnderVoltageOK: "put the under-voltage threshold back",
+		unattended.Stop:           "press the emergency stop",
+		unattended.Reset:          "reset the fault",
 		readMeterAct:              "read the meter",
 	}
 	if w, ok := words[act]; ok {
 		return w
+	}
+	for verb, words := range map[string]string{"over-voltage ": "move the over-voltage threshold to ", "under-voltage ": "move the under-voltage threshold to "} {
+		if rest, ok := strings.CutPrefix(act, verb); ok {
+			return words + rest
+		}
 	}
 	if rest, ok := strings.CutPrefix(act, "load "); ok {
 		return "put " + rest + " of the load on"
@@ -75,6 +91,9 @@ func (m Model) nextAct() (act, wait string) {
 	act = acts[m.acts]
 	p := m.current()
 	armed := c != nil && c.Kind == m.captureWanted(p)
+	if p.Capture == capture.Step {
+		return act, waitAtTrip(act, armed)
+	}
 	switch {
 	case m.captureWanted(p) != "" && !armed:
 		if !captured(m.snapshot.State, p) && p.ID != "down.discharge" {
@@ -91,6 +110,25 @@ func (m Model) nextAct() (act, wait string) {
 		}
 	}
 	return act, ""
+}
+
+// waitAtTrip says what an act at a trip waits for: what provokes it for the armed capture, what puts the plant back for its
+// end. What only prepares waits for nothing.
+func waitAtTrip(act string, armed bool) string {
+	switch {
+	case act == unattended.VoltageMode || strings.HasPrefix(act, "load "):
+		return ""
+	case putsBack(act) && armed:
+		return "when the plant has answered"
+	case !putsBack(act) && !armed:
+		return "arm the capture"
+	}
+	return ""
+}
+
+func putsBack(act string) bool {
+	return slices.Contains([]string{unattended.EarthTestOff, unattended.SourceBack, unattended.ReportBack, unattended.OverVoltageOK,
+		unattended.UnderVoltageOK, unattended.BypassRelease, unattended.Reset, unattended.PulsesRelease}, act)
 }
 
 // captureWanted is the capture during which a point's acts are done; empty where none is needed.

@@ -392,7 +392,9 @@ func (m Model) do(a action, p walk.Point) (Model, tea.Cmd) {
 	case stepEnter:
 		return m.submit(fmt.Sprintf("stage %d entered", p.Stage), walk.Enter{Stage: p.Stage})
 	case stepArm:
-		m.acts = 0
+		if p.Capture != capture.Step || m.acts >= len(actsAt(p.ID)) { // a trip is prepared first, and may want two captures
+			m.acts = 0
+		}
 		return m.submit("capture armed", walk.Arm{Point: a.point})
 	case stepCause:
 		return m.ask(m.askCause()), nil

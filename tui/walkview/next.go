@@ -129,8 +129,8 @@ func nextReading(s commission.Snapshot, p walk.Point) action {
 	switch assessed := state.Assess(p); {
 	case assessed.Result == walk.Failed:
 		return action{step: stepFail, point: p.ID, label: "not met: fail it (r read again)", reason: because(assessed)}
-	case assessed.Result == walk.Open && p.Capture == capture.Step && !captured(state, p):
-		return action{step: stepArm, point: p.ID, label: "arm the capture"}
+	case assessed.Result == walk.Open && wantsAnotherTrip(p, assessed):
+		return nextArm(s, p)
 	case assessed.Result == walk.Open && comparesFirst(assessed):
 		return action{step: stepPass, point: p.ID, label: "compare and pass"}
 	case assessed.Result == walk.Open && mayOmit(state, p):
@@ -141,6 +141,11 @@ func nextReading(s commission.Snapshot, p walk.Point) action {
 		return action{step: stepPass, point: p.ID, label: "pass and sign"}
 	}
 	return action{step: stepPass, point: p.ID, label: "pass"}
+}
+
+// wantsAnotherTrip tells whether a trip that the point binds has not been captured yet.
+func wantsAnotherTrip(p walk.Point, a walk.Assessment) bool {
+	return p.Capture == capture.Step && slices.ContainsFunc(a.Because, func(because string) bool { return strings.HasPrefix(because, "no finding measured.trip") })
 }
 
 // mayOmit tells whether a point can be left out: it is optional, and the case in which it is has not been ruled out.

@@ -365,6 +365,10 @@ func (m Model) ending() []string {
 		if !ok {
 			label, text = "", label
 		}
+		if theme.Width(text) > m.width-14 { // a path must not be broken: it is copied
+			rows = append(rows, "  "+m.theme.Paint(theme.Faint, label), "  "+text)
+			continue
+		}
 		for i, part := range wrap(text, m.width-14) {
 			rows = append(rows, "  "+m.theme.Paint(theme.Faint, m.theme.Fit(map[bool]string{true: label}[i == 0], 11))+part)
 		}
