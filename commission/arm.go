@@ -60,7 +60,9 @@ func (r *Run) arm(e walk.Arm) (Recorded, error) {
 	}
 	r.predict(rec)
 	r.recorder = rec
-	r.focus(rec.capture.Channels)
+	if p.Capture == capture.Precharge || p.Capture == capture.Step {
+		r.focus(rec.capture.Channels) // stairs and discharge last minutes, and the usual rate shows all of them
+	}
 	return recorded, nil
 }
 
@@ -224,7 +226,7 @@ func judged(s site.Site, c capture.Capture) []finding.Finding {
 	case capture.Discharge:
 		found = measured.Discharge(s, c)
 	case capture.Droop:
-		found = measured.Droop(s, measured.Steps(c))
+		found = measured.DroopCapture(s, c)
 	}
 	for i := range found {
 		found[i].Captures = []string{c.ID}

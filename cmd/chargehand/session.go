@@ -5,10 +5,12 @@ import (
 	"errors"
 	"fmt"
 	"io/fs"
+	"maps"
 	"math"
 	"os"
 	"path/filepath"
 	"slices"
+	"strconv"
 	"strings"
 	"sync"
 	"time"
@@ -394,9 +396,28 @@ func channels(m registermap.Map) []capture.Channel {
 		if p.SignReversed {
 			scale, offset = -scale, -offset
 		}
-		all = append(all, capture.Channel{Name: p.Name, Unit: p.Name.Unit(), Type: string(p.Type), Scale: scale, Offset: offset})
+		all = append(all, capture.Channel{Name: p.Name, Unit: p.Name.Unit(), Type: captureType(p), Scale: scale, Offset: offset})
 	}
 	return all
+}
+
+// captureType says how raw words become a value, as package capture reads it: the register type and what differs from the
+// ordinary.
+func captureType(p registermap.Point) string {
+	words := []string{string(p.Type)}
+	if p.Type == registermap.Bit && p.BitNumber > 0 {
+		words = append(words, strconv.Itoa(p.BitNumber))
+	}
+	if p.Type.Words() > 1 && p.WordOrder == registermap.LowFirst {
+		words = append(words, "low-first")
+	}
+	if p.ByteOrder == registermap.LowFirst {
+		words = append(words, "bytes-low-first")
+	}
+	for _, raw := range slices.Sorted(maps.Keys(p.Values)) {
+		words = append(words, fmt.Sprintf("%d=%g", raw, p.Values[raw]))
+	}
+	return strings.Join(words, " ")
 }
 
 // simulate starts the simulated converter on a free loopback port, in the state that the walk has reached.
