@@ -170,7 +170,7 @@ func TestValueReadsBackFromTheLabels(t *testing.T) {
 			}
 		}
 		if len(at) < 2 {
-			t.Skip("one label only")
+			return // one label gives no scale to read by
 		}
 		last := len(at) - 1
 		perRow := (label[0] - label[last]) / float64(at[0]-at[last])
