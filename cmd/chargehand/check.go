@@ -89,9 +89,9 @@ func (a *app) check(ctx context.Context, files []string, o checkOptions) error {
 	}
 	switch code {
 	case exitUnable:
-		return unable
+		return errUnable
 	case exitFailed:
-		return failed
+		return errFailed
 	}
 	return nil
 }

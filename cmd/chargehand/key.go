@@ -119,7 +119,7 @@ func (a *app) showKeys(file string, named bool) error {
 	}
 	if shown == 0 {
 		a.complain(errors.New("there is no key"), "`chargehand key new` makes one")
-		return unable
+		return errUnable
 	}
 	return nil
 }

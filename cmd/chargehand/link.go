@@ -151,7 +151,7 @@ func (t *linkTrial) run(ctx context.Context, batches <-chan signal.Batch, meters
 		}
 	}
 	if o.accused || !allHaveValues(t.last) {
-		return failed
+		return errFailed
 	}
 	return nil
 }
@@ -230,7 +230,7 @@ func (t *linkTrial) noDevice(ctx context.Context) error {
 		fmt.Fprintln(t.app.err, t.app.narrow(line))
 	}
 	fmt.Fprintln(t.app.err, t.app.narrow("hint: "+todo))
-	return unable
+	return errUnable
 }
 
 // sample reads the neighbourhood once more, unit by unit so that one that is away does not hide the others, and keeps it with

@@ -184,10 +184,10 @@ func (a *app) writeTables(story report.Story, folder string, force bool) error {
 func (a *app) reportVerdict(story report.Story) error {
 	if story.Verification.Exit != exitDone {
 		lines(a.err, "chargehand: "+story.Log.File+": "+story.Verification.Sentence)
-		return failed
+		return errFailed
 	}
 	if story.Verdict == finding.Fail {
-		return failed
+		return errFailed
 	}
 	return nil
 }

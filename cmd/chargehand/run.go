@@ -32,11 +32,11 @@ const (
 	exitUnable = 2 // could not be done: bad input, no device, bad usage
 )
 
-// failed is returned by a command that did its work and found a failure; it has been reported already.
-var failed = errors.New("at least one fail")
+// errFailed is returned by a command that did its work and found a failure; it has been reported already.
+var errFailed = errors.New("at least one fail")
 
-// unable is returned by a command that has reported on its own why it could not do its work.
-var unable = errors.New("could not be done")
+// errUnable is returned by a command that has reported on its own why it could not do its work.
+var errUnable = errors.New("could not be done")
 
 // usageError is a wrong call.
 type usageError struct{ error }
@@ -70,9 +70,9 @@ func run(ctx context.Context, args []string, s surroundings) int {
 	switch err := root.ExecuteContext(ctx); {
 	case err == nil:
 		return exitDone
-	case errors.Is(err, failed):
+	case errors.Is(err, errFailed):
 		return exitFailed
-	case errors.Is(err, unable):
+	case errors.Is(err, errUnable):
 		return exitUnable
 	default:
 		fmt.Fprintln(s.err, "chargehand: "+theme.Clean(err.Error()))
@@ -108,7 +108,7 @@ never stands for absence of voltage.`,
 			}
 			if !a.plain && !a.hasTerminal() {
 				_ = cmd.Help()
-				return unable
+				return errUnable
 			}
 			return a.startScreen(cmd.Context())
 		},

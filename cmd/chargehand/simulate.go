@@ -17,7 +17,6 @@ import (
 type simulateOptions struct {
 	listen, disturb string
 	seed            int64
-	list            bool
 }
 
 func (a *app) simulateCommand() *cobra.Command {

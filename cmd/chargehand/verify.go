@@ -44,7 +44,7 @@ func (a *app) sign(log, named string) error {
 	}
 	if signer == nil {
 		a.complain(fmt.Errorf("there is no key to sign with"), "`chargehand key new` makes one, --key names another")
-		return unable
+		return errUnable
 	}
 	signature, err := chlog.SignFile(a.path(log), signer)
 	if err != nil {
@@ -101,9 +101,9 @@ func (a *app) verify(ctx context.Context, logs []string, o verifyOptions) error 
 	}
 	switch code {
 	case exitUnable:
-		return unable
+		return errUnable
 	case exitFailed:
-		return failed
+		return errFailed
 	}
 	return nil
 }

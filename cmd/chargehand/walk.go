@@ -166,7 +166,7 @@ func (a *app) ended(ctx context.Context, s *session, verdict finding.Verdict, er
 	}
 	fmt.Fprintf(a.out, "verdict    %s\n", verdict)
 	if verdict == finding.Fail {
-		return failed
+		return errFailed
 	}
 	return nil
 }

@@ -139,10 +139,6 @@ type curve struct {
 	p, vOn, vOff           float64
 }
 
-func (p paper) nominalCurve(emf, v0 float64) curve {
-	return curve{emf: emf, v0: v0, r: p.r.nominal, c: p.c.nominal, cSource: p.cSource, g: 1 / p.rb.nominal, p: p.p, vOn: p.vOn, vOff: p.vOff}
-}
-
 // at gives the bus voltage at ascending times from 0 on; before 0 it is v0.
 func (k curve) at(times []float64) []float64 {
 	out := make([]float64, len(times))

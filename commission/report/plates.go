@@ -3,7 +3,6 @@ package report
 import (
 	"fmt"
 	"strconv"
-	"time"
 
 	"chargehand/commission/site"
 )
@@ -42,12 +41,6 @@ func (r *rows) add(what, text string) {
 func (r *rows) count(what string, n int) {
 	if n > 0 {
 		r.add(what, strconv.Itoa(n))
-	}
-}
-
-func (r *rows) date(what string, at time.Time) {
-	if !at.IsZero() {
-		r.add(what, at.Format(time.DateOnly))
 	}
 }
 
