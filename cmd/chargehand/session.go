@@ -58,7 +58,6 @@ type session struct {
 	unsigned  string
 	maxAge    time.Duration
 	person    string
-	sealed    bool
 	begun     walk.State // as the log was when it was opened
 
 	writer *chlog.Writer
