@@ -28,8 +28,9 @@ import (
 	"chargehand/tui/theme"
 )
 
-// largestFile is more than any site or map file needs; a larger one is not read into memory.
-const largestFile = 4 << 20
+// largestFile is more than is ever read into memory; what a site or map file may have at most is for their readers to say,
+// with its place.
+const largestFile = 64 << 20
 
 type checkOptions struct {
 	json, csv, strict bool
@@ -183,7 +184,7 @@ func (a *app) readSmall(file string) ([]byte, error) {
 		return nil, fmt.Errorf("%s is a folder, not a file", file)
 	}
 	if info.Size() > largestFile {
-		return nil, fmt.Errorf("%s has %d bytes; a site or map file has at most %d", file, info.Size(), largestFile)
+		return nil, fmt.Errorf("%s has %d bytes; no more than %d are read", file, info.Size(), largestFile)
 	}
 	f, err := os.Open(a.path(file))
 	if err != nil {
@@ -192,7 +193,7 @@ func (a *app) readSmall(file string) ([]byte, error) {
 	defer f.Close()
 	text, err := io.ReadAll(io.LimitReader(f, largestFile+1)) // a device or a pipe has no size that could be asked for
 	if err == nil && len(text) > largestFile {
-		err = fmt.Errorf("%s gives more than %d bytes; a site or map file has at most that", file, largestFile)
+		err = fmt.Errorf("%s gives more than %d bytes; no more are read", file, largestFile)
 	}
 	return text, err
 }
