@@ -3,12 +3,14 @@ package tui
 import (
 	"context"
 	"fmt"
+	"slices"
 	"strings"
 
 	tea "github.com/charmbracelet/bubbletea"
 
 	"chargehand/commission"
 	"chargehand/commission/desk"
+	"chargehand/commission/finding"
 	"chargehand/commission/site"
 	"chargehand/commission/walk"
 	"chargehand/tui/deskview"
@@ -241,10 +243,23 @@ func (m Model) checked(msg checkedMsg) Model {
 // findings shows what the open walk's log holds of findings, desk and measured.
 func (m Model) findings() Model {
 	state := m.walk.State()
-	all := append(state.Measured(""), state.Desk()...)
+	all := append(state.Measured(""), explained(state.Site(), state.Desk())...)
 	m.before, m.shown = onWalk, onDesk
 	m.desk = deskview.New(state.Site(), all, m.theme, m.width, m.height)
 	return m
+}
+
+// explained gives the findings of a log their workings back: a log keeps results, and the same site gives the same workings.
+func explained(s site.Site, findings []finding.Finding) []finding.Finding {
+	workings := map[string]*finding.Explanation{}
+	for _, f := range desk.Findings(s, nil) {
+		workings[f.ID+" "+f.Subject] = f.Explanation
+	}
+	findings = slices.Clone(findings)
+	for i, f := range findings {
+		findings[i].Explanation = workings[f.ID+" "+f.Subject]
+	}
+	return findings
 }
 
 // leave closes an open walk; its log stays as it is and can be gone on with.
