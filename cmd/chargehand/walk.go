@@ -12,6 +12,7 @@ import (
 	"chargehand/commission/chlog"
 	"chargehand/commission/finding"
 	"chargehand/commission/unattended"
+	"chargehand/commission/walk"
 	"chargehand/protocol/simulator"
 	"chargehand/tui"
 	"chargehand/tui/plain"
@@ -141,15 +142,30 @@ func (a *app) observe(ctx context.Context, o walkOptions, limit time.Duration) e
 	if err != nil {
 		return err
 	}
-	if s.person == "" {
-		return errors.Join(a.noPerson(), s.close())
+	if err := s.nameWatch(ctx); err != nil {
+		return errors.Join(err, s.close())
 	}
 	verdict, err := unattended.Observe(ctx, s.run, s.person, s.unsigned, limit, a.say)
 	return a.ended(ctx, s, verdict, err)
 }
 
-func (a *app) noPerson() error {
-	return errors.New("nobody is named to seal the log: add a [[person]] with name and role to the site file")
+// nameWatch enters that nobody was named where the site file names no person: the seal of what was watched says so, and
+// who countersigns it stands for it.
+func (s *session) nameWatch(ctx context.Context) error {
+	if s.person != "" {
+		return nil
+	}
+	watch := walk.AddPerson{Name: "unattended watch, nobody named", Role: "witness"}
+	if s.signer != nil {
+		watch.Key = s.signer.Fingerprint()
+	}
+	recorded, err := s.run.Submit(ctx, watch)
+	if err != nil {
+		return fmt.Errorf("name the watch: %w", err)
+	}
+	people := recorded.State.People()
+	s.person = people[len(people)-1].ID
+	return nil
 }
 
 // ended finishes a walk that went without a screen: signature, report, verdict.
