@@ -20,8 +20,8 @@ func (s Story) WriteJSON(w io.Writer) error {
 	return err
 }
 
-// EscapeJSON writes every character of a JSON text that is not printed, beyond ASCII's own, as \uXXXX: such a character can
-// only stand in a string, and a terminal might obey it.
+// EscapeJSON writes every character of a JSON text that is not printed, beyond ASCII's own, as an escape of four hex digits:
+// such a character can only stand in a string, and a terminal might obey it.
 func EscapeJSON(text []byte) []byte {
 	var out []byte
 	for _, r := range string(text) {

@@ -13,7 +13,7 @@ import (
 
 func TestDecode(t *testing.T) {
 	const (
-		sunspec = "SunSpec 'not implemented' codes, by common practice"
+		sunspec = "SunSpec's codes for a point without a value, by common practice"
 		words   = "check values of libmodbus, tests/unit-test.h: 123456.0 as ABCD, CDAB, BADC, DCBA"
 		hand    = "two's complement, by hand"
 	)
