@@ -22,6 +22,9 @@ func Rehearse(ctx context.Context, run *commission.Run, op Operator, person, ins
 	if _, err := r.await(ctx, 10*time.Second, func(s commission.Snapshot) bool { return s.Link.Up }); err != nil {
 		return "", err
 	}
+	if err := r.bringMeter(ctx); err != nil {
+		return "", err
+	}
 	for stage := r.latest.State.Stage(); stage <= walk.Stages; stage++ {
 		if err := r.stage(ctx, stage); err != nil {
 			var refused *walk.RefusedError
@@ -46,6 +49,24 @@ type rehearsal struct {
 	op                           Operator
 	person, instrument, unsigned string
 	met                          map[string]float64 // what the meter showed while a capture ran, by point and place
+}
+
+// bringMeter enters the simulated plant's own meter where the site file names no instrument: a rehearsal goes on without one
+// of its own, and the log says by what its readings were taken.
+func (r *rehearsal) bringMeter(ctx context.Context) error {
+	if r.instrument != "" {
+		return nil
+	}
+	today := r.latest.Now
+	if err := r.submit(ctx, walk.AddInstrument{Record: record.Instrument{Name: "simulated meter", Serial: "rehearsal",
+		Calibrated: today.Format(time.DateOnly), Due: today.AddDate(1, 0, 0).Format(time.DateOnly),
+		Accuracy:   record.InstrumentAccuracy{OfReading: 0.0005, Plus: 0.1, Unit: "V"},
+		MaxVoltage: 2 * max(float64(r.latest.State.Site().Bus.OverVoltageTrip.Nominal), float64(r.latest.State.Site().Bus.Nominal.Nominal))}}); err != nil {
+		return err
+	}
+	entered := r.latest.State.Instruments()
+	r.instrument = entered[len(entered)-1].ID
+	return nil
 }
 
 func (r *rehearsal) stage(ctx context.Context, stage int) error {
